@@ -1,0 +1,1 @@
+"""midradius.study"""
