@@ -1,0 +1,117 @@
+"""What one run hands back: frozen, with the unit in every name.
+
+Arrays along nodes are those of the solved section (a quarter or a radius where
+symmetry allows it); ``view`` draws the whole part from them.
+"""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.source import RangeNote, Source
+
+
+@dataclass(frozen=True)
+class SectionView:
+    """A mesh that shows the part as a person would draw it.
+
+    ``points_mm`` (n_point, 3); ``quads`` (n_quad, 4) and ``triangles``
+    (n_triangle, 3) index points; ``node`` (n_point,) is the solved node that
+    each point takes its values from.
+    """
+
+    points_mm: Array
+    quads: IntArray
+    triangles: IntArray
+    node: IntArray
+
+
+@dataclass(frozen=True)
+class Position:
+    """The answer at one named place of the drawing.
+
+    ``hardness_hrc`` and ``hardness_hb`` are None where the conversion does not
+    hold; times and rates are None where the place never crossed the range.
+    ``depth_mm`` counts from the nearest cooled surface.
+    """
+
+    name: str
+    depth_mm: float
+    coordinates_mm: tuple[float, ...]
+    hardness_hv: float
+    hardness_hrc: float | None
+    hardness_hb: float | None
+    tensile_mpa: float | None
+    phases: Mapping[str, float]
+    time_800_500_s: float | None
+    rate_700_K_per_s: float | None
+    austenite_carbon_pct: float
+    hardness_time_error_hv: float
+    hardness_grid_error_hv: float
+
+
+@dataclass(frozen=True)
+class Profile:
+    """Surface to core along the drawing's line, (n_point,) each."""
+
+    depth_mm: Array
+    node: IntArray
+    label: str
+
+
+@dataclass(frozen=True)
+class StageRecord:
+    """One stage of the route as it was run."""
+
+    kind: str
+    medium: str
+    start_s: float
+    end_s: float
+    ended_by: str
+    heat_to_bath_J: float
+
+
+@dataclass(frozen=True)
+class Result:
+    """One run of the main job.
+
+    Shapes: ``times_s`` (n_time,), ``temp_degC`` (n_time, n_node), ``phases``
+    (n_phase, n_node), other fields (n_node,), ``history_times_s`` (n_step,),
+    ``history_temp_degC`` (n_step, n_position).
+    """
+
+    title: str
+    steel: str
+    composition_pct: Mapping[str, float]
+    section: str
+    sense: str
+    points_mm: Array
+    volume: Array
+    view: SectionView
+    times_s: Array
+    temp_degC: Array
+    phases: Array
+    hardness_hv: Array
+    time_800_500_s: Array
+    rate_700_K_per_s: Array
+    austenite_carbon_pct: Array
+    pearlite_formed_at_degC: Array
+    history_times_s: Array
+    history_temp_degC: Array
+    positions: tuple[Position, ...]
+    profile: Profile
+    stages: tuple[StageRecord, ...]
+    critical_degC: Mapping[str, float]
+    soak: str
+    heat_given_J_per_kg: float
+    heat_balance_relative: float
+    time_error_K: float
+    grid_error_K: float
+    n_step: int
+    n_node: int
+    notes: tuple[RangeNote, ...] = ()
+    sources: tuple[Source, ...] = ()
+    assumptions: tuple[str, ...] = ()
+    cautions: tuple[str, ...] = ()
+    inputs: Mapping[str, object] = field(default_factory=dict)
+    case_text: str = ""
