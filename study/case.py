@@ -1,0 +1,181 @@
+"""One case: what is cooled, how, and what is asked for. Frozen, in SI.
+
+Every quantity that carries no suffix is in SI (m, s, K). The reader of the TOML
+file (``casefile``) has checked all of it; a case made in Python is as good as
+its maker.
+"""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from difflib import get_close_matches
+from pathlib import Path
+from typing import Literal
+
+from midradius.thermo.errors import InputFault
+from midradius.thermo.steel import Steel
+from midradius.thermo.units import parse
+
+Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
+StageKind = Literal["soak", "transfer", "quench", "hold", "temper"]
+PositionKind = Literal["surface", "core", "mid-radius", "quarter thickness", "depth", "coordinates"]
+
+
+@dataclass(frozen=True)
+class MediumUse:
+    """A medium as one stage or one surface zone uses it.
+
+    ``name`` is the catalogue's; with ``film_file`` it is a mere label or None.
+    ``bath`` [K] is None where the catalogue's usual bath is meant.
+    """
+
+    name: str | None = None
+    film_file: Path | None = None
+    bath: float | None = None
+
+
+@dataclass(frozen=True)
+class Until:
+    """Ends a stage: when ``position`` is on the ``sense`` side of ``temp`` [K]."""
+
+    position: str
+    temp: float
+    sense: Literal["below"] = "below"
+
+
+@dataclass(frozen=True)
+class Stage:
+    """One stage of the route.
+
+    ``at`` [K] belongs to the soak, ``time`` [s] to any stage. A stage with both
+    ``time`` and ``until`` ends at whichever comes first. ``faces`` names the
+    zones that see something else than ``medium``; it wins over the bore medium
+    of the section.
+    """
+
+    kind: StageKind
+    at: float | None = None
+    time: float | None = None
+    medium: MediumUse | None = None
+    until: Until | None = None
+    faces: Mapping[str, MediumUse] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class SteelInput:
+    """The steel, and its prior austenite grain [ASTM number] unless the soak gives it."""
+
+    steel: Steel
+    grain_astm: float | None = None
+
+
+@dataclass(frozen=True)
+class SectionInput:
+    """The section's form and its dimensions [m]; those of other forms are None."""
+
+    form: Form
+    thickness: float | None = None
+    diameter: float | None = None
+    length: float | None = None
+    outside: float | None = None
+    bore: float | None = None
+    width: float | None = None
+    height: float | None = None
+    bore_medium: MediumUse | None = None
+
+    @property
+    def zones(self) -> tuple[str, ...]:
+        """Names of the surfaces that can see a medium of their own."""
+        if self.form == "round" and self.length is not None:
+            return ("side", "near end", "far end")
+        return ZONES[self.form]
+
+    @property
+    def n_dim(self) -> int:
+        """1 for a line through the section, 2 for a plane."""
+        plane = self.form in ("bar", "ring") or (self.form == "round" and self.length is not None)
+        return 2 if plane else 1
+
+
+@dataclass(frozen=True)
+class PositionInput:
+    """A place where the answer is wanted.
+
+    ``depth`` [m] counts from the cooled surface; ``coordinates`` [m] are (x,)
+    from the near face of a slab, (r,) of a round, tube or ball, (x, y) from the
+    left bottom corner of a bar, (r, z) from the bottom or near end otherwise.
+    """
+
+    name: str
+    kind: PositionKind
+    depth: float | None = None
+    coordinates: tuple[float, ...] | None = None
+
+
+@dataclass(frozen=True)
+class Outputs:
+    """What is written: positions, and field times [s] or else their number."""
+
+    positions: tuple[PositionInput, ...]
+    field_times: tuple[float, ...] = ()
+    n_field: int = 24
+
+
+@dataclass(frozen=True)
+class Grid:
+    """Cells along each axis, empty where the tool chooses; asked accuracy [K]."""
+
+    cells: tuple[int, ...] = ()
+    accuracy: float = 0.5
+
+
+@dataclass(frozen=True)
+class Case:
+    """A whole case. Two cases are equal when they ask for the same computation."""
+
+    title: str
+    steel: SteelInput
+    section: SectionInput
+    route: tuple[Stage, ...]
+    outputs: Outputs
+    grid: Grid = Grid()
+    text: str = field(default="", compare=False, repr=False)
+    path: Path | None = field(default=None, compare=False)
+
+    def position(self, name: str) -> PositionInput:
+        """The place that ``name`` means: an output position, else a trade term or a depth.
+
+        Raises
+        ------
+        InputFault
+            If the name is neither.
+        """
+        for place in self.outputs.positions:
+            if place.name == name:
+                return place
+        return position(name)
+
+
+ZONES: Mapping[str, tuple[str, ...]] = {
+    "slab": ("near face", "far face"),
+    "round": ("side",),
+    "tube": ("outside", "bore"),
+    "ball": ("surface",),
+    "bar": ("left", "right", "bottom", "top"),
+    "ring": ("outside", "bore", "bottom", "top"),
+}
+TRADE_TERMS: tuple[PositionKind, ...] = ("surface", "mid-radius", "quarter thickness", "core")
+BELOW_SURFACE = " below surface"
+
+
+def position(text: str) -> PositionInput:
+    """A place by its trade term (``"core"``) or as ``"12 mm below surface"``."""
+    for term in TRADE_TERMS:
+        if text == term:
+            return PositionInput(name=term, kind=term)
+    if text.endswith(BELOW_SURFACE):
+        depth = parse(text.removesuffix(BELOW_SURFACE), "length")
+        return PositionInput(name=text, kind="depth", depth=depth)
+    near = get_close_matches(text, TRADE_TERMS, n=1)
+    remedy = f'Write "{near[0]}" if that is meant.' if near else ""
+    allowed = ", ".join(TRADE_TERMS) + ' or a depth such as "12 mm below surface"'
+    raise InputFault("position", f'"{text}"', allowed, remedy)
