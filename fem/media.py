@@ -100,7 +100,7 @@ def medium(name: str) -> Medium:
     if found is not None:
         return found
     near = [known for known in by_key if known.startswith(key)] if key else []
-    near = near or difflib.get_close_matches(key, by_key, n=3, cutoff=0.6)
+    near = near or difflib.get_close_matches(key, by_key, n=2, cutoff=0.7)
     remedy = "Give a film curve of your own, or choose a medium of the list."
     if near:
         remedy = "Did you mean " + " or ".join(f'"{by_key[known].name}"' for known in near) + "?"
