@@ -5,6 +5,7 @@ import math
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import all_grades, grade
 from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS, Composition, check, outside, range_notes
