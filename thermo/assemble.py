@@ -1,0 +1,152 @@
+"""Put one steel's models on the even temperature grid that the kernel reads.
+
+The enthalpies are linearised in carbon about the carbon of the austenite; the
+mixture of ferrite and cementite is exactly linear.
+"""
+
+from collections.abc import Callable
+
+import numpy as np
+
+from midradius.thermo import diffusional, equilibrium, martensite, properties
+from midradius.thermo import kinetics as kin
+from midradius.thermo.arrays import Array
+from midradius.thermo.austenite import Austenite
+from midradius.thermo.kinetics import Tables
+from midradius.thermo.steel import Steel
+
+COLDEST_K, HOTTEST_K, GRID_K = 230.0, 1500.0, 1.0
+N_CLOCK = 4097
+NEVER_K = 0.0  # a martensite start that no temperature reaches
+
+
+def _clock_tables() -> tuple[Array, Array, float]:
+    """Fraction at even S, S at even square roots of the fraction, and S(1)."""
+    fine = (1.0 - np.cos(np.linspace(0.0, np.pi, 20001))) / 2.0
+    clock = diffusional.clock_integral(fine)
+    whole = float(clock[-1])
+    even = np.linspace(0.0, whole, N_CLOCK)
+    # Near the ends S goes as X^0.6: interpolate X^0.6 against S, which is smooth.
+    low = np.interp(even, clock, fine**0.6) ** (1.0 / 0.6)
+    high = 1.0 - np.interp(whole - even, clock, fine**0.6) ** (1.0 / 0.6)
+    fraction = np.where(even <= 0.5 * whole, low, high)
+    span = np.linspace(0.0, 1.0, N_CLOCK)
+    back = diffusional.clock_integral(np.minimum(span**2, 1.0))
+    return fraction, back, whole
+
+
+def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
+    """Tables of one heat of steel after its soak.
+
+    Parameters
+    ----------
+    steel
+        Name and composition [mass %].
+    austenite
+        What the soak left: carbon in solution and grain.
+    """
+    composition = steel.composition
+    temp = np.arange(COLDEST_K, HOTTEST_K + 0.5 * GRID_K, GRID_K)
+    carbon = austenite.carbon_pct
+    value = np.zeros((len(temp), kin.N_COLUMN))
+    delta = 0.05
+    for column, slope, enthalpy in (
+        (kin.H_AUSTENITE, kin.H_AUSTENITE_C, properties.enthalpy_austenite),
+        (kin.H_MARTENSITE, kin.H_MARTENSITE_C, properties.enthalpy_martensite),
+        (kin.H_FERRITE, kin.H_FERRITE_C, properties.enthalpy_ferrite_cementite),
+    ):
+        per_pct = (enthalpy(temp, carbon + delta) - enthalpy(temp, carbon - delta)) / (2.0 * delta)
+        value[:, slope] = per_pct
+        value[:, column] = enthalpy(temp, carbon) - carbon * per_pct
+    value[:, kin.K_AUSTENITE] = properties.conductivity_austenite(temp)
+    value[:, kin.K_FERRITE] = properties.conductivity_ferrite(temp)
+    value[:, kin.K_MARTENSITE] = properties.conductivity_martensite(temp)
+    eq = equilibrium.equilibrium(composition)
+    soaked = equilibrium.equilibrium(
+        type(composition)(**{**vars(composition), "C": carbon})
+    )
+    rates = diffusional.rates(
+        composition,
+        temp,
+        carbon_pct=carbon,
+        grain_astm=austenite.grain_astm,
+        ae3=soaked.ae3,
+        ae1=soaked.ae1,
+    )
+    value[:, kin.RATE_FERRITE] = rates.ferrite
+    value[:, kin.RATE_PEARLITE] = rates.pearlite
+    value[:, kin.RATE_BAINITE] = rates.bainite
+    value[:, kin.RATE_CEMENTITE] = diffusional.cementite_rate(
+        temp, carbon_pct=carbon, grain_intercept=austenite.grain_mean_intercept
+    )
+    value[:, kin.LIMIT_FERRITE] = equilibrium.ferrite_limit(eq, composition.C, temp)
+    value[:, kin.LIMIT_CEMENTITE] = equilibrium.cementite_limit(eq, composition.C, temp)
+    value[:, kin.CARBON_FERRITE] = eq.ferrite_solubility(temp)
+    fraction, back, whole = _clock_tables()
+    active = (
+        (value[:, kin.RATE_FERRITE] * value[:, kin.LIMIT_FERRITE] > 0.0)
+        | (value[:, kin.RATE_PEARLITE] > 0.0)
+        | (value[:, kin.LIMIT_CEMENTITE] > 0.0)
+    )
+    return Tables(
+        value=value,
+        first=COLDEST_K,
+        step=GRID_K,
+        clock=fraction,
+        back=back,
+        whole=whole,
+        start=np.array(martensite.start_coefficients(composition)),
+        rate=np.array(martensite.rate_coefficients(composition)),
+        top=float(temp[active].max() + GRID_K),
+        transforms=True,
+    )
+
+
+def initial_state(austenite: Austenite, carbon_pct: float, temp: float, n_node: int) -> Array:
+    """State of every node at the end of the soak, shape (n_node, N_STATE)."""
+    state = np.zeros((n_node, kin.N_STATE))
+    state[:, kin.FERRITE] = austenite.ferrite
+    state[:, kin.CEMENTITE] = austenite.cementite
+    left = 1.0 - austenite.ferrite - austenite.cementite
+    state[:, kin.CARBON_AUSTENITE] = left * austenite.carbon_pct
+    state[:, kin.COLDEST] = temp
+    return state
+
+
+def fractions(state: Array) -> Array:
+    """Phase fractions (n_phase, n_node) from states (n_node, N_STATE)."""
+    products = state[:, :5].T
+    return np.concatenate([1.0 - products.sum(axis=0, keepdims=True), products])
+
+
+def inert_tables(
+    conductivity: Callable[[Array], Array],
+    enthalpy: Callable[[Array], Array],
+    *,
+    first: float,
+    last: float,
+    step: float,
+) -> Tables:
+    """Tables of a material that does not transform, for proving the heat solver.
+
+    ``conductivity`` [W/(m K)] and ``enthalpy`` [J/kg] are functions of
+    temperature [K]; they are read at even steps and linear between.
+    """
+    temp = np.arange(first, last + 0.5 * step, step)
+    value = np.zeros((len(temp), kin.N_COLUMN))
+    value[:, kin.H_AUSTENITE] = enthalpy(temp)
+    value[:, kin.K_AUSTENITE] = conductivity(temp)
+    fraction, back, whole = _clock_tables()
+    return Tables(
+        value=value,
+        first=first,
+        step=step,
+        clock=fraction,
+        back=back,
+        whole=whole,
+        start=np.array([NEVER_K, 0.0, 0.0]),
+        rate=np.array([0.0, 0.0, 0.0]),
+        top=NEVER_K,
+        transforms=False,
+    )
+
