@@ -95,9 +95,7 @@ def _fields(text: str) -> Iterator[tuple[int, list[str]]]:
             continue
         for separator in (";", "\t", ","):
             if separator in line:
-                fields = [field.strip().strip('"').strip() for field in line.split(separator)]
-                if separator != ",":
-                    fields = [_decimal_point(field) for field in fields]
+                fields = [_clean(field) for field in line.split(separator)]
                 break
         else:
             fields = line.split()
@@ -106,7 +104,8 @@ def _fields(text: str) -> Iterator[tuple[int, list[str]]]:
         yield number, fields
 
 
-def _decimal_point(field: str) -> str:
+def _clean(field: str) -> str:
+    field = field.strip().strip('"').strip()
     return field.replace(",", ".") if re.fullmatch(r"[-+]?\d+,\d+", field) else field
 
 
