@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from hypothesis import assume, given
+from hypothesis import assume, example, given
 from hypothesis import strategies as st
 from numpy.testing import assert_allclose
 
@@ -51,6 +51,8 @@ def test_every_admitted_steel_has_limits_between_nothing_and_all(composition: Co
 
 
 @given(composition=steels())
+@example(composition=Composition(C=0.3, Mn=3.0, Ni=5.0))
+@example(composition=Composition(C=0.3, Cr=4.0, Ni=4.0))
 def test_the_boundaries_of_austenite_are_monotone(composition: Composition) -> None:
     eq = equilibrium(composition)
     assert np.all(np.diff(eq.austenite_vs_ferrite(ALL_TEMPS)) <= 1e-12)
