@@ -175,7 +175,8 @@ def position(text: str) -> PositionInput:
     if text.endswith(BELOW_SURFACE):
         depth = parse(text.removesuffix(BELOW_SURFACE), "length")
         return PositionInput(name=text, kind="depth", depth=depth)
-    near = get_close_matches(text, TRADE_TERMS, n=1)
+    near = get_close_matches(text[:80], TRADE_TERMS, n=1)
     remedy = f'Write "{near[0]}" if that is meant.' if near else ""
-    allowed = ", ".join(TRADE_TERMS) + ' or a depth such as "12 mm below surface"'
+    terms = ", ".join(f'"{term}"' for term in TRADE_TERMS)
+    allowed = f'{terms} or a depth such as "12 mm below surface"'
     raise InputFault("position", f'"{text}"', allowed, remedy)

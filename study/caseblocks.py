@@ -1,0 +1,149 @@
+"""The blocks of a case file that stand alone: steel, section, grid."""
+
+import math
+import re
+from typing import cast
+
+from midradius.thermo.errors import InputFault
+from midradius.thermo.grades import grade
+from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS, Composition, Steel, check
+from midradius.thermo.units import show
+
+from . import casekeys as keys
+from .case import Form, Grid, SectionInput, SteelInput
+from .casemedium import medium_use
+from .casetable import Table, one_of
+
+_GRAIN = re.compile(r"ASTM\s*(-?[0-9]{1,2}(?:\.[0-9]{1,3})?)", re.IGNORECASE)
+_STRANGE = "No model here knows this element: leave it out."
+
+
+def steel_input(table: Table) -> SteelInput | None:
+    """``[steel]``: a grade of the table or a composition, never both."""
+    table.only(keys.STEEL)
+    grain = _grain(table)
+    example = 'grade = "42CrMo4" or composition = { C = 0.42, Mn = 0.75 }'
+    if table.has("grade") and table.has("composition"):
+        table.fault("composition", "left out where a grade is given", "Keep one of the two.")
+        return None
+    if table.has("composition"):
+        steel = _own_steel(table)
+    else:
+        steel = _shipped_steel(table)
+        if not table.has("grade"):
+            table.missing("grade", "given, unless there is a composition", f"Write {example}.")
+    return SteelInput(steel, grain) if steel else None
+
+
+def _shipped_steel(table: Table) -> Steel | None:
+    name = table.text("grade", keys.LONGEST_NAME)
+    if name is None:
+        return None
+    try:
+        return grade(name)
+    except InputFault as fault:
+        table.fault("grade", fault.allowed, fault.remedy)
+        return None
+
+
+def _own_steel(table: Table) -> Steel | None:
+    inner = table.table("composition", "{ C = 0.42, Mn = 0.75 } in mass percent")
+    if inner is None:
+        return None
+    meant = {name.casefold(): f'Write "{name}".' for name in ELEMENTS}
+    meant |= {"fe": "Iron is the rest: leave it out."}
+    inner.only(ELEMENTS, {name: meant.get(name.casefold(), _STRANGE) for name in inner.names()})
+    amounts = {name: inner.number(name, "in mass percent") for name in ELEMENTS}
+    if not inner.has("C"):
+        low, high = HARD_BOUNDS["C"]
+        inner.missing("C", f"{low:g} to {high:g} % by mass", "Carbon decides everything else.")
+    known = {name: amount for name, amount in amounts.items() if amount is not None}
+    composition = Composition(**{"C": HARD_BOUNDS["C"][0], **known})
+    for fault in check(composition):
+        element = fault.quantity.removeprefix("composition.")
+        if element not in ELEMENTS:
+            said = fault.quantity[0].upper() + fault.quantity[1:]
+            remedy = f"{said} is {fault.value}. {fault.remedy}"
+            table.fault("composition", fault.allowed, remedy)
+        elif element in known:
+            inner.fault(element, fault.allowed, fault.remedy)
+    if table.notes.has(inner.place):
+        return None
+    return Steel(keys.OWN_COMPOSITION, composition, "the case file", "given")
+
+
+def _grain(table: Table) -> float | None:
+    value = table.raw("austenite_grain")
+    if value is None:
+        return None
+    low, high = keys.GRAIN_RANGE
+    found = _GRAIN.fullmatch(value.strip()) if isinstance(value, str) else None
+    if found and low <= float(found[1]) <= high:
+        return float(found[1])
+    remedy = "" if found else "Leave it out to take the grain from the soak."
+    table.fault("austenite_grain", f'"ASTM {low:g}" to "ASTM {high:g}"', remedy)
+    return None
+
+
+def section_input(table: Table) -> SectionInput | None:
+    """``[section]``: a form and its dimensions, without those at fault."""
+    forms = tuple(keys.DIMENSIONS)
+    if table.raw("form") == "mesh":
+        table.fault("form", one_of(forms), "This version reads no mesh files.")
+        return None
+    form = cast(Form | None, table.choice("form", forms))
+    if form is None:
+        if not table.has("form"):
+            table.missing("form", one_of(forms))
+        table.only(("form", *keys.ALL_DIMENSIONS, "bore_medium"))
+        for name in keys.ALL_DIMENSIONS:
+            table.quantity(name, "length", keys.DIMENSION_RANGE)
+        return None
+    known = ("form", *keys.DIMENSIONS[form], *keys.OPTIONAL[form])
+    strange = f'form = "{form}" has no such key; it takes {", ".join(known[1:])}.'
+    table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, "bore_medium"), strange))
+    size = {
+        name: table.quantity(name, "length", keys.DIMENSION_RANGE)
+        for name in known[1:]
+        if name != "bore_medium"
+    }
+    low, high = (show(end, "length") for end in keys.DIMENSION_RANGE)
+    for name in keys.DIMENSIONS[form]:
+        if not table.has(name):
+            table.missing(name, f'{low} to {high} for form = "{form}"')
+    outside, bore = size.get("outside"), size.get("bore")
+    if outside and bore and outside - bore < 2.0 * keys.WALL_MIN:
+        most = outside - 2.0 * keys.WALL_MIN
+        allowed = f'at most {most * 1e3:.6g} mm for outside = "{table.raw("outside")}"'
+        remedy = "Give the two diameters, not the wall; it must be at least 0.5 mm thick."
+        table.fault("bore", allowed, remedy)
+    medium = None
+    if table.has("bore_medium") and "bore_medium" in known:
+        medium = medium_use(table, "bore_medium")
+    if table.has("length") and size.get("length") is None:
+        return None  # whether the ends cool is not known
+    return SectionInput(form=form, bore_medium=medium, **size)
+
+
+def grid(table: Table | None, section: SectionInput | None) -> Grid:
+    """``[grid]``: cells along each axis and the asked accuracy."""
+    if table is None:
+        return Grid()
+    table.only(keys.GRID)
+    accuracy = table.quantity("accuracy", "temperature difference", keys.ACCURACY_RANGE)
+    low, high = keys.CELLS_RANGE
+    value = table.raw("cells")
+    given = value if isinstance(value, list) else [] if value is None else [value]
+    counts = tuple(count for count in given if type(count) is int and low <= count <= high)
+    right = len(counts) == len(given)
+    n_dim = section.n_dim if section else len(given)
+    if not right or (value is not None and len(given) not in ((n_dim,) if n_dim else (1, 2))):
+        many = "two whole numbers" if n_dim == 2 else "a whole number"
+        table.fault(
+            "cells", f"{many}, {low} to {high}, such as {'[60, 60]' if n_dim == 2 else 200}"
+        )
+    elif math.prod(counts) > keys.CELLS_MOST:
+        table.fault("cells", f"at most {keys.CELLS_MOST} cells in all")
+    else:
+        return Grid(counts, accuracy if accuracy is not None else Grid().accuracy)
+    return Grid()

@@ -1,0 +1,139 @@
+"""A case as TOML text that reads back as the same case."""
+
+import re
+from pathlib import Path
+
+from midradius.thermo.errors import InputFault
+from midradius.thermo.grades import grade
+from midradius.thermo.units import show
+
+from . import casekeys as keys
+from .case import Case, Grid, MediumUse, Outputs, PositionInput, Stage, SteelInput, position
+
+_BARE = re.compile(r"[A-Za-z0-9_-]+")
+
+
+def dumps(case: Case) -> str:
+    """The TOML text of a case, every quantity exact to the last digit.
+
+    A film curve inside the folder of ``case.path`` is written relative to it.
+    """
+    folder = case.path.parent if case.path else Path()
+    lines = [f"title = {_quoted(case.title)}", "", "[steel]", *_steel(case.steel)]
+    lines += ["", "[section]", f'form = "{case.section.form}"']
+    for name in keys.ALL_DIMENSIONS:
+        size = getattr(case.section, name)
+        if size is not None:
+            lines.append(f"{name} = {_length(size)}")
+    if case.section.bore_medium:
+        lines.append(f"bore_medium = {_inline(case.section.bore_medium, folder)}")
+    for stage in case.route:
+        lines += ["", "[[route]]", *_stage(stage, folder)]
+    lines += ["", "[output]", *_outputs(case.outputs)]
+    lines += ["", "[grid]", *_grid(case.grid)]
+    return "\n".join(lines) + "\n"
+
+
+def _steel(steel: SteelInput) -> list[str]:
+    lines = [_grade(steel)]
+    if steel.grain_astm is not None:
+        lines.append(f'austenite_grain = "ASTM {_number(steel.grain_astm)}"')
+    return lines
+
+
+def _grade(steel: SteelInput) -> str:
+    try:
+        if grade(steel.steel.name) == steel.steel:
+            return f"grade = {_quoted(steel.steel.name)}"
+    except InputFault:
+        pass
+    amounts = steel.steel.composition.as_dict().items()
+    written = ", ".join(f"{name} = {amount!r}" for name, amount in amounts if amount)
+    return f"composition = {{ {written} }}"
+
+
+def _stage(stage: Stage, folder: Path) -> list[str]:
+    lines = [f'stage = "{stage.kind}"']
+    if stage.at is not None:
+        lines.append(f'at = "{show(stage.at, "temperature")}"')
+    if stage.medium:
+        lines += [f"{key} = {value}" for key, value in _medium(stage.medium, folder)]
+    if stage.time is not None:
+        lines.append(f'time = "{show(stage.time, "duration")}"')
+    if stage.until:
+        temp = show(stage.until.temp, "temperature")
+        lines.append(f"until = {_quoted(f'{stage.until.position} below {temp}')}")
+    if stage.faces:
+        faces = [f"{_key(zone)} = {_inline(use, folder)}" for zone, use in stage.faces.items()]
+        lines.append(f"faces = {{ {', '.join(faces)} }}")
+    return lines
+
+
+def _medium(use: MediumUse, folder: Path) -> list[tuple[str, str]]:
+    pairs = []
+    if use.film_file is not None:
+        inside = use.film_file.is_relative_to(folder)
+        film = use.film_file.relative_to(folder) if inside else use.film_file
+        pairs.append(("film", _quoted(film.as_posix())))
+    elif use.name is not None:
+        pairs.append(("medium", _quoted(use.name)))
+    if use.bath is not None:
+        pairs.append(("bath", f'"{show(use.bath, "temperature")}"'))
+    return pairs
+
+
+def _inline(use: MediumUse, folder: Path) -> str:
+    pairs = _medium(use, folder)
+    if len(pairs) == 1 and pairs[0][0] == "medium":
+        return pairs[0][1]
+    return "{ " + ", ".join(f"{key} = {value}" for key, value in pairs) + " }"
+
+
+def _outputs(outputs: Outputs) -> list[str]:
+    places = ", ".join(_place(place) for place in outputs.positions)
+    lines = [f"positions = [{places}]"]
+    if outputs.field_times:
+        times = ", ".join(f'"{show(time, "duration")}"' for time in outputs.field_times)
+        return [*lines, f"times = [{times}]"]
+    return [*lines, f"fields = {outputs.n_field}"]
+
+
+def _place(place: PositionInput) -> str:
+    try:
+        if position(place.name) == place:
+            return _quoted(place.name)
+    except InputFault:
+        pass
+    if place.coordinates is not None:
+        at = ", ".join(_length(value) for value in place.coordinates)
+        return f"{{ name = {_quoted(place.name)}, at = [{at}] }}"
+    return f"{{ name = {_quoted(place.name)}, depth = {_length(place.depth or 0.0)} }}"
+
+
+def _grid(grid: Grid) -> list[str]:
+    lines = [f'accuracy = "{show(grid.accuracy, "temperature difference")}"']
+    if grid.cells:
+        lines.insert(0, f"cells = [{', '.join(str(count) for count in grid.cells)}]")
+    return lines
+
+
+def _length(value: float) -> str:
+    return f'"{show(value, "length")}"'
+
+
+def _number(value: float) -> str:
+    return repr(value).removesuffix(".0")
+
+
+def _key(name: str) -> str:
+    return name if _BARE.fullmatch(name) else _quoted(name)
+
+
+def _quoted(text: str) -> str:
+    escaped = text.replace("\\", "\\\\").replace('"', '\\"')
+    return '"' + "".join(_visible(letter) for letter in escaped) + '"'
+
+
+def _visible(letter: str) -> str:
+    code = ord(letter)
+    return f"\\u{code:04x}" if code < 0x20 or code == 0x7F else letter
