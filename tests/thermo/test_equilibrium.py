@@ -55,6 +55,7 @@ def test_every_admitted_steel_has_limits_between_nothing_and_all(composition: Co
 @example(composition=Composition(C=0.3, Cr=4.0, Ni=4.0))
 def test_the_boundaries_of_austenite_are_monotone(composition: Composition) -> None:
     eq = equilibrium(composition)
+    assert np.all(np.diff(eq.a3_temps) > 0.0)
     assert np.all(np.diff(eq.austenite_vs_ferrite(ALL_TEMPS)) <= 1e-12)
     assert np.all(np.diff(eq.austenite_vs_cementite(ALL_TEMPS)) >= -1e-12)
 
