@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from midradius.fem import heat
+from midradius.fem import march
 from midradius.fem.heat import Body, Control, Progress, Skin
 from midradius.fem.linear import Scheme, scheme
 from midradius.fem.volumes import ControlVolumes
@@ -116,7 +116,7 @@ class Run:
             scale=np.ones((n, 3)) if scale is None else np.array(scale, dtype=np.float64),
             carbon=np.full(n, carbon_pct),
             zone_heat=np.zeros(max(len(body.zones), 1)),
-            marks=np.full((n, heat.N_MARK), NEVER_MARKED),
+            marks=np.full((n, march.N_MARK), NEVER_MARKED),
             field_moment=np.array(field_times, dtype=np.float64),
             field=np.full((len(field_times), n), np.nan),
             watch_node=watch.node,
@@ -137,7 +137,7 @@ class Run:
         self._history.append(first)
         now = p.field_moment <= 0.0
         p.field[now] = p.temp
-        p.clock[heat.FIELD_ROW] = int(now.sum())
+        p.clock[march.FIELD_ROW] = int(now.sum())
 
     def enthalpy(self) -> Array:
         """Enthalpy of every node now [J/kg], shape (n_node,)."""
@@ -194,6 +194,8 @@ class Run:
             When Newton's method fails at the smallest step.
         """
         clock = self.progress.clock
+        if until is not None and (self.progress.temp[until.node] * until.share).sum() <= until.temp:
+            return "limit"
         grid = self._tables.first + self._tables.step * np.arange(len(self._tables.value))
         n_node = self._volumes.n_node
         skin = Skin(
@@ -205,7 +207,7 @@ class Run:
             source_moment=np.zeros(1) if around.source_moment is None else around.source_moment,
         )
         control = Control(
-            end=float(clock[heat.TIME] + duration),
+            end=float(clock[march.TIME] + duration),
             tolerance=tolerance,
             bend=10.0 * tolerance,
             longest=float(longest),
@@ -213,25 +215,25 @@ class Run:
             limit_share=np.empty(0) if until is None else until.share,
             limit_temp=0.0 if until is None else until.temp,
         )
-        clock[heat.STEP] = first_step if first_step is not None else self._first_step(skin)
-        clock[heat.STEP_BEFORE] = 0.0
+        clock[march.STEP] = first_step if first_step is not None else self._first_step(skin)
+        clock[march.STEP_BEFORE] = 0.0
         while True:
-            clock[heat.HISTORY_ROW] = 0
-            status = heat.march(
+            clock[march.HISTORY_ROW] = 0
+            status = march.march(
                 self._scheme, self._body, skin, self._tables, control, self.progress, HISTORY_ROWS
             )
-            self._history.append(self.progress.history[: int(clock[heat.HISTORY_ROW])].copy())
+            self._history.append(self.progress.history[: int(clock[march.HISTORY_ROW])].copy())
             if tell is not None:
-                tell(float(clock[heat.TIME]))
-            if status == heat.GAVE_UP:
+                tell(float(clock[march.TIME]))
+            if status == march.GAVE_UP:
                 raise SolverFault(
-                    f"The heat solver gave up at {clock[heat.TIME]:.6g} s: no time step above "
-                    f"{heat.SMALLEST_STEP:g} s converged. A film curve with a jump, or a cell "
+                    f"The heat solver gave up at {clock[march.TIME]:.6g} s: no time step above "
+                    f"{march.SMALLEST_STEP:g} s converged. A film curve with a jump, or a cell "
                     "far smaller than its neighbours, is the usual cause."
                 )
-            if status == heat.REACHED_LIMIT:
+            if status == march.REACHED_LIMIT:
                 return "limit"
-            if status == heat.REACHED_END:
+            if status == march.REACHED_END:
                 return "time"
 
     def _first_step(self, skin: Skin) -> float:
@@ -248,7 +250,7 @@ class Run:
     @property
     def time(self) -> float:
         """Simulated time [s]."""
-        return float(self.progress.clock[heat.TIME])
+        return float(self.progress.clock[march.TIME])
 
     @property
     def history(self) -> Array:

@@ -76,9 +76,7 @@ def axis(
         out: Array = np.expm1(log_ratio * share) / np.expm1(log_ratio)
         return out
 
-    b = _solve(
-        lambda b: length * float(geometric(b)[1]) - first, 1e-6, float(np.log(MOST_RATIO))
-    )
+    b = _solve(lambda b: length * float(geometric(b)[1]) - first, 1e-6, float(np.log(MOST_RATIO)))
     place = length * geometric(b)
     nodes = start + place if fine == "low" else end - place[::-1]
     nodes[0], nodes[-1] = start, end

@@ -219,7 +219,9 @@ def _smooth(grid: Aggregates, level: int, backward: bool) -> None:
         i = size - 1 - turn if backward else turn
         total = grid.load[n0 + i]
         for p in range(grid.row[r0 + i], grid.row[r0 + i + 1]):
-            total += grid.weight[e0 + grid.through[p0 + p]] * grid.guess[n0 + grid.neighbour[p0 + p]]
+            total += (
+                grid.weight[e0 + grid.through[p0 + p]] * grid.guess[n0 + grid.neighbour[p0 + p]]
+            )
         grid.guess[n0 + i] = total / grid.diagonal[n0 + i]
 
 

@@ -62,9 +62,7 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
     value[:, kin.K_FERRITE] = properties.conductivity_ferrite(temp)
     value[:, kin.K_MARTENSITE] = properties.conductivity_martensite(temp)
     eq = equilibrium.equilibrium(composition)
-    soaked = equilibrium.equilibrium(
-        type(composition)(**{**vars(composition), "C": carbon})
-    )
+    soaked = equilibrium.equilibrium(type(composition)(**{**vars(composition), "C": carbon}))
     rates = diffusional.rates(
         composition,
         temp,
@@ -149,4 +147,3 @@ def inert_tables(
         top=NEVER_K,
         transforms=False,
     )
-

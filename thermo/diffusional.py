@@ -112,11 +112,21 @@ def rates(
     carbon = min(carbon_pct, CARBON_CAP_PCT)
     molybdenum = c.Mo if c.Mo >= RESIDUAL_MO_PCT else 0.0
     ferrite = np.exp(
-        1.00 + 6.31 * carbon + 1.78 * c.Mn + 0.31 * c.Si + 1.12 * c.Ni + 2.70 * c.Cr
+        1.00
+        + 6.31 * carbon
+        + 1.78 * c.Mn
+        + 0.31 * c.Si
+        + 1.12 * c.Ni
+        + 2.70 * c.Cr
         + 4.06 * molybdenum
     )
     pearlite = np.exp(
-        -4.25 + 4.12 * carbon + 4.36 * c.Mn + 0.44 * c.Si + 1.71 * c.Ni + 3.33 * c.Cr
+        -4.25
+        + 4.12 * carbon
+        + 4.36 * c.Mn
+        + 0.44 * c.Si
+        + 1.71 * c.Ni
+        + 3.33 * c.Cr
         + 5.19 * np.sqrt(molybdenum)
     )
     bainite = np.exp(
@@ -199,7 +209,5 @@ def range_notes(composition: Composition, carbon_pct: float, grain_astm: float) 
                 RangeNote(SOURCES[0].model, element, f"{value:g} %", f"{low:g} to {high:g} %")
             )
     if not 4.0 <= grain_astm <= 10.0:
-        notes.append(
-            RangeNote(SOURCES[0].model, "grain", f"ASTM {grain_astm:.1f}", "ASTM 4 to 10")
-        )
+        notes.append(RangeNote(SOURCES[0].model, "grain", f"ASTM {grain_astm:.1f}", "ASTM 4 to 10"))
     return notes

@@ -40,10 +40,22 @@ N_STATE = 9
 
 # Columns of the table.
 (
-    H_AUSTENITE, H_AUSTENITE_C, H_FERRITE, H_FERRITE_C, H_MARTENSITE, H_MARTENSITE_C,
-    K_AUSTENITE, K_FERRITE, K_MARTENSITE,
-    RATE_FERRITE, RATE_PEARLITE, RATE_BAINITE, RATE_CEMENTITE,
-    LIMIT_FERRITE, LIMIT_CEMENTITE, CARBON_FERRITE,
+    H_AUSTENITE,
+    H_AUSTENITE_C,
+    H_FERRITE,
+    H_FERRITE_C,
+    H_MARTENSITE,
+    H_MARTENSITE_C,
+    K_AUSTENITE,
+    K_FERRITE,
+    K_MARTENSITE,
+    RATE_FERRITE,
+    RATE_PEARLITE,
+    RATE_BAINITE,
+    RATE_CEMENTITE,
+    LIMIT_FERRITE,
+    LIMIT_CEMENTITE,
+    CARBON_FERRITE,
 ) = range(16)
 N_COLUMN = 16
 
@@ -167,8 +179,8 @@ def advance_node(
                     state[CARBON_AUSTENITE] -= more * here[CARBON_FERRITE]
                     austenite -= more
                 slope += by_temp * per * scale[0] * (there[RATE_FERRITE] - here[RATE_FERRITE])
-                limit = (
-                    here[LIMIT_CEMENTITE] + share * (there[LIMIT_CEMENTITE] - here[LIMIT_CEMENTITE])
+                limit = here[LIMIT_CEMENTITE] + share * (
+                    there[LIMIT_CEMENTITE] - here[LIMIT_CEMENTITE]
                 )
                 limit = min(limit, state[CEMENTITE] + austenite)
                 if limit > state[CEMENTITE]:
@@ -222,9 +234,9 @@ def advance_node(
 
 
 @kernel
-def enthalpy_node(state: Array, temp: float, initial_carbon: float, tables: Tables) -> tuple[
-    float, float, float
-]:
+def enthalpy_node(
+    state: Array, temp: float, initial_carbon: float, tables: Tables
+) -> tuple[float, float, float]:
     """Enthalpy [J/kg], its slope at fixed fractions [J/(kg K)], conductivity [W/(m K)]."""
     austenite = 1.0
     for i in range(5):
@@ -241,18 +253,22 @@ def enthalpy_node(state: Array, temp: float, initial_carbon: float, tables: Tabl
     here = value[row]
     there = value[row + 1]
     low = (
-        austenite * here[H_AUSTENITE] + carbon_a * here[H_AUSTENITE_C]
-        + rest * here[H_FERRITE] + carbon_rest * here[H_FERRITE_C]
-        + martensite * here[H_MARTENSITE] + carbon_m * here[H_MARTENSITE_C]
+        austenite * here[H_AUSTENITE]
+        + carbon_a * here[H_AUSTENITE_C]
+        + rest * here[H_FERRITE]
+        + carbon_rest * here[H_FERRITE_C]
+        + martensite * here[H_MARTENSITE]
+        + carbon_m * here[H_MARTENSITE_C]
     )
     high = (
-        austenite * there[H_AUSTENITE] + carbon_a * there[H_AUSTENITE_C]
-        + rest * there[H_FERRITE] + carbon_rest * there[H_FERRITE_C]
-        + martensite * there[H_MARTENSITE] + carbon_m * there[H_MARTENSITE_C]
+        austenite * there[H_AUSTENITE]
+        + carbon_a * there[H_AUSTENITE_C]
+        + rest * there[H_FERRITE]
+        + carbon_rest * there[H_FERRITE_C]
+        + martensite * there[H_MARTENSITE]
+        + carbon_m * there[H_MARTENSITE_C]
     )
-    low_k = (
-        austenite * here[K_AUSTENITE] + rest * here[K_FERRITE] + martensite * here[K_MARTENSITE]
-    )
+    low_k = austenite * here[K_AUSTENITE] + rest * here[K_FERRITE] + martensite * here[K_MARTENSITE]
     high_k = (
         austenite * there[K_AUSTENITE] + rest * there[K_FERRITE] + martensite * there[K_MARTENSITE]
     )

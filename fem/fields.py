@@ -1,0 +1,158 @@
+"""Field files that any VTK viewer opens: one PVD index and one VTU per stored time.
+
+Layout
+------
+``fields.pvd`` lists ``fields/step_0000.vtu`` and so on, and last ``final.vtu``,
+which can also be opened alone. PVD times are seconds.
+
+Every file carries the same arrays. What is known only at the end of the run
+(phases, hardness, times, rates) is nan before the end: viewers build the list
+of arrays from one file of a series and drop or misname an array that others
+lack, and a zero would be read as a result.
+
+Units
+-----
+Point coordinates are metres, as everywhere inside. Each array ends with its
+unit (``UNIT_ENDINGS``); ``position_mm`` repeats the coordinates in the unit of
+the drawing, so that a viewer shows both and nobody has to guess the scale. (A
+VTU has no place for the unit of its coordinates, and meshio drops field data.)
+
+Format
+------
+VTK XML UnstructuredGrid 0.1 through meshio, base64, zlib in blocks of 32 KiB,
+float64, nan kept. Connectivity is int32 where it fits: half the bytes.
+"""
+
+from collections.abc import Mapping
+from pathlib import Path
+from xml.sax.saxutils import quoteattr
+
+import numpy as np
+
+from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.errors import InputFault
+
+UNIT_ENDINGS = (
+    "_K_per_s",
+    "_degC",
+    "_fraction",
+    "_HV",
+    "_mm",
+    "_pct",
+    "_s",
+)
+INDEX = "fields.pvd"
+FINAL = "final.vtu"
+STEPS = "fields"
+
+
+def write_series(
+    folder: Path,
+    *,
+    points_mm: Array,
+    quads: IntArray,
+    triangles: IntArray,
+    times_s: Array,
+    each_time: Mapping[str, Array],
+    at_end: Mapping[str, Array],
+) -> Path:
+    """Write the whole series and return the path of its index.
+
+    Parameters
+    ----------
+    folder
+        An existing folder; files of an earlier series in it are overwritten.
+    points_mm
+        Points of the drawing [mm], shape (n_point, 3).
+    quads, triangles
+        Corner points of the cells, shapes (n_quad, 4) and (n_triangle, 3);
+        either may be empty, not both.
+    times_s
+        Stored times [s], rising, shape (n_time,).
+    each_time
+        Arrays known at every stored time, shape (n_time, n_point).
+    at_end
+        Arrays known at the end, shape (n_point,); nan where not available.
+
+    Raises
+    ------
+    InputFault
+        A name without a unit, two arrays with one name, shapes that do not
+        agree, times that do not rise, or a cell that names a missing point.
+    """
+    _check(points_mm, quads, triangles, times_s, each_time, at_end)
+    cells = [(kind, _narrow(block)) for kind, block in _blocks(quads, triangles) if len(block)]
+    points = np.ascontiguousarray(points_mm * 1e-3)
+    unknown = np.full(len(points), np.nan)
+    last = len(times_s) - 1
+    names = [f"{STEPS}/step_{k:04d}.vtu" for k in range(last)] + [FINAL]
+    (folder / STEPS).mkdir(exist_ok=True)
+    for k, name in enumerate(names):
+        data = {key: values[k] for key, values in each_time.items()}
+        data |= {key: values if k == last else unknown for key, values in at_end.items()}
+        _write_vtu(folder / name, points, cells, data | {"position_mm": points_mm})
+    index = folder / INDEX
+    index.write_text(_index(times_s, names), encoding="utf-8", newline="\n")
+    return index
+
+
+def _blocks(quads: IntArray, triangles: IntArray) -> tuple[tuple[str, IntArray], ...]:
+    return ("quad", quads), ("triangle", triangles)
+
+
+def _narrow(block: IntArray) -> IntArray:
+    fits = block.max() <= np.iinfo(np.int32).max
+    return block.astype(np.int32) if fits else block
+
+
+def _write_vtu(
+    path: Path, points: Array, cells: list[tuple[str, IntArray]], data: Mapping[str, Array]
+) -> None:
+    import meshio
+
+    mesh = meshio.Mesh(
+        points, cells, {key: np.asarray(values, dtype=np.float64) for key, values in data.items()}
+    )
+    meshio.write(path, mesh, file_format="vtu", binary=True, compression="zlib")
+
+
+def _index(times_s: Array, names: list[str]) -> str:
+    rows = "\n".join(
+        f'    <DataSet timestep="{float(time)!r}" group="" part="0" file={quoteattr(name)}/>'
+        for time, name in zip(times_s, names, strict=True)
+    )
+    return (
+        '<?xml version="1.0"?>\n'
+        '<VTKFile type="Collection" version="0.1">\n'
+        "  <!-- timestep in seconds; point coordinates in metres -->\n"
+        f"  <Collection>\n{rows}\n  </Collection>\n</VTKFile>\n"
+    )
+
+
+def _check(
+    points_mm: Array,
+    quads: IntArray,
+    triangles: IntArray,
+    times_s: Array,
+    each_time: Mapping[str, Array],
+    at_end: Mapping[str, Array],
+) -> None:
+    n_point, n_time = len(points_mm), len(times_s)
+    if points_mm.ndim != 2 or points_mm.shape[1] != 3 or not np.all(np.isfinite(points_mm)):
+        raise InputFault("points", f"shape {points_mm.shape}", "(n_point, 3), finite")
+    if n_time == 0 or np.any(np.diff(times_s) <= 0.0) or not np.all(np.isfinite(times_s)):
+        raise InputFault("stored times", f"{times_s}", "at least one, finite and rising")
+    if len(quads) + len(triangles) == 0:
+        raise InputFault("cells", "none", "at least one quad or triangle")
+    for kind, block in _blocks(quads, triangles):
+        if len(block) and not 0 <= block.min() <= block.max() < n_point:
+            raise InputFault(f"{kind} corners", f"{block.min()} to {block.max()}", "known points")
+    for expected, arrays in (((n_time, n_point), each_time), ((n_point,), at_end)):
+        for name, values in arrays.items():
+            if not name.endswith(UNIT_ENDINGS):
+                raise InputFault("field name", name, f"one ending with {', '.join(UNIT_ENDINGS)}")
+            if values.shape != expected:
+                raise InputFault(f"shape of {name}", f"{values.shape}", f"{expected}")
+    for name in ({"position_mm"} | set(each_time)) & (set(at_end) | {"position_mm"}):
+        if name in each_time or name in at_end:
+            raise InputFault("field name", name, "used once")

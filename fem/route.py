@@ -1,0 +1,255 @@
+"""A section through all stages of its route, and what that leaves.
+
+The part starts at one temperature, that of the soak; each stage then has films
+by zone and an end by time, by a place reaching a temperature, or both.
+"""
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from midradius.fem import march
+from midradius.fem.coupled import Run, Surroundings, Until, Watch
+from midradius.fem.section import Cut, Place
+from midradius.fem.surface import Film
+from midradius.thermo.arrays import Array
+from midradius.thermo.assemble import fractions
+from midradius.thermo.errors import InputFault
+from midradius.thermo.kinetics import CARBON_AUSTENITE, PEARLITE, PEARLITE_HEAT, Tables
+from midradius.thermo.units import show
+
+PART_OF_AUSTENITE = 1e-6  # less austenite than this has no carbon content to speak of
+LONGEST_STAGE = 30.0 * 24.0 * 3600.0  # s, for a stage that ends by temperature only
+HOTTER_BY = 2.0  # K by which a bath may exceed the part before it counts as heating
+
+
+@dataclass(frozen=True)
+class Surface:
+    """What one zone sees in a stage: a film and the temperature [K] beyond it."""
+
+    label: str
+    film: Film
+    ambient: float
+
+
+@dataclass(frozen=True)
+class CoolingStage:
+    """One stage: its kind, the zones' surfaces, its longest time [s], its condition."""
+
+    kind: str
+    label: str
+    surfaces: Mapping[str, Surface]
+    duration: float | None
+    until_place: str | None = None
+    until_temp: float | None = None
+
+
+@dataclass(frozen=True)
+class StageEnd:
+    """How a stage went: times [s], what ended it, heat given off [J per extent]."""
+
+    start: float
+    end: float
+    ended_by: str
+    heat_given: float
+
+
+@dataclass(frozen=True)
+class History:
+    """What a march leaves.
+
+    ``field`` (n_time, n_node) [K] at ``times`` (n_time,); ``step_times``
+    (n_step,), ``watch_temp`` (n_step, n_watch) [K] and ``watch_phases``
+    (n_step, n_phase, n_watch); at the end ``temp`` (n_node,), ``phases``
+    (n_phase, n_node), ``carbon_austenite_pct``, ``pearlite_temp`` [K],
+    ``time_800_500`` [s], ``rate_700`` [K/s], (n_node,) each and nan where there
+    is none. Heat in J per the section's extent.
+    """
+
+    times: Array
+    field: Array
+    step_times: Array
+    watch_temp: Array
+    watch_phases: Array
+    temp: Array
+    coldest: Array
+    phases: Array
+    carbon_austenite_pct: Array
+    pearlite_temp: Array
+    time_800_500: Array
+    rate_700: Array
+    stages: tuple[StageEnd, ...]
+    heat_before: float
+    heat_after: float
+    n_step: int
+    n_refused: int
+    n_newton: int
+
+    @property
+    def heat_given(self) -> float:
+        """Heat through all surfaces [J per extent]."""
+        return sum(stage.heat_given for stage in self.stages)
+
+    @property
+    def balance(self) -> float:
+        """Enthalpy lost against heat given off, relative to the latter."""
+        lost = self.heat_before - self.heat_after
+        return abs(lost - self.heat_given) / max(abs(self.heat_given), 1e-300)
+
+
+def cool(
+    cut: Cut,
+    tables: Tables,
+    stages: tuple[CoolingStage, ...],
+    *,
+    density: float,
+    start_temp: float,
+    state: Array,
+    carbon_pct: float,
+    places: Mapping[str, Place],
+    watched: tuple[str, ...],
+    field_times: Array,
+    tolerance: float,
+    tell: Callable[[float], None] | None = None,
+) -> History:
+    """March a cut section through its stages.
+
+    Parameters
+    ----------
+    cut
+        The section with its grid.
+    tables
+        The steel.
+    stages
+        After the soak.
+    density, start_temp, carbon_pct
+        [kg/m3], [K], [mass %].
+    state
+        Starting state of every node, (n_node, N_STATE).
+    places
+        Every place a stage or the caller names.
+    watched
+        The places followed at every step, in this order.
+    field_times
+        When to keep the whole field [s], ascending; beyond the end of the route
+        the last field is kept.
+    tolerance
+        Local temperature error per step [K].
+    tell
+        Called with the simulated time [s] now and then.
+
+    Raises
+    ------
+    SolverFault
+        The solver gave up.
+    InputFault
+        A bath is hotter than the part when its stage begins, or a stage that
+        ends by temperature never gets there.
+    """
+    body = cut.body
+    run = Run(
+        body,
+        tables,
+        density=density,
+        temp=np.full(body.n_node, start_temp),
+        state=state,
+        carbon_pct=carbon_pct,
+        watch=Watch(
+            np.array([places[name].node for name in watched]),
+            np.array([places[name].share for name in watched]),
+        ),
+        field_times=field_times,
+    )
+    ends = []
+    for number, stage in enumerate(stages, start=2):
+        _refuse_heating(stage, number, run.progress.temp)
+        begun, before = run.time, run.progress.zone_heat.sum()
+        until = None
+        if stage.until_place is not None and stage.until_temp is not None:
+            place = places[stage.until_place]
+            until = Until(place.node, place.share, stage.until_temp)
+        ended = run.stage(
+            surroundings(body.zones, stage.surfaces),
+            duration=LONGEST_STAGE if stage.duration is None else stage.duration,
+            tolerance=tolerance,
+            until=until,
+            tell=tell,
+        )
+        if ended == "time" and stage.duration is None:
+            raise InputFault(
+                f"route[{number}].until",
+                f'"{stage.until_place} below {show(stage.until_temp or 0.0, "temperature")}"',
+                "reached within 30 days",
+                "Give the stage a time, or a temperature that its surroundings allow.",
+            )
+        given = -(run.progress.zone_heat.sum() - before)
+        ends.append(StageEnd(begun, run.time, ended, float(given)))
+    return _history(run, tuple(ends), field_times)
+
+
+def surroundings(zones: tuple[str, ...], surfaces: Mapping[str, Surface]) -> Surroundings:
+    """The zones' films on one common temperature axis."""
+    seen = [surfaces[zone] for zone in zones]
+    temp = np.unique(np.concatenate([s.film.temp for s in seen]))
+    return Surroundings(
+        film_temp=temp,
+        film_htc=np.array([s.film.at(temp) for s in seen]),
+        ambient=np.array([[s.ambient] for s in seen]),
+        moment=np.zeros(1),
+        flux=np.zeros(len(zones)),
+    )
+
+
+def _refuse_heating(stage: CoolingStage, number: int, temp: Array) -> None:
+    hottest = float(temp.max())
+    for zone, surface in stage.surfaces.items():
+        if surface.film.htc.max() > 0.0 and surface.ambient > hottest + HOTTER_BY:
+            raise InputFault(
+                f"route[{number}].bath",
+                f'"{show(surface.ambient, "temperature")}" on "{zone}"',
+                f"colder than the part, which is at {show(hottest, 'temperature')} by then",
+                "Heating up again is not computed: end the stage before earlier, or cool the bath.",
+            )
+
+
+def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
+    p = run.progress
+    steps = run.history
+    field = p.field.copy()
+    field[np.isnan(field).any(axis=1)] = p.temp
+    carbon, pearlite = p.state[:, CARBON_AUSTENITE], p.state[:, PEARLITE]
+    phases = fractions(p.state)
+    austenite = phases[0]
+    some = austenite > PART_OF_AUSTENITE
+    marked = p.marks >= 0.0
+    both = marked[:, 0] & marked[:, 2]
+    formed = pearlite > PART_OF_AUSTENITE
+    return History(
+        times=np.array(times),
+        field=field,
+        step_times=steps[:, 0, 0],
+        watch_temp=steps[:, 1:, 0],
+        watch_phases=np.concatenate(
+            [
+                1.0 - steps[:, 1:, 1:].sum(axis=2, keepdims=True),
+                steps[:, 1:, 1:],
+            ],
+            axis=2,
+        ).transpose(0, 2, 1),
+        temp=p.temp.copy(),
+        coldest=run.coldest,
+        phases=phases,
+        carbon_austenite_pct=np.where(some, carbon / np.where(some, austenite, 1.0), np.nan),
+        pearlite_temp=np.where(
+            formed, p.state[:, PEARLITE_HEAT] / np.where(formed, pearlite, 1.0), np.nan
+        ),
+        time_800_500=np.where(both, p.marks[:, 2] - p.marks[:, 0], np.nan),
+        rate_700=np.where(marked[:, 1], p.marks[:, 3], np.nan),
+        stages=stages,
+        heat_before=run.heat_at_start,
+        heat_after=run.heat(),
+        n_step=int(p.clock[march.TAKEN]),
+        n_refused=int(p.clock[march.REFUSED]),
+        n_newton=int(p.clock[march.ITERATIONS]),
+    )

@@ -1,0 +1,230 @@
+"""The command line. Numerics are imported only inside the commands that need them."""
+
+import json
+import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any
+
+import click
+
+DONE, NOT_MET, BAD_INPUT, GAVE_UP = 0, 1, 2, 3
+INTERRUPTED = 130
+
+_EPILOG = """\b
+Exit codes:
+  0  done
+  1  a requirement of the case is not met (kept for requirements)
+  2  bad input: nothing was written
+  3  the solver gave up: nothing was written
+130  interrupted: nothing was written
+"""
+
+_RUN_EPILOG = """\b
+Examples:
+  midradius run shaft.toml --out shaft
+  midradius run shaft.toml --out shaft --json > shaft.json
+  midradius run shaft.toml --out shaft --quiet
+
+\b
+The folder holds:
+  fields.pvd, fields_*.vtu  temperatures over time, for any VTK viewer
+  final.vtu                 phases, hardness and cooling times at the end
+  histories.csv             temperature over time at the named positions
+  profile.csv               everything from surface to core
+  positions.csv             the answer at the named positions
+  record.h5                 all of it, with inputs, versions and sources
+  *.png                     cooling curves, profile, section
+"""
+
+
+@click.group(
+    context_settings={"help_option_names": ["-h", "--help"]},
+    epilog=_EPILOG,
+    no_args_is_help=True,
+)
+@click.version_option(package_name="midradius", prog_name="midradius")
+def cli() -> None:
+    """Through-section cooling of steel parts: what hardness is reached at depth.
+
+    A case file says steel, section and route; midradius computes the cooling,
+    the microstructure and the hardness at every depth.
+
+    \b
+    Start with:
+      midradius new shaft.toml
+      midradius run shaft.toml --out shaft
+    """
+
+
+@cli.command(epilog=_RUN_EPILOG)
+@click.argument("case", type=click.Path(path_type=Path))
+@click.option(
+    "--out",
+    "folder",
+    type=click.Path(path_type=Path),
+    help="Result folder; an earlier midradius result there is replaced. Default: the case's name.",
+)
+@click.option("--json", "as_json", is_flag=True, help="Print one JSON document, nothing else.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
+    """Solve CASE and write a result folder."""
+    from midradius.study.casefile import read
+
+    with _answered():
+        asked = read(case)
+        from midradius.study import job
+
+        target = folder if folder is not None else Path(case.stem)
+        with _progress(asked.title, hidden=quiet or as_json) as tell:
+            result = job.run(asked, target, tell=tell)
+    if as_json:
+        from midradius.study.summary import document
+
+        click.echo(json.dumps(document(result), indent=1, ensure_ascii=False, allow_nan=False))
+    elif not quiet:
+        from rich.console import Console
+
+        from midradius.study.summary import terminal
+
+        console = Console(highlight=False)
+        terminal(result, console)
+        console.print(f"Written to {target}", markup=False)
+
+
+@cli.command()
+@click.argument("case", type=click.Path(path_type=Path))
+def check(case: Path) -> None:
+    """Read CASE, name all its faults, and solve nothing."""
+    from midradius.study.casefile import read
+
+    with _answered():
+        asked = read(case)
+    click.echo(f"{case}: sound ({asked.title})")
+
+
+@cli.command()
+@click.argument("file", type=click.Path(path_type=Path), required=False)
+@click.option(
+    "--form",
+    type=click.Choice(["slab", "round", "tube", "ball", "bar", "ring"]),
+    default="round",
+    show_default=True,
+    help="Form of the section.",
+)
+def new(file: Path | None, form: str) -> None:
+    """Write a commented starter case to FILE, or to the screen without one."""
+    from midradius.study.starter import text
+
+    content = text(form)
+    if file is None:
+        click.echo(content, nl=False)
+        return
+    with _answered():
+        _write_new(file, content)
+    click.echo(f"Wrote {file}. Next: midradius run {file} --out {file.stem}", err=True)
+
+
+def _write_new(file: Path, content: str) -> None:
+    from midradius.thermo.errors import InputFault
+
+    try:
+        with file.open("x", encoding="utf-8") as stream:
+            stream.write(content)
+    except FileExistsError:
+        raise InputFault(
+            "file", str(file), "a new name", "It exists already and was not touched."
+        ) from None
+    except OSError as fault:
+        raise InputFault("file", str(file), "a place that can be written", f"{fault}.") from fault
+
+
+@cli.command()
+@click.argument("part", required=False, default="")
+def steels(part: str) -> None:
+    """List the shipped grades, or those whose name or number contains PART."""
+    from midradius.thermo.grades import all_grades
+
+    for steel in all_grades():
+        if part.lower() in f"{steel.name} {steel.standard}".lower():
+            aims = ", ".join(f"{k} {v:g}" for k, v in vars(steel.composition).items() if v)
+            click.echo(f"{steel.name:14} {steel.standard:34} {aims}")
+
+
+@cli.command()
+def media() -> None:
+    """List the media and the bath temperatures they are known for."""
+    from midradius.fem.media import ZERO_DEGC, medium, names
+
+    for name in names():
+        found = medium(name)
+        low, high = found.bath_min - ZERO_DEGC, found.bath_max - ZERO_DEGC
+        bath = "no bath" if found.kind == "ideal" else f"{low:.0f} to {high:.0f} degC"
+        click.echo(f"{name:26} {bath:18} film +-{found.uncertainty_pct:.0f} %")
+
+
+@cli.command()
+def schema() -> None:
+    """Print the JSON Schema of the case file, for editors."""
+    from midradius.study.schema import document
+
+    click.echo(json.dumps(document(), indent=2, ensure_ascii=False))
+
+
+@contextmanager
+def _answered() -> Iterator[None]:
+    """Turn what can go wrong into one message and the documented exit code."""
+    from midradius.thermo.errors import MidradiusError, SolverFault
+
+    try:
+        yield
+    except SolverFault as fault:
+        click.echo(f"{fault}", err=True)
+        sys.exit(GAVE_UP)
+    except MidradiusError as fault:
+        click.echo(f"{fault}", err=True)
+        sys.exit(BAD_INPUT)
+    except KeyboardInterrupt:
+        click.echo("Interrupted; nothing was written.", err=True)
+        sys.exit(INTERRUPTED)
+
+
+@contextmanager
+def _progress(title: str, *, hidden: bool) -> Iterator[Callable[[float, float], None] | None]:
+    """A bar on stderr with the simulated time, only where a person watches."""
+    if hidden or not sys.stderr.isatty():
+        yield None
+        return
+    from rich.console import Console
+    from rich.progress import BarColumn, Progress, TextColumn
+
+    from midradius.study.summary import duration
+
+    columns: list[Any] = [
+        TextColumn("cooling", markup=False),
+        BarColumn(),
+        TextColumn("{task.fields[now]} of about {task.fields[end]}", markup=False),
+    ]
+    with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
+        task = bar.add_task(title, total=1.0, now="0 s", end="?")
+
+        def tell(now: float, end: float) -> None:
+            bar.update(task, completed=min(now / end, 1.0), now=duration(now), end=duration(end))
+
+        yield tell
+
+
+def main() -> None:
+    """The console entry: Ctrl-C anywhere ends quietly, a closed pipe too."""
+    try:
+        cli(standalone_mode=False)
+    except click.exceptions.Abort:
+        click.echo("Interrupted; nothing was written.", err=True)
+        sys.exit(INTERRUPTED)
+    except click.ClickException as fault:
+        fault.show()
+        sys.exit(fault.exit_code)
+    except BrokenPipeError:
+        sys.stderr.close()
+        sys.exit(DONE)

@@ -1,0 +1,365 @@
+"""Run a case: solve, solve again coarser and finer in time, say how far to trust it."""
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+from functools import partial
+
+import numpy as np
+
+from midradius.fem import section as forms
+from midradius.fem.drawing import draw
+from midradius.fem.media import ZERO_DEGC
+from midradius.fem.route import CoolingStage, History, cool
+from midradius.fem.section import Cut, Place
+from midradius.study.case import Case
+from midradius.study.result import Position, Profile, Result, SectionView, StageRecord
+from midradius.study.setup import Setup, coordinates_of, prepare
+from midradius.thermo import austenite as soaking
+from midradius.thermo import (
+    conversion,
+    diffusional,
+    equilibrium,
+    hardness,
+    martensite,
+    properties,
+    steel,
+)
+from midradius.thermo.arrays import Array
+from midradius.thermo.assemble import initial_state, steel_tables
+from midradius.thermo.austenite import Austenite
+from midradius.thermo.kinetics import Tables
+from midradius.thermo.phases import PHASE_NAMES
+from midradius.thermo.source import RangeNote, Source
+
+TOLERANCE_PER_ACCURACY = 0.1  # error of one step against the asked accuracy of the run
+TIGHTER = 1.0 / 8.0  # tolerance of the run that measures the time error
+# The error of a second-order method goes with tolerance^(2/3): what the tighter
+# run still has, and so what its difference from the looser one leaves out.
+TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
+GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
+MOST_NODES = {1: 2049, 2: 25_000}
+SHORTEST_FIELD = 1.0  # s, the first field time after the start
+
+Tell = Callable[[float, float], None]
+
+
+@dataclass(frozen=True)
+class _Attempt:
+    """One march with the hardness it gives."""
+
+    cut: Cut
+    history: History
+    hardness_hv: Array
+
+
+@dataclass(frozen=True)
+class _Material:
+    """The steel of a case, ready to march."""
+
+    case: Case
+    austenite: Austenite
+    tables: Tables
+    start_temp: float
+
+    def march(
+        self,
+        cut: Cut,
+        stages: tuple[CoolingStage, ...],
+        places: Mapping[str, Place],
+        watched: tuple[str, ...],
+        times: Array,
+        tolerance: float,
+        tell: Callable[[float], None] | None = None,
+    ) -> _Attempt:
+        carbon = self.case.steel.steel.composition.C
+        history = cool(
+            cut,
+            self.tables,
+            stages,
+            density=properties.DENSITY,
+            start_temp=self.start_temp,
+            state=initial_state(self.austenite, carbon, self.start_temp, cut.body.n_node),
+            carbon_pct=carbon,
+            places=places,
+            watched=watched,
+            field_times=times,
+            tolerance=tolerance,
+            tell=tell,
+        )
+        return _Attempt(cut, history, self.hardness(history))
+
+    def hardness(self, history: History) -> Array:
+        composition = self.case.steel.steel.composition
+        total, _ = hardness.vickers(
+            history.phases,
+            composition,
+            carbon_austenite_pct=self.austenite.carbon_pct * np.ones(history.phases.shape[1]),
+            carbon_initial_pct=composition.C,
+            rate_700=history.rate_700,
+            pearlite_temp=history.pearlite_temp,
+            ae1=equilibrium.equilibrium(composition).ae1,
+            grain_intercept=self.austenite.grain_mean_intercept,
+        )
+        return total
+
+
+def run(case: Case, *, tell: Tell | None = None) -> Result:
+    """Solve a case.
+
+    Parameters
+    ----------
+    case
+        From :func:`midradius.study.casefile.read`, or made in Python.
+    tell
+        Called with the simulated time [s] and the expected end [s] now and then.
+
+    Returns
+    -------
+    Result
+        Frozen; arrays with units in their names.
+
+    Raises
+    ------
+    InputFault
+        The case asks for something that cannot be computed.
+    SolverFault
+        The solver gave up.
+    """
+    setup = prepare(case)
+    soak = case.route[0]
+    assert soak.at is not None and soak.time is not None, "the first stage is a soak"
+    left = soaking.soak(case.steel.steel, soak.at, soak.time, grain_astm=case.steel.grain_astm)
+    material = _Material(case, left, steel_tables(case.steel.steel, left), soak.at)
+    tolerance = TOLERANCE_PER_ACCURACY * case.grid.accuracy
+    cells = case.grid.cells or forms.cells_for(setup.section, case.grid.accuracy)
+    while True:
+        fine = forms.cut(setup.section, _even(cells), strongest_film=setup.strongest_film)
+        coarse = fine.coarser()
+        march = partial(material.march, stages=setup.stages, watched=_watched(case))
+        at_fine, at_coarse = _places(case, fine), _places(case, coarse)
+        scout = march(
+            coarse, places=at_coarse, times=np.zeros(1), tolerance=4.0 * tolerance
+        ).history
+        times = _field_times(case, scout)
+        end = float(scout.step_times[-1])
+        main = march(
+            fine,
+            places=at_fine,
+            times=times,
+            tolerance=tolerance,
+            tell=None if tell is None else lambda now, end=end: tell(now, end),  # type: ignore[misc]
+        )
+        rough = march(coarse, places=at_coarse, times=times, tolerance=tolerance)
+        grid_error = GRID_FACTOR * float(
+            np.abs(_shared(main.history.field, fine) - rough.history.field).max()
+        )
+        finer = tuple(2 * count for count in _even(cells))
+        nodes = np.prod([count + 1 for count in finer])
+        if case.grid.cells or grid_error <= case.grid.accuracy or nodes > MOST_NODES[len(finer)]:
+            break
+        cells = finer
+    sharp = march(coarse, places=at_coarse, times=times, tolerance=TIGHTER * tolerance)
+    time_error = TIME_FACTOR * float(np.abs(sharp.history.field - rough.history.field).max())
+    return _result(
+        case, setup, material, main, rough, sharp, at_fine, at_coarse, time_error, grid_error
+    )
+
+
+def _even(cells: tuple[int, ...]) -> tuple[int, ...]:
+    """Counts that halve twice, so that the coarser grid keeps every second node."""
+    return tuple(4 * int(np.ceil(count / 4)) for count in cells)
+
+
+def _shared(field: Array, fine: Cut) -> Array:
+    """A field on the nodes that the coarser grid kept, (n_time, n_coarse)."""
+    shape = [len(a.nodes) for a in fine.axes]
+    kept = field.reshape(len(field), *shape)[(slice(None), *[slice(None, None, 2)] * len(shape))]
+    return kept.reshape(len(field), -1)
+
+
+def _watched(case: Case) -> tuple[str, ...]:
+    return tuple(place.name for place in case.outputs.positions)
+
+
+def _places(case: Case, cut: Cut) -> dict[str, Place]:
+    named = {place.name: place for place in case.outputs.positions}
+    for stage in case.route[1:]:
+        if stage.until and stage.until.position not in named:
+            named[stage.until.position] = case.position(stage.until.position)
+    return {
+        name: forms.place(cut, coordinates_of(cut.section, place)) for name, place in named.items()
+    }
+
+
+def _field_times(case: Case, scout: History) -> Array:
+    """The case's times, or an even spread in the logarithm within every stage."""
+    end = float(scout.step_times[-1])
+    if case.outputs.field_times:
+        return np.array(sorted(case.outputs.field_times))
+    count = case.outputs.n_field
+    total = sum(stage.end - stage.start for stage in scout.stages)
+    times = [0.0]
+    for stage in scout.stages:
+        span = stage.end - stage.start
+        share = max(2, int(round(count * max(span / total, 1.0 / len(scout.stages)))))
+        first = min(SHORTEST_FIELD, 0.25 * span)
+        times += list(stage.start + np.geomspace(first, span, share))
+    chosen = np.unique(np.round(times, 6))
+    if len(chosen) > count:
+        keep = np.unique(np.round(np.linspace(0, len(chosen) - 1, count)).astype(int))
+        chosen = chosen[keep]
+    chosen[-1] = end
+    return chosen
+
+
+def _result(
+    case: Case,
+    setup: Setup,
+    material: _Material,
+    main: _Attempt,
+    rough: _Attempt,
+    sharp: _Attempt,
+    at_fine: Mapping[str, Place],
+    at_coarse: Mapping[str, Place],
+    time_error: float,
+    grid_error: float,
+) -> Result:
+    composition = case.steel.steel.composition
+    history, cut = main.history, main.cut
+    view = draw(cut)
+    depth, nodes, label = forms.profile(cut)
+    mass = properties.DENSITY * float(cut.body.volume.sum())
+    positions = tuple(
+        _position(name, main, at_fine[name], rough, sharp, at_coarse[name])
+        for name in _watched(case)
+    )
+    eq = equilibrium.equilibrium(composition)
+    left = material.austenite
+    return Result(
+        title=case.title,
+        steel=case.steel.steel.name,
+        composition_pct={k: v for k, v in vars(composition).items() if v},
+        section=setup.section.text,
+        sense=setup.section.sense,
+        points_mm=cut.body.points * 1e3,
+        volume=cut.body.volume,
+        view=SectionView(view.points * 1e3, view.quads, view.triangles, view.node),
+        times_s=history.times,
+        temp_degC=history.field - ZERO_DEGC,
+        phases=history.phases,
+        hardness_hv=main.hardness_hv,
+        time_800_500_s=history.time_800_500,
+        rate_700_K_per_s=history.rate_700,
+        austenite_carbon_pct=history.carbon_austenite_pct,
+        pearlite_formed_at_degC=history.pearlite_temp - ZERO_DEGC,
+        history_times_s=history.step_times,
+        history_temp_degC=history.watch_temp - ZERO_DEGC,
+        positions=positions,
+        profile=Profile(depth * 1e3, nodes, label),
+        stages=tuple(
+            StageRecord(
+                kind=stage.kind,
+                medium=stage.label,
+                start_s=went.start,
+                end_s=went.end,
+                ended_by="time" if went.ended_by == "time" else f"{stage.until_place} temperature",
+                heat_to_bath_J=went.heat_given,
+            )
+            for stage, went in zip(setup.stages, history.stages, strict=True)
+        ),
+        critical_degC={
+            ("Acm" if np.isfinite(eq.acm) and eq.acm > eq.ae1 else "Ae3"): (
+                eq.acm if np.isfinite(eq.acm) and eq.acm > eq.ae1 else eq.ae3
+            )
+            - ZERO_DEGC,
+            "Ae1": eq.ae1 - ZERO_DEGC,
+            "Bs": diffusional.bainite_start(replace(composition, C=left.carbon_pct)) - ZERO_DEGC,
+            "Ms": float(martensite.start(composition, left.carbon_pct)) - ZERO_DEGC,
+        },
+        soak=_soak_text(case, left),
+        heat_given_J_per_kg=history.heat_given / mass,
+        heat_balance_relative=history.balance,
+        time_error_K=time_error,
+        grid_error_K=grid_error,
+        n_step=history.n_step,
+        n_node=cut.body.n_node,
+        notes=_notes(case, setup, left, history),
+        sources=_sources(setup),
+        assumptions=setup.assumptions,
+        cautions=setup.cautions,
+        inputs=_inputs(case),
+        case_text=case.text,
+    )
+
+
+def _position(
+    name: str, main: _Attempt, at: Place, rough: _Attempt, sharp: _Attempt, at_coarse: Place
+) -> Position:
+    def here(values: Array, place: Place) -> float:
+        return float((values[place.node] * place.share).sum())
+
+    hv = here(main.hardness_hv, at)
+    hv_rough, hv_sharp = here(rough.hardness_hv, at_coarse), here(sharp.hardness_hv, at_coarse)
+    history = main.history
+    phases = {phase: here(history.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
+    return Position(
+        name=name,
+        depth_mm=at.depth * 1e3,
+        coordinates_mm=tuple(value * 1e3 for value in at.coordinates),
+        hardness_hv=hv,
+        hardness_hrc=_known(float(conversion.hv_to_hrc(np.array(hv)))),
+        hardness_hb=_known(float(conversion.hv_to_hb(np.array(hv)))),
+        tensile_mpa=_known(float(conversion.hv_to_uts(np.array(hv)))),
+        phases=phases,
+        time_800_500_s=_known(here(history.time_800_500, at)),
+        rate_700_K_per_s=_known(here(history.rate_700, at)),
+        austenite_carbon_pct=here(history.carbon_austenite_pct, at),
+        hardness_time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
+        hardness_grid_error_hv=GRID_FACTOR * abs(hv - hv_rough),
+    )
+
+
+def _known(value: float) -> float | None:
+    return value if np.isfinite(value) else None
+
+
+def _soak_text(case: Case, left: Austenite) -> str:
+    at = (case.route[0].at or 0.0) - ZERO_DEGC
+    hours = (case.route[0].time or 0.0) / 3600.0
+    text = (
+        f"{at:.0f} degC, {hours:.3g} h: {left.regime} austenite with {left.carbon_pct:.3f} % C, "
+        f"grain ASTM {left.grain_astm:.1f}"
+    )
+    if left.ferrite > 0.0:
+        text += f", {100.0 * left.ferrite:.1f} % ferrite left"
+    if left.cementite > 0.0:
+        text += f", {100.0 * left.cementite:.1f} % cementite left"
+    return text
+
+
+def _notes(case: Case, setup: Setup, left: Austenite, history: History) -> tuple[RangeNote, ...]:
+    composition = case.steel.steel.composition
+    found = [
+        *steel.range_notes(composition),
+        *left.notes,
+        *diffusional.range_notes(composition, left.carbon_pct, left.grain_astm),
+        *hardness.range_notes(composition, history.phases, history.rate_700),
+        *setup.notes,
+    ]
+    return tuple(dict.fromkeys(found))
+
+
+def _sources(setup: Setup) -> tuple[Source, ...]:
+    found: list[Source] = []
+    for module in (equilibrium, soaking, diffusional, martensite, properties, hardness, conversion):
+        found += getattr(module, "SOURCES", ()) or [module.SOURCE]
+    return tuple(dict.fromkeys([*found, *setup.sources]))
+
+
+def _inputs(case: Case) -> dict[str, object]:
+    from dataclasses import asdict
+
+    resolved = asdict(case)
+    resolved.pop("text")
+    resolved["path"] = case.path.name if case.path else None
+    return resolved

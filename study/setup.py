@@ -1,0 +1,188 @@
+"""From a case to what the solver takes: section, stages with films, assumptions."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from itertools import combinations
+
+from midradius.fem import section as forms
+from midradius.fem.convection import Geometry
+from midradius.fem.media import ZERO_DEGC, medium
+from midradius.fem.route import CoolingStage, Surface
+from midradius.fem.section import Section
+from midradius.fem.surface import beyond, film, film_from_csv
+from midradius.study.case import Case, MediumUse, PositionInput, SectionInput, Stage
+from midradius.thermo.errors import InputFault
+from midradius.thermo.source import RangeNote, Source
+
+PLATE_HEIGHT = 0.3  # m, of a slab standing in a gas; it changes free convection little
+
+
+@dataclass(frozen=True)
+class Setup:
+    """What a case means to the solver."""
+
+    section: Section
+    stages: tuple[CoolingStage, ...]
+    strongest_film: Mapping[str, float]
+    notes: tuple[RangeNote, ...]
+    sources: tuple[Source, ...]
+    assumptions: tuple[str, ...]
+    cautions: tuple[str, ...]
+
+
+def section_of(given: SectionInput) -> Section:
+    """The section of a case, not folded yet."""
+    size = {
+        name: getattr(given, name) or 0.0
+        for name in ("thickness", "diameter", "outside", "bore", "width", "height")
+    }
+    match given.form:
+        case "slab":
+            return forms.slab(size["thickness"])
+        case "round":
+            return forms.round_bar(size["diameter"], given.length)
+        case "tube":
+            return forms.tube(size["outside"], size["bore"])
+        case "ball":
+            return forms.ball(size["diameter"])
+        case "bar":
+            return forms.bar(size["width"], size["height"])
+        case "ring":
+            return forms.ring(size["outside"], size["bore"], size["height"])
+
+
+def coordinates_of(section: Section, place: PositionInput) -> tuple[float, ...]:
+    """Where a position of the case lies [m]."""
+    if place.coordinates is not None:
+        return place.coordinates
+    return forms.trade_place(section, place.kind, place.depth)
+
+
+def prepare(case: Case) -> Setup:
+    """Everything the solver needs of a case but the steel.
+
+    Raises
+    ------
+    InputFault
+        A film curve that cannot be read, a bath outside its medium's limits, a
+        zone that no medium was given for.
+    """
+    section = section_of(case.section)
+    uses = [_uses(section, case.section, stage) for stage in case.route[1:]]
+    same = {
+        pair: all(use[pair[0]] == use[pair[1]] for use in uses)
+        for pair in combinations(section.zones, 2)
+    }
+    section = section.folded(same)
+    notes: list[RangeNote] = []
+    sources: list[Source] = []
+    cautions: list[str] = []
+    stages = []
+    strongest: dict[str, float] = dict.fromkeys(section.zones, 0.0)
+    soak = case.route[0].at or 0.0
+    for stage, use in zip(case.route[1:], uses, strict=True):
+        surfaces = {}
+        for zone, medium_use in use.items():
+            surface, more, source, warned = _surface(medium_use, section)
+            surfaces[zone] = surface
+            notes += more
+            notes += beyond(surface.film, coldest=surface.ambient, hottest=soak)
+            sources += source
+            cautions += warned
+            strongest[zone] = max(strongest[zone], float(surface.film.htc.max()))
+        stages.append(
+            CoolingStage(
+                kind=stage.kind,
+                label=_label(surfaces),
+                surfaces=surfaces,
+                duration=stage.time,
+                until_place=stage.until.position if stage.until else None,
+                until_temp=stage.until.temp if stage.until else None,
+            )
+        )
+    return Setup(
+        section=section,
+        stages=tuple(stages),
+        strongest_film=strongest,
+        notes=tuple(dict.fromkeys(notes)),
+        sources=tuple(dict.fromkeys(sources)),
+        assumptions=_assumptions(case, section),
+        cautions=tuple(dict.fromkeys(cautions)),
+    )
+
+
+def _uses(section: Section, given: SectionInput, stage: Stage) -> dict[str, MediumUse]:
+    """What each zone of the section sees in a stage."""
+    found = {}
+    for zone in section.zones:
+        use = stage.faces.get(zone)
+        if use is None and zone == "bore" and given.bore_medium is not None:
+            use = given.bore_medium
+        use = use or stage.medium
+        if use is None:
+            raise InputFault(
+                "medium", "missing", f'given for the zone "{zone}"', "Name a medium for the stage."
+            )
+        found[zone] = use
+    return found
+
+
+_GEOMETRY: Mapping[str, Geometry] = {
+    "slab": "vertical plate",
+    "bar": "vertical plate",
+    "ball": "sphere",
+}
+
+
+def _surface(
+    use: MediumUse, section: Section
+) -> tuple[Surface, list[RangeNote], list[Source], tuple[str, ...]]:
+    if use.film_file is not None:
+        curve = film_from_csv(use.film_file)
+        if use.bath is None:
+            raise InputFault(
+                "bath", "missing", "given beside a film curve", 'Write bath = "60 degC".'
+            )
+        own = Source("film curve", use.film_file.name, "the user's own", "read")
+        return Surface(f'film "{use.film_file.name}"', curve, use.bath), [], [own], ()
+    found = medium(use.name or "")
+    bath = use.bath if use.bath is not None else found.bath_default
+    if bath is None:
+        raise InputFault("bath", "missing", f'given for "{found.name}"', 'Write bath = "60 degC".')
+    spans = section.spans
+    length = 2.0 * spans[0].high
+    if section.form == "slab":
+        length = PLATE_HEIGHT
+    elif section.form == "bar":
+        length = spans[1].length
+    curve, notes = film(
+        found, bath=bath, length=length, geometry=_GEOMETRY.get(section.form, "horizontal cylinder")
+    )
+    label = found.name if found.kind == "ideal" else f"{found.name}, {bath - ZERO_DEGC:.4g} degC"
+    return Surface(label, curve, bath), list(notes), [found.source], found.cautions
+
+
+def _label(surfaces: Mapping[str, Surface]) -> str:
+    labels = dict.fromkeys(surface.label for surface in surfaces.values())
+    if len(labels) == 1:
+        return next(iter(labels))
+    return "; ".join(f"{zone}: {surface.label}" for zone, surface in surfaces.items())
+
+
+def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
+    lines = [
+        "The whole section is at the soak temperature when cooling starts, and the soak time"
+        " counts from there: heating up is not computed.",
+        "One part alone in the bath; every zone has one film over all of it. Packed loads cool"
+        " slower and less evenly.",
+        "Density 7850 kg/m3 and the cold dimensions throughout.",
+    ]
+    if section.form in ("tube", "ring") and case.section.bore_medium is None:
+        lines.append("The bore sees the same medium as the outside, as freely.")
+    if section.form == "slab":
+        lines.append(f"In a gas the slab stands {PLATE_HEIGHT * 1e3:.0f} mm high.")
+    if section.form in ("round", "tube", "bar") and len(section.spans) == (
+        2 if section.form == "bar" else 1
+    ):
+        lines.append("The part is long: its ends do not cool this section.")
+    return tuple(lines)
