@@ -102,13 +102,14 @@ class Progress(NamedTuple):
 def _between(table: Array, moment: Array, row: int, now: float) -> float:
     """Linear interpolation in time of one row; the ends hold."""
     n = len(moment)
-    if n == 1 or now <= moment[0]:
-        return table[row, 0]
-    if now >= moment[n - 1]:
-        return table[row, n - 1]
-    k = np.searchsorted(moment, now) - 1
-    share = (now - moment[k]) / (moment[k + 1] - moment[k])
-    return table[row, k] + share * (table[row, k + 1] - table[row, k])
+    value: float = table[row, 0]
+    if n > 1 and now >= moment[n - 1]:
+        value = table[row, n - 1]
+    elif n > 1 and now > moment[0]:
+        k = int(np.searchsorted(moment, now)) - 1
+        share = (now - moment[k]) / (moment[k + 1] - moment[k])
+        value = table[row, k] + share * (table[row, k + 1] - table[row, k])
+    return value
 
 
 @kernel
@@ -130,7 +131,7 @@ def heat_rate(
         for i in range(len(temp)):
             rate[i] = body.volume[i] * skin.source[0, i]
     else:
-        k = min(np.searchsorted(skin.source_moment, now) - 1, n_moment - 2)
+        k = min(int(np.searchsorted(skin.source_moment, now)) - 1, n_moment - 2)
         share = (now - skin.source_moment[k]) / (skin.source_moment[k + 1] - skin.source_moment[k])
         for i in range(len(temp)):
             source = skin.source[k, i] + share * (skin.source[k + 1, i] - skin.source[k, i])

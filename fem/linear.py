@@ -17,7 +17,6 @@ from collections.abc import Callable
 from typing import Any, NamedTuple
 
 import numpy as np
-from numba import types
 from numba.extending import overload
 
 from midradius.fem.volumes import ControlVolumes
@@ -116,7 +115,7 @@ def _coarsen(
     edge_parent[outside] = inverse
     coarse = np.stack([unique // n_coarse, unique % n_coarse], axis=1).astype(np.int64)
     summed = np.bincount(inverse, weights=weight[outside], minlength=len(unique))
-    return parent, edge_parent, coarse, summed
+    return parent, edge_parent, coarse, np.asarray(summed, dtype=np.float64)
 
 
 def _aggregates(body: ControlVolumes) -> Aggregates:
@@ -311,19 +310,21 @@ def solve(
     ``accuracy`` is the largest move [unit of ``out``] below which the iterative
     scheme stops. Returns the iterations, or -1 when it did not converge.
     """
-    inner = _sweep_line if isinstance(how, Line) else _gradients
-    return inner(how, excess, weight, rhs, out, accuracy)
+    if isinstance(how, Line):
+        return _sweep_line(how, excess, weight, rhs, out, accuracy)
+    return _gradients(how, excess, weight, rhs, out, accuracy)
 
 
 @overload(solve, strict=False)
 def _choose(
     how: Any, excess: Any, weight: Any, rhs: Any, out: Any, accuracy: Any
 ) -> Callable[..., int] | None:
-    if isinstance(how, types.BaseNamedTuple) and how.instance_class is Line:
+    kind = getattr(how, "instance_class", None)  # numba's type of a named tuple
+    if kind is Line:
         return lambda how, excess, weight, rhs, out, accuracy: _sweep_line(
             how, excess, weight, rhs, out, accuracy
         )
-    if isinstance(how, types.BaseNamedTuple) and how.instance_class is Aggregates:
+    if kind is Aggregates:
         return lambda how, excess, weight, rhs, out, accuracy: _gradients(
             how, excess, weight, rhs, out, accuracy
         )

@@ -87,14 +87,26 @@ class Tables(NamedTuple):
 
 @kernel
 def _clock_of(fraction: float, tables: Tables) -> float:
+    """S of a fraction: the exact inverse of the table that `_grown` reads.
+
+    A second table only finds the cell; were S read from it, each round trip
+    would shift the fraction a little and the shifts would add up.
+    """
+    if fraction <= 0.0:
+        return 0.0
     low = min(fraction, 1.0 - fraction)
-    if low <= 0.0:
-        return 0.0 if fraction < 0.5 else tables.whole
-    place = np.sqrt(low) * (len(tables.back) - 1)
-    cell = min(int(place), len(tables.back) - 2)
-    share = place - cell
-    half = tables.back[cell] + share * (tables.back[cell + 1] - tables.back[cell])
-    return half if fraction <= 0.5 else tables.whole - half
+    back = tables.back
+    near = min(int(np.sqrt(max(low, 0.0)) * (len(back) - 1)), len(back) - 1)
+    guess = back[near] if fraction <= 0.5 else tables.whole - back[near]
+    clock = tables.clock
+    per = (len(clock) - 1) / tables.whole
+    cell = min(max(int(guess * per), 0), len(clock) - 2)
+    while cell > 0 and clock[cell] > fraction:
+        cell -= 1
+    while cell < len(clock) - 2 and clock[cell + 1] < fraction:
+        cell += 1
+    ticks: float = (cell + (fraction - clock[cell]) / (clock[cell + 1] - clock[cell])) / per
+    return ticks
 
 
 @kernel
@@ -152,7 +164,7 @@ def advance_node(
     stride = to_temp - from_temp
     n_half = 2 * (1 + int(abs(stride) / LONGEST_STRIDE))
     part = span / n_half
-    slope = 0.0
+    slope: float = 0.0
     for half in range(n_half):
         place = (half + 0.5) / n_half
         temp = from_temp + place * stride
