@@ -1,0 +1,160 @@
+"""An invented run for the tests of what a run leaves: smooth made-up numbers, no physics.
+
+The part is a round of 300 mm from the works of Hallgrund Forge, drawn as a disc.
+"""
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+
+from midradius.study.result import Position, Profile, Result, SectionView, StageRecord
+from midradius.thermo.phases import PHASE_NAMES
+from midradius.thermo.source import RangeNote, Source
+
+RADIUS_MM = 150.0
+
+
+def disc(radii_mm: np.ndarray, n_around: int = 48) -> SectionView:
+    """Rings of quads around a middle of triangles; ring k shows node k."""
+    angle = 2.0 * np.pi * np.arange(n_around) / n_around
+    rings = [
+        np.column_stack([r * np.cos(angle), r * np.sin(angle), np.zeros(n_around)])
+        for r in radii_mm[1:]
+    ]
+    points = np.vstack([[[0.0, 0.0, 0.0]], *rings])
+    node = np.concatenate([[0], np.repeat(np.arange(1, len(radii_mm)), n_around)])
+    here = np.arange(n_around)
+    after = np.roll(here, -1)
+    triangles = np.column_stack([np.zeros(n_around, dtype=np.int64), 1 + here, 1 + after])
+    quads = np.vstack(
+        [
+            np.column_stack([a + here, a + n_around + here, a + n_around + after, a + after])
+            for a in 1 + n_around * np.arange(len(radii_mm) - 2)
+        ]
+    )
+    return SectionView(points, quads.astype(np.int64), triangles.astype(np.int64), node)
+
+
+def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
+    """A whole result, the same at every call."""
+    share = np.linspace(0.0, 1.0, n_node) ** 0.8
+    radii = RADIUS_MM * share
+    depth = RADIUS_MM - radii
+    slow = 60.0 + 9.0 * depth
+
+    def temp(times: np.ndarray, slowness: np.ndarray) -> np.ndarray:
+        since = np.maximum(times - 45.0, 0.0)[:, None]
+        air = 860.0 - 0.3 * np.minimum(times, 45.0)[:, None]
+        return 60.0 + (air - 60.0) * np.exp(-since / slowness[None, :])
+
+    martensite = 0.9 / (1.0 + np.exp((depth - 25.0) / 9.0))
+    ferrite = 0.12 / (1.0 + np.exp((80.0 - depth) / 12.0))
+    pearlite = 0.20 / (1.0 + np.exp((95.0 - depth) / 10.0))
+    retained = 0.02 + 0.01 * martensite
+    bainite = 1.0 - martensite - ferrite - pearlite - retained
+    phases = np.array(
+        [retained, ferrite, np.zeros(n_node), pearlite, bainite, martensite], dtype=np.float64
+    )
+    hardness = 620.0 * martensite + 340.0 * bainite + 210.0 * (ferrite + pearlite) + 300 * retained
+    cooling_time = np.where(depth < 2.0, np.nan, 4.0 + 2.4 * depth)
+    rate = np.where(depth < 2.0, np.nan, 60.0 / (1.0 + depth))
+    places = (
+        ("surface", 0.0),
+        ("8 mm below the surface", 8.0),
+        ("quarter thickness", 75.0),
+        ("core", 150.0),
+    )
+    nodes = [int(np.argmin(np.abs(depth - d))) for _, d in places]
+    history_times = np.concatenate([np.linspace(0.0, 45.0, 10), 45.0 + np.geomspace(0.2, 9e3, 120)])
+    positions = tuple(
+        Position(
+            name=name,
+            depth_mm=d,
+            coordinates_mm=(RADIUS_MM - d,),
+            hardness_hv=float(hardness[n]),
+            hardness_hrc=None if hardness[n] < 238.0 else float(hardness[n] / 11.0),
+            hardness_hb=float(hardness[n] * 0.95),
+            tensile_mpa=None if n == nodes[0] else float(hardness[n] * 3.2),
+            phases=dict(zip(PHASE_NAMES, map(float, phases[:, n]), strict=True)),
+            time_800_500_s=None if np.isnan(cooling_time[n]) else float(cooling_time[n]),
+            rate_700_K_per_s=None if np.isnan(rate[n]) else float(rate[n]),
+            austenite_carbon_pct=0.41,
+            hardness_time_error_hv=1.2,
+            hardness_grid_error_hv=0.4 + k,
+        )
+        for k, ((name, d), n) in enumerate(zip(places, nodes, strict=True))
+    )
+    times = np.array([0.0, 45.0, 100.0, 400.0, 1500.0, 9045.0])
+    return Result(
+        title="Pump shaft HF-4711, Hallgrund Forge (invented)",
+        steel="42CrMo4",
+        composition_pct={"C": 0.41, "Mn": 0.75, "Cr": 1.05, "Mo": 0.22},
+        section="round, diameter 300 mm",
+        sense="cylinder",
+        points_mm=radii[:, None],
+        volume=np.gradient(0.5 * (radii * 1e-3) ** 2),
+        view=disc(radii, n_around),
+        times_s=times,
+        temp_degC=temp(times, slow),
+        phases=phases,
+        hardness_hv=hardness,
+        time_800_500_s=cooling_time,
+        rate_700_K_per_s=rate,
+        austenite_carbon_pct=np.full(n_node, 0.41),
+        pearlite_formed_at_degC=np.where(pearlite > 0.01, 640.0, np.nan),
+        history_times_s=history_times,
+        history_temp_degC=temp(history_times, slow[nodes]),
+        positions=positions,
+        profile=Profile(depth[::-1].copy(), np.arange(n_node)[::-1].copy(), "along a radius"),
+        stages=(
+            StageRecord("transfer", "still air", 0.0, 45.0, "time", 1.0e6),
+            StageRecord(
+                "quench", "mineral oil, agitated", 45.0, 9045.0, "core below 150 degC", 3.0e8
+            ),
+        ),
+        critical_degC={"Ae3": 762.0, "Ae1": 738.0, "Ms": 331.0, "Acm": float("nan")},
+        soak="860 degC, 4 h: fully austenitic, ASTM 7",
+        heat_given_J_per_kg=5.5e5,
+        heat_balance_relative=3.1e-9,
+        time_error_K=0.7,
+        grid_error_K=float("nan"),
+        n_step=412,
+        n_node=n_node,
+        notes=(RangeNote("bainite start", "Si", "2.1 %", "up to 1.5 %"),),
+        sources=(
+            Source("martensite start", "an invented work", "eq. 1", "read"),
+            Source("film curve", "an invented handbook", "table 2", "remembered"),
+        ),
+        assumptions=("ends insulated: the bar is long",),
+        cautions=(),
+        inputs={"steel": {"grade": "42CrMo4"}, "section": {"diameter": 0.3}},
+        case_text='title = "Pump shaft HF-4711"\n',
+    )
+
+
+def slow_cooled(result: Result) -> Result:
+    """The same run without any place that crossed 800 or 700 degC, and one phase only."""
+    nothing = np.full(result.n_node, np.nan)
+    phases = np.zeros_like(result.phases)
+    phases[3] = 1.0
+    return replace(
+        result,
+        phases=phases,
+        hardness_hv=np.full(result.n_node, 205.0),
+        time_800_500_s=nothing,
+        rate_700_K_per_s=nothing,
+        pearlite_formed_at_degC=np.full(result.n_node, 690.0),
+    )
+
+
+@pytest.fixture(scope="session")
+def result() -> Result:
+    """An invented run of a round, quenched."""
+    return invented_result()
+
+
+@pytest.fixture(scope="session")
+def slow_result(result: Result) -> Result:
+    """An invented run that is pearlite throughout, with nothing measured on the way."""
+    return slow_cooled(result)
