@@ -1,0 +1,150 @@
+"""A result turned into what the file formats take: field series and record.
+
+Nothing is computed here; names, units and long names are given to the numbers
+of a `Result`.
+"""
+
+import json
+from collections.abc import Mapping
+from dataclasses import asdict
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from midradius.fem.fields import write_series
+from midradius.fem.record import Quantity, provenance, write_record
+from midradius.fem.volumes import EXTENT
+from midradius.study.result import Result
+from midradius.study.summary import jsonable
+from midradius.thermo.phases import PHASE_NAMES
+
+RECORD = "record.h5"
+_EXTENT: Mapping[str, str] = EXTENT
+
+
+def write_fields(result: Result, folder: Path) -> Path:
+    """Write the PVD series into an existing folder; returns the index's path."""
+    node = result.view.node
+    at_end = {
+        f"{name}_fraction": values[node]
+        for name, values in zip(PHASE_NAMES, result.phases, strict=True)
+    }
+    at_end |= {
+        "hardness_HV": result.hardness_hv[node],
+        "time_800_500_s": result.time_800_500_s[node],
+        "cooling_rate_700degC_K_per_s": result.rate_700_K_per_s[node],
+        "austenite_carbon_pct": result.austenite_carbon_pct[node],
+        "pearlite_formed_at_degC": result.pearlite_formed_at_degC[node],
+    }
+    return write_series(
+        folder,
+        points_mm=result.view.points_mm,
+        quads=result.view.quads,
+        triangles=result.view.triangles,
+        times_s=result.times_s,
+        each_time={"temperature_degC": result.temp_degC[:, node]},
+        at_end=at_end,
+    )
+
+
+def write_result_record(result: Result, folder: Path) -> str:
+    """Write ``record.h5`` into an existing folder; returns its root digest."""
+    return write_record(
+        folder / RECORD, data=_numbers(result), text=_texts(result), made_by=provenance()
+    )
+
+
+def _numbers(result: Result) -> dict[str, Quantity]:
+    def many(values: NDArray[np.generic], units: str, long_name: str) -> Quantity:
+        return Quantity(values, units, long_name)
+
+    def one(value: float | None, units: str, long_name: str) -> Quantity:
+        return Quantity(np.asarray(np.nan if value is None else value), units, long_name)
+
+    r, view = result, result.view
+    data = {
+        "grid/points": many(r.points_mm, "mm", "coordinates of the solved nodes"),
+        "grid/volume": many(
+            r.volume, f"m3 {_EXTENT.get(r.sense, '')}".strip(), "control volume of each node"
+        ),
+        "view/points": many(view.points_mm, "mm", "points of the drawing of the whole part"),
+        "view/quads": many(view.quads, "1", "corner points of quadrilateral cells"),
+        "view/triangles": many(view.triangles, "1", "corner points of triangular cells"),
+        "view/node": many(view.node, "1", "solved node of each point of the drawing"),
+        "fields/time": many(r.times_s, "s", "stored times"),
+        "fields/temperature": many(r.temp_degC, "degC", "temperature (time, node)"),
+        "fields/phases": many(
+            r.phases, "1", f"phase fractions at the end (phase, node): {', '.join(PHASE_NAMES)}"
+        ),
+        "fields/hardness": many(r.hardness_hv, "HV", "Vickers hardness at the end"),
+        "fields/time_800_500": many(r.time_800_500_s, "s", "time from 800 to 500 degC"),
+        "fields/rate_700": many(r.rate_700_K_per_s, "K/s", "cooling rate at 700 degC"),
+        "fields/austenite_carbon": many(
+            r.austenite_carbon_pct, "mass percent", "carbon in the austenite left at the end"
+        ),
+        "fields/pearlite_formed_at": many(
+            r.pearlite_formed_at_degC, "degC", "mean temperature at which pearlite formed"
+        ),
+        "histories/time": many(r.history_times_s, "s", "times of the histories"),
+        "histories/temperature": many(r.history_temp_degC, "degC", "temperature (time, position)"),
+        "profile/depth": many(r.profile.depth_mm, "mm", f"depth, {r.profile.label}"),
+        "profile/node": many(r.profile.node, "1", "solved nodes along the profile"),
+        "balance/heat_given": one(r.heat_given_J_per_kg, "J/kg", "heat given to the baths"),
+        "balance/closure": one(r.heat_balance_relative, "1", "relative closure of heat balance"),
+        "errors/time": one(r.time_error_K, "K", "estimated temperature error of the time steps"),
+        "errors/grid": one(r.grid_error_K, "K", "estimated temperature error of the grid"),
+        "counts/steps": one(r.n_step, "1", "number of time steps"),
+        "counts/nodes": one(r.n_node, "1", "number of solved nodes"),
+    }
+    for name, temp in r.critical_degC.items():
+        data[f"critical/{_plain(name)}"] = one(temp, "degC", f"critical temperature {name}")
+    for key, units, long_name in _POSITION_COLUMNS:
+        values = [getattr(p, key) for p in r.positions]
+        column = np.array([np.nan if v is None else v for v in values], dtype=np.float64)
+        data[f"positions/{key}"] = many(column, units, f"{long_name}, one value per position")
+    return data
+
+
+_POSITION_COLUMNS = (
+    ("depth_mm", "mm", "depth below the nearest cooled surface"),
+    ("hardness_hv", "HV", "Vickers hardness"),
+    ("hardness_hrc", "HRC", "Rockwell C hardness by conversion, nan outside"),
+    ("hardness_hb", "HB", "Brinell hardness by conversion, nan outside"),
+    ("tensile_mpa", "MPa", "tensile strength by conversion, nan outside"),
+    ("time_800_500_s", "s", "time from 800 to 500 degC"),
+    ("rate_700_K_per_s", "K/s", "cooling rate at 700 degC"),
+    ("austenite_carbon_pct", "mass percent", "carbon in the austenite left"),
+    ("hardness_time_error_hv", "HV", "estimated hardness error of the time steps"),
+    ("hardness_grid_error_hv", "HV", "estimated hardness error of the grid"),
+)
+
+
+def _texts(result: Result) -> dict[str, str]:
+    return {
+        "case_toml": result.case_text,
+        "inputs_json": _json(result.inputs),
+        "title": result.title,
+        "steel": result.steel,
+        "composition_pct_json": _json(result.composition_pct),
+        "section": result.section,
+        "sense": result.sense,
+        "soak": result.soak,
+        "positions_json": _json(
+            [{"name": p.name, "coordinates_mm": p.coordinates_mm} for p in result.positions]
+        ),
+        "position_phases_json": _json([dict(p.phases) for p in result.positions]),
+        "stages_json": _json([asdict(stage) for stage in result.stages]),
+        "notes_json": _json([asdict(note) for note in result.notes]),
+        "sources_json": _json([asdict(source) for source in result.sources]),
+        "assumptions_json": _json(result.assumptions),
+        "cautions_json": _json(result.cautions),
+    }
+
+
+def _json(value: object) -> str:
+    return json.dumps(jsonable(value), indent=1, ensure_ascii=False, allow_nan=False)
+
+
+def _plain(name: str) -> str:
+    return name.replace("/", " per ")

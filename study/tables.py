@@ -1,0 +1,91 @@
+"""Tables for a spreadsheet: histories, profile, positions.
+
+RFC 4180: comma, CRLF, quotes where needed; UTF-8, decimal point, one heading
+line with the unit at the end of every heading. What is not available (a
+conversion outside its range, a temperature never crossed) is an empty cell.
+"""
+
+import csv
+from collections.abc import Iterable, Sequence
+from pathlib import Path
+
+import numpy as np
+
+from midradius.study.result import Result
+from midradius.thermo.conversion import hv_to_hb, hv_to_hrc, hv_to_uts
+from midradius.thermo.phases import PHASE_NAMES
+
+HISTORIES = "histories.csv"
+PROFILE = "profile.csv"
+POSITIONS = "positions.csv"
+
+_AFTER_HARDNESS = ["time_800_500_s", "cooling_rate_700degC_K_per_s", "austenite_carbon_pct"]
+
+
+def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
+    """Write the three tables into an existing folder and return their paths."""
+    return (
+        _write(folder / HISTORIES, _histories(result)),
+        _write(folder / PROFILE, _profile(result)),
+        _write(folder / POSITIONS, _positions(result)),
+    )
+
+
+def _histories(result: Result) -> Iterable[Sequence[object]]:
+    yield ["time_s", *(f"{p.name}_degC" for p in result.positions)]
+    for time, row in zip(result.history_times_s, result.history_temp_degC, strict=True):
+        yield [float(time), *(float(temp) for temp in row)]
+
+
+def _profile(result: Result) -> Iterable[Sequence[object]]:
+    node = result.profile.node
+    hardness = result.hardness_hv[node]
+    columns = [
+        result.profile.depth_mm,
+        *result.phases[:, node],
+        hardness,
+        hv_to_hrc(hardness),
+        hv_to_hb(hardness),
+        hv_to_uts(hardness),
+        result.time_800_500_s[node],
+        result.rate_700_K_per_s[node],
+        result.austenite_carbon_pct[node],
+    ]
+    yield [
+        "depth_mm",
+        *(f"{name}_fraction" for name in PHASE_NAMES),
+        *("hardness_HV", "hardness_HRC", "hardness_HB", "tensile_strength_MPa"),
+        *_AFTER_HARDNESS,
+    ]
+    for row in np.column_stack(columns):
+        yield [float(value) for value in row]
+
+
+def _positions(result: Result) -> Iterable[Sequence[object]]:
+    yield [
+        *("position", "depth_mm"),
+        *("hardness_HV", "hardness_HRC", "hardness_HB", "tensile_strength_MPa"),
+        *(f"{name}_fraction" for name in PHASE_NAMES),
+        *_AFTER_HARDNESS,
+        *("hardness_time_error_HV", "hardness_grid_error_HV"),
+    ]
+    for p in result.positions:
+        yield [
+            *(p.name, p.depth_mm),
+            *(p.hardness_hv, p.hardness_hrc, p.hardness_hb, p.tensile_mpa),
+            *(p.phases.get(name, 0.0) for name in PHASE_NAMES),
+            *(p.time_800_500_s, p.rate_700_K_per_s, p.austenite_carbon_pct),
+            *(p.hardness_time_error_hv, p.hardness_grid_error_hv),
+        ]
+
+
+def _write(path: Path, rows: Iterable[Sequence[object]]) -> Path:
+    with path.open("w", encoding="utf-8", newline="") as file:
+        csv.writer(file).writerows([_cell(value) for value in row] for row in rows)
+    return path
+
+
+def _cell(value: object) -> str:
+    if isinstance(value, float):
+        return f"{value:.9g}" if np.isfinite(value) else ""
+    return "" if value is None else str(value)
