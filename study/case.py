@@ -113,7 +113,10 @@ class PositionInput:
 
 @dataclass(frozen=True)
 class Outputs:
-    """What is written: positions, and field times [s] or else their number."""
+    """What is written: positions, and field times or else their number.
+
+    ``field_times`` [s] count from the end of the soak.
+    """
 
     positions: tuple[PositionInput, ...]
     field_times: tuple[float, ...] = ()

@@ -1,6 +1,6 @@
 """``[output]`` of a case file: the places and times where the answer is wanted.
 
-A place must lie in the section; its depth counts from the nearest surface.
+A place must lie in the section.
 """
 
 import math
@@ -83,6 +83,9 @@ def _named_place(table: Table) -> PositionInput | None:
     name = table.text("name", keys.LONGEST_NAME)
     if not table.has("name"):
         table.missing("name", "a text in quotes, of your own")
+    elif name and name != name.strip():
+        table.fault("name", "a name without blanks at its ends")
+        return None
     elif name in TRADE_TERMS:
         table.fault("name", "a name of your own", "The trade terms name their own places.")
         return None
@@ -120,7 +123,7 @@ def place_fault(place: PositionInput, section: SectionInput) -> tuple[str, str] 
         if 0.0 < deepest * (1.0 + 1e-9) < place.depth:
             return (
                 f"at most {deepest * 1e3:.6g} mm below the surface of this section",
-                'Depth counts from the nearest surface; the middle is "core".',
+                'Write a smaller depth; the middle of the section is "core".',
             )
     if place.coordinates is not None:
         if len(place.coordinates) != len(spans):
@@ -157,7 +160,8 @@ def _deepest(section: SectionInput) -> float:
     if section.form in ("round", "ball"):
         return (section.diameter or math.inf) / 2.0
     if section.form in ("tube", "ring"):
-        return ((section.outside or math.inf) - (section.bore or 0.0)) / 2.0
+        wall = ((section.outside or math.inf) - (section.bore or 0.0)) / 2.0
+        return min(wall, section.height or math.inf)
     if section.form == "slab":
         return section.thickness or math.inf
     return min(section.width or math.inf, section.height or math.inf) / 2.0

@@ -199,7 +199,7 @@ def parse(text: object, kind: Kind) -> float:
 def show(value: float, kind: Kind) -> str:
     """A text that :func:`parse` reads back to exactly ``value``, in a usual unit if one does."""
     candidates: dict[Kind, tuple[str, ...]] = {
-        "length": ("mm",),
+        "length": ("mm",) if value < 10.0 else ("m",),
         "temperature": ("degC",),
         "duration": _usual_durations(value),
     }

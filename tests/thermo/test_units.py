@@ -6,9 +6,10 @@ from fractions import Fraction
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from numpy.testing import assert_allclose
+
 from midradius.thermo import units
 from midradius.thermo.errors import InputFault
-from numpy.testing import assert_allclose
 
 # Text, kind, SI value written as exact arithmetic of the defining factors.
 EXACT = [

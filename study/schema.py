@@ -1,0 +1,224 @@
+"""The case format as a JSON Schema, for editors that complete and mark a TOML file.
+
+It says less than the reader: ranges of quantities stand in words only, and what
+the blocks ask of each other is not in it. Draft 7, which TOML editors know.
+"""
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from midradius.fem.media import names
+from midradius.thermo.grades import all_grades
+from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS
+from midradius.thermo.units import Kind, example, pattern, show
+
+from . import casekeys as keys
+from .case import TRADE_TERMS, ZONES
+
+Schema = dict[str, Any]
+
+
+def document() -> Schema:
+    """The schema of a case file, ready for ``json.dumps``."""
+    return {
+        "$schema": "http://json-schema.org/draft-07/schema#",
+        "title": "midradius case",
+        "description": "Steel, section and route of one part; quantities are texts with a unit.",
+        "type": "object",
+        "properties": {
+            "title": _text("What the part is called.", keys.LONGEST_TITLE),
+            "steel": _steel(),
+            "section": _section(),
+            "route": _route(),
+            "output": _output(),
+            "grid": _grid(),
+        },
+        "required": ["steel", "section", "route"],
+        "additionalProperties": False,
+        "definitions": {
+            "medium": {
+                "description": "A medium of the catalogue; letter case and blanks do not matter.",
+                "type": "string",
+                "examples": list(names()),
+            },
+            "medium_use": {"anyOf": [_to("medium"), _table(_medium(), ())]},
+        },
+    }
+
+
+def _steel() -> Schema:
+    low, high = keys.GRAIN_RANGE
+    amounts = {
+        element: {"type": "number", "minimum": HARD_BOUNDS[element][0]}
+        | {"maximum": HARD_BOUNDS[element][1], "description": "Mass percent."}
+        for element in ELEMENTS
+    }
+    steel = _table(
+        {
+            "grade": {
+                "type": "string",
+                "description": "A grade of the shipped table, by name or number.",
+                "examples": [steel.name for steel in all_grades()],
+            },
+            "composition": _table(amounts, ("C",)),
+            "austenite_grain": {
+                "type": "string",
+                "description": f"ASTM {low:g} to {high:g}; left out: from the soak.",
+                "pattern": r"^\s*[Aa][Ss][Tt][Mm]\s*-?[0-9]{1,2}(?:\.[0-9]{1,3})?\s*$",
+                "examples": ["ASTM 7"],
+            },
+        },
+        (),
+    )
+    return steel | {"oneOf": [{"required": ["grade"]}, {"required": ["composition"]}]}
+
+
+def _section() -> Schema:
+    sizes = {
+        name: _quantity("length", keys.DIMENSION_RANGE, name.capitalize() + ".")
+        for name in keys.ALL_DIMENSIONS
+    }
+    bore = _to("medium_use")
+    forms = [
+        _table(
+            {"form": {"const": form}}
+            | {name: sizes.get(name, bore) for name in (*needed, *keys.OPTIONAL[form])},
+            ("form", *needed),
+        )
+        for form, needed in keys.DIMENSIONS.items()
+    ]
+    return {
+        "type": "object",
+        "properties": {"form": {"enum": list(keys.DIMENSIONS)}},
+        "required": ["form"],
+        "oneOf": forms,
+    }
+
+
+def _route() -> Schema:
+    time = _quantity("duration", keys.STAGE_TIME_RANGE, "How long the stage lasts.")
+    at = _quantity("temperature", keys.SOAK_RANGE, "Furnace temperature, above Ae1.")
+    soak = _table({"stage": {"const": "soak"}, "at": at, "time": time}, keys.SOAK)
+    zones = sorted({zone for known in ZONES.values() for zone in known} | {"near end", "far end"})
+    cooling = {
+        **_medium(),
+        "time": time,
+        "until": {
+            "type": "string",
+            "description": "A place, below and a temperature.",
+            "pattern": _until_pattern(),
+            "examples": ["core below 150 degC"],
+        },
+        "faces": _table({zone: _to("medium_use") for zone in zones}, ()),
+    }
+    stages = [
+        _table({"stage": {"const": kind}, **cooling}, ("stage",))
+        for kind in keys.STAGES
+        if kind != "soak"
+    ]
+    return {
+        "type": "array",
+        "description": "One soak, then the stages that cool, in their order.",
+        "minItems": 2,
+        "maxItems": keys.STAGES_MOST,
+        "items": {
+            "type": "object",
+            "properties": {"stage": {"enum": list(keys.STAGES)}},
+            "required": ["stage"],
+            "oneOf": [soak, *stages],
+        },
+    }
+
+
+def _medium() -> dict[str, Schema]:
+    return {
+        "medium": _to("medium"),
+        "bath": _quantity("temperature", keys.TEMP_RANGE, "Of the bath or the gas."),
+        "film": _text("CSV of surface_degC, htc_W_per_m2K, beside the case file.", 1000),
+    }
+
+
+def _output() -> Schema:
+    depth = _quantity("length", (0.0, keys.DIMENSION_RANGE[1]), "Below the nearest surface.")
+    place = {
+        "type": "string",
+        "pattern": _place_pattern(),
+        "examples": [*TRADE_TERMS, "12 mm below surface"],
+    }
+    named = _table(
+        {
+            "name": _text("A name of your own.", keys.LONGEST_NAME),
+            "depth": depth,
+            "at": {"type": "array", "items": depth, "minItems": 1, "maxItems": 2},
+        },
+        ("name",),
+    ) | {"oneOf": [{"required": ["depth"]}, {"required": ["at"]}]}
+    times = _quantity("duration", keys.FIELD_TIME_RANGE, "Time since the end of the soak.")
+    low, high = keys.FIELDS_RANGE
+    return _table(
+        {
+            "positions": {
+                "type": "array",
+                "items": {"anyOf": [place, named]},
+                "minItems": 1,
+                "maxItems": keys.PLACES_MOST,
+            },
+            "fields": {"type": "integer", "minimum": low, "maximum": high},
+            "times": {
+                "type": "array",
+                "items": times,
+                "minItems": 1,
+                "maxItems": keys.TIMES_MOST,
+            },
+        },
+        (),
+    ) | {"not": {"required": ["fields", "times"]}}
+
+
+def _grid() -> Schema:
+    low, high = keys.CELLS_RANGE
+    count = {"type": "integer", "minimum": low, "maximum": high}
+    return _table(
+        {
+            "cells": {"anyOf": [count, {"type": "array", "items": count, "maxItems": 2}]},
+            "accuracy": _quantity("temperature difference", keys.ACCURACY_RANGE, "Asked for."),
+        },
+        (),
+    )
+
+
+def _quantity(kind: Kind, within: tuple[float, float], meaning: str) -> Schema:
+    low, high = (show(end, kind) for end in within)
+    return {
+        "type": "string",
+        "description": f"{meaning} {low} to {high}.",
+        "pattern": pattern(kind),
+        "examples": [example(kind)],
+    }
+
+
+def _until_pattern() -> str:
+    return r"^.*\S +below " + pattern("temperature").removeprefix("^")
+
+
+def _place_pattern() -> str:
+    depth = pattern("length").removeprefix("^").removesuffix(r"\s*$")
+    terms = "|".join(TRADE_TERMS)
+    return rf"^(?:{terms}|{depth}\s* below surface)$"
+
+
+def _text(meaning: str, longest: int) -> Schema:
+    return {"type": "string", "description": meaning, "minLength": 1, "maxLength": longest}
+
+
+def _table(properties: Mapping[str, Schema], required: Sequence[str]) -> Schema:
+    table: Schema = {
+        "type": "object",
+        "properties": dict(properties),
+        "additionalProperties": False,
+    }
+    return table | {"required": list(required)} if required else table
+
+
+def _to(definition: str) -> Schema:
+    return {"$ref": f"#/definitions/{definition}"}
