@@ -183,8 +183,8 @@ def section(result: Result) -> "Figure":
 
 
 def _first_change(times: Array, temps: Array) -> float:
-    """Left end of a logarithmic time axis: just before any place has cooled by 2 K."""
-    cooled = np.max(np.abs(temps - temps[0]), axis=1) > 2.0
+    """Left end of a logarithmic time axis: just before any place has gone 3 % of its way."""
+    cooled = np.max(np.abs(temps - temps[0]), axis=1) > 0.03 * np.ptp(temps)
     candidates = times[cooled & (times > 0.0)] if cooled.any() else times[times > 0.0]
     time = float(candidates[0])
     decade = 10.0 ** math.floor(math.log10(time))

@@ -189,7 +189,8 @@ def _phases(result: Result) -> "Table":
         for name in PHASE_NAMES
         if any(p.phases.get(name, 0.0) >= 0.0005 for p in result.positions)
     ]
-    heads = ["retained\naustenite" if name == "austenite" else f"\n{name}" for name in shown]
+    above = "\n" if "austenite" in shown else ""
+    heads = ["retained\naustenite" if name == "austenite" else above + name for name in shown]
     rows = [
         [p.name, *(f"{100.0 * p.phases.get(name, 0.0):.1f}" for name in shown)]
         for p in result.positions

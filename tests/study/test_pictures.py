@@ -52,6 +52,15 @@ def test_cooling_curves_show_the_histories_over_a_logarithmic_time(result: Resul
     assert not any("Acm" in text for text in texts)
 
 
+def test_the_logarithmic_time_starts_before_anything_is_to_be_seen(result: Result) -> None:
+    (axes,) = cooling(result).axes
+    start = axes.get_xlim()[0]
+    before = result.history_temp_degC[result.history_times_s <= start]
+    # nothing has gone 3 % of the way from 860 to 60 degC yet
+    assert 0.0 < start <= 45.0
+    assert np.all(before > 860.0 - 0.03 * 800.0)
+
+
 def test_a_short_run_is_drawn_over_linear_seconds(result: Result) -> None:
     short = replace(
         result,
