@@ -1,0 +1,153 @@
+"""Strength of ferrite with pearlite from its scale, of the rest from its hardness.
+
+Model
+-----
+Gladman: yield and tensile strength of ferrite-pearlite from the share of
+ferrite, its grain ``d`` and the pearlite spacing ``S0`` (mm in the print).
+Spacing: ``S0 = 18 um K / (Ae1 - T)``, not below 0.05 um, ``T`` the mean
+temperature at which the pearlite formed. Ferrite grain: Hodgson & Gibbs from
+carbon equivalent C + Mn/6, cooling rate and austenite grain; the equivalent is
+held at 0.40, since beyond its low-carbon steels the regression turns negative
+(held there, and not below 1 um: estimate). Martensite and
+bainite: yield strength from hardness (Pavlina & Van Tyne). Tensile strength of
+everything: `thermo.conversion`.
+
+Source
+------
+Gladman, McIvor & Pickering, J. Iron Steel Inst. 210 (1972) 916; Hodgson &
+Gibbs, ISIJ Int. 32 (1992) 1329; Pavlina & Van Tyne, J. Mater. Eng. Perform. 17
+(2008) 888 (abstract read, coefficients remembered); all remembered.
+
+Holds for
+---------
+Carbon-manganese steels, 0.3 to 0.9 % C for Gladman; hypoeutectoid steels of 450
+to 2350 MPa tensile strength (147 to 656 HV) for Pavlina & Van Tyne, outside of
+which the yield strength is nan.
+"""
+
+import numpy as np
+
+from midradius.thermo.arrays import Array
+from midradius.thermo.phases import AUSTENITE, BAINITE, CEMENTITE, FERRITE, MARTENSITE, PEARLITE
+from midradius.thermo.source import Source
+from midradius.thermo.steel import Composition
+
+SOURCES = (
+    Source(
+        "strength of ferrite-pearlite",
+        "Gladman, McIvor & Pickering 1972",
+        "J. Iron Steel Inst. 210, 916",
+        "remembered",
+    ),
+    Source("ferrite grain", "Hodgson & Gibbs 1992", "ISIJ Int. 32, 1329", "remembered"),
+    Source(
+        "yield strength from hardness",
+        "Pavlina & Van Tyne 2008",
+        "J. Mater. Eng. Perform. 17, 888",
+        "remembered",
+    ),
+)
+
+NITROGEN_PCT = 0.005  # where the composition gives none
+FINEST_SPACING = 0.05e-6  # m
+FINEST_FERRITE = 1e-6  # m
+EQUIVALENT_CAP_PCT = 0.40
+INTERCEPT_TO_DIAMETER = 1.0 / 0.89  # mean intercept to planimetric diameter, ASTM E112
+PAVLINA_HV = (147.2, 656.1)  # 450 and 2350 MPa by its own tensile equation
+
+
+def interlamellar_spacing(pearlite_temp: Array | float, ae1: float) -> Array:
+    """Spacing of pearlite [m] that formed at ``pearlite_temp`` [K]; inf at Ae1 and above."""
+    undercooling = np.maximum(ae1 - np.asarray(pearlite_temp, dtype=np.float64), 0.0)
+    with np.errstate(divide="ignore"):
+        return np.asarray(np.maximum(18e-6 / undercooling, FINEST_SPACING))
+
+
+def ferrite_grain(composition: Composition, rate_700: Array, grain_intercept: float) -> Array:
+    """Ferrite grain diameter [m].
+
+    Parameters
+    ----------
+    composition
+        Mass percent; carbon and manganese count.
+    rate_700
+        Cooling rate at 700 degC [K/s], positive, any shape.
+    grain_intercept
+        Mean intercept of the austenite grain [m].
+    """
+    equivalent = min(composition.C + composition.Mn / 6.0, EQUIVALENT_CAP_PCT)
+    austenite_um = 1e6 * INTERCEPT_TO_DIAMETER * grain_intercept
+    slowness = np.asarray(rate_700, dtype=np.float64) ** -0.5
+    if equivalent <= 0.35:
+        by_cooling = (-0.4 + 6.37 * equivalent) + (24.2 - 59.0 * equivalent) * slowness
+    else:
+        by_cooling = (22.6 - 57.0 * equivalent) + 3.0 * slowness
+    micrometre = by_cooling + 22.0 * (1.0 - np.exp(-0.015 * austenite_um))
+    return np.asarray(np.maximum(1e-6 * micrometre, FINEST_FERRITE))
+
+
+def gladman_tensile(
+    ferrite_share: Array, *, grain: Array, spacing: Array, composition: Composition
+) -> Array:
+    """Tensile strength of ferrite-pearlite [MPa].
+
+    ``ferrite_share`` of ferrite + pearlite [-], ``grain`` of the ferrite [m] and
+    ``spacing`` of the pearlite [m], one shape; the scale of a constituent that is
+    absent does not count and may be nan.
+    """
+    nitrogen = composition.N or NITROGEN_PCT
+    ferrite = 246.0 + 1143.0 * np.sqrt(nitrogen) + 18.2 * (1e3 * grain) ** -0.5
+    pearlite = 719.0 + 3.54 * (1e3 * spacing) ** -0.5
+    return np.asarray(_mix(ferrite_share, ferrite, pearlite) + 97.3 * composition.Si)
+
+
+def gladman_yield(
+    ferrite_share: Array, *, grain: Array, spacing: Array, composition: Composition
+) -> Array:
+    """Yield strength of ferrite-pearlite [MPa]; arguments as `gladman_tensile`."""
+    nitrogen = composition.N or NITROGEN_PCT
+    ferrite = 35.0 + 58.5 * composition.Mn + 17.4 * (1e3 * grain) ** -0.5
+    pearlite = 178.0 + 3.85 * (1e3 * spacing) ** -0.5
+    everywhere = 63.1 * composition.Si + 426.0 * np.sqrt(nitrogen)
+    return np.asarray(_mix(ferrite_share, ferrite, pearlite) + everywhere)
+
+
+def _mix(ferrite_share: Array, ferrite: Array, pearlite: Array) -> Array:
+    weight = np.cbrt(ferrite_share)
+    part = np.where(ferrite_share > 0.0, weight * ferrite, 0.0)
+    return np.asarray(part + np.where(ferrite_share < 1.0, (1.0 - weight) * pearlite, 0.0))
+
+
+def yield_of_hardness(hardness_hv: Array | float) -> Array:
+    """Yield strength [MPa] of martensite or bainite; nan outside 147 to 656 HV."""
+    hv = np.asarray(hardness_hv, dtype=np.float64)
+    known = (hv >= PAVLINA_HV[0]) & (hv <= PAVLINA_HV[1])
+    return np.where(known, -90.7 + 2.876 * hv, np.nan)
+
+
+def yield_strength(fractions: Array, hv_by_phase: Array, ferrite_pearlite_mpa: Array) -> Array:
+    """Yield strength of the mixture [MPa].
+
+    Parameters
+    ----------
+    fractions, hv_by_phase
+        Mass fractions and hardness of each constituent, shape (n_phase, n_node).
+    ferrite_pearlite_mpa
+        Yield strength of the ferrite-pearlite part, from `gladman_yield`, (n_node,).
+
+    Returns
+    -------
+    Array
+        Mean by fraction of the ferrite-pearlite part (with proeutectoid cementite)
+        and the hardened part (martensite, bainite, retained austenite), (n_node,);
+        nan where a part that is present has none.
+    """
+    soft = fractions[[FERRITE, CEMENTITE, PEARLITE]].sum(axis=0)
+    hard_rows = [AUSTENITE, BAINITE, MARTENSITE]
+    hard = fractions[hard_rows].sum(axis=0)
+    present = fractions[hard_rows] > 0.0
+    summed = np.where(present, fractions[hard_rows] * hv_by_phase[hard_rows], 0.0).sum(axis=0)
+    hard_mpa = yield_of_hardness(summed / np.where(hard > 0.0, hard, 1.0))
+    soft_part = np.where(soft > 0.0, soft * ferrite_pearlite_mpa, 0.0)
+    hard_part = np.where(hard > 0.0, hard * hard_mpa, 0.0)
+    return np.asarray((soft_part + hard_part) / (soft + hard))
