@@ -193,6 +193,12 @@ def test_a_number_of_endless_size_is_refused_at_once() -> None:
             units.parse(text, "length")
 
 
+def test_an_endless_text_is_refused_and_not_repeated_whole() -> None:
+    with pytest.raises(InputFault, match="Write one number and one unit") as caught:
+        units.parse("300." + "0" * 1000 + " mm", "length")
+    assert len(str(caught.value)) < 200
+
+
 @pytest.mark.parametrize("kind", units.KINDS)
 def test_an_example_of_each_kind_parses(kind: units.Kind) -> None:
     assert units.parse(units.example(kind), kind) > 0.0
