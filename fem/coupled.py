@@ -93,7 +93,7 @@ class Run:
     ) -> None:
         n = body.n_node
         self._volumes = body
-        self._tables = tables
+        self.tables = tables
         self._scheme: Scheme = scheme(body)
         self._body = Body(
             mass=body.volume * density,
@@ -144,7 +144,7 @@ class Run:
         p = self.progress
         return np.array(
             [
-                enthalpy_node(p.state[i], p.temp[i], p.carbon[i], self._tables)[0]
+                enthalpy_node(p.state[i], p.temp[i], p.carbon[i], self.tables)[0]
                 for i in range(len(p.temp))
             ]
         )
@@ -196,7 +196,7 @@ class Run:
         clock = self.progress.clock
         if until is not None and (self.progress.temp[until.node] * until.share).sum() <= until.temp:
             return "limit"
-        grid = self._tables.first + self._tables.step * np.arange(len(self._tables.value))
+        grid = self.tables.first + self.tables.step * np.arange(len(self.tables.value))
         n_node = self._volumes.n_node
         skin = Skin(
             htc=np.array([np.interp(grid, around.film_temp, row) for row in around.film_htc]),
@@ -220,7 +220,7 @@ class Run:
         while True:
             clock[march.HISTORY_ROW] = 0
             status = march.march(
-                self._scheme, self._body, skin, self._tables, control, self.progress, HISTORY_ROWS
+                self._scheme, self._body, skin, self.tables, control, self.progress, HISTORY_ROWS
             )
             self._history.append(self.progress.history[: int(clock[march.HISTORY_ROW])].copy())
             if tell is not None:
@@ -241,7 +241,7 @@ class Run:
         p, body = self.progress, self._body
         quickest = 1e3
         for node, area, zone in zip(body.face_node, body.face_area, body.face_zone, strict=True):
-            row = int((p.temp[node] - self._tables.first) / self._tables.step)
+            row = int((p.temp[node] - self.tables.first) / self.tables.step)
             film = skin.htc[zone, min(max(row, 0), skin.htc.shape[1] - 1)]
             if film * area > 0.0:
                 quickest = min(quickest, body.mass[node] * 600.0 / (film * area))

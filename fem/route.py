@@ -16,11 +16,20 @@ from midradius.fem.surface import Film
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import fractions
 from midradius.thermo.errors import InputFault
-from midradius.thermo.kinetics import CARBON_AUSTENITE, PEARLITE, PEARLITE_HEAT, Tables
+from midradius.thermo.kinetics import (
+    CARBON_AUSTENITE,
+    CARBON_MARTENSITE,
+    PEARLITE,
+    PEARLITE_HEAT,
+    Tables,
+    advance_node,
+)
+from midradius.thermo.phases import AUSTENITE, MARTENSITE
 from midradius.thermo.units import show
 
 PART_OF_AUSTENITE = 1e-6  # less austenite than this has no carbon content to speak of
 LONGEST_STAGE = 30.0 * 24.0 * 3600.0  # s, for a stage that ends by temperature only
+ROOM_TEMP = 293.15  # K
 HOTTER_BY = 2.0  # K by which a bath may exceed the part before it counts as heating
 
 
@@ -62,9 +71,13 @@ class History:
     ``field`` (n_time, n_node) [K] at ``times`` (n_time,); ``step_times``
     (n_step,), ``watch_temp`` (n_step, n_watch) [K] and ``watch_phases``
     (n_step, n_phase, n_watch); at the end ``temp`` (n_node,), ``phases``
-    (n_phase, n_node), ``carbon_austenite_pct``, ``pearlite_temp`` [K],
-    ``time_800_500`` [s], ``rate_700`` [K/s], (n_node,) each and nan where there
-    is none. Heat in J per the section's extent.
+    (n_phase, n_node), ``carbon_austenite_pct``, ``carbon_martensite_pct``,
+    ``pearlite_temp`` [K], ``time_800_500`` [s], ``rate_700`` [K/s], (n_node,) each
+    and nan where there is none. Heat in J per the section's extent.
+
+    Phases are those at room temperature: after the last stage the austenite that
+    is left follows the martensite curve to :data:`ROOM_TEMP`, in no time and with
+    its heat left out of the account. Temperatures, times and heat end with the route.
     """
 
     times: Array
@@ -76,6 +89,7 @@ class History:
     coldest: Array
     phases: Array
     carbon_austenite_pct: Array
+    carbon_martensite_pct: Array
     pearlite_temp: Array
     time_800_500: Array
     rate_700: Array
@@ -218,10 +232,13 @@ def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
     steps = run.history
     field = p.field.copy()
     field[np.isnan(field).any(axis=1)] = p.temp
+    heat_after, coldest = run.heat(), run.coldest
+    for i in range(len(p.temp)):
+        advance_node(p.state[i], p.temp[i], ROOM_TEMP, 0.0, p.scale[i], run.tables)
     carbon, pearlite = p.state[:, CARBON_AUSTENITE], p.state[:, PEARLITE]
     phases = fractions(p.state)
-    austenite = phases[0]
-    some = austenite > PART_OF_AUSTENITE
+    austenite, martensite = phases[AUSTENITE], phases[MARTENSITE]
+    some, hard = austenite > PART_OF_AUSTENITE, martensite > PART_OF_AUSTENITE
     marked = p.marks >= 0.0
     both = marked[:, 0] & marked[:, 2]
     formed = pearlite > PART_OF_AUSTENITE
@@ -238,9 +255,12 @@ def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
             axis=2,
         ).transpose(0, 2, 1),
         temp=p.temp.copy(),
-        coldest=run.coldest,
+        coldest=coldest,
         phases=phases,
         carbon_austenite_pct=np.where(some, carbon / np.where(some, austenite, 1.0), np.nan),
+        carbon_martensite_pct=np.where(
+            hard, p.state[:, CARBON_MARTENSITE] / np.where(hard, martensite, 1.0), np.nan
+        ),
         pearlite_temp=np.where(
             formed, p.state[:, PEARLITE_HEAT] / np.where(formed, pearlite, 1.0), np.nan
         ),
@@ -248,7 +268,7 @@ def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
         rate_700=np.where(marked[:, 1], p.marks[:, 3], np.nan),
         stages=stages,
         heat_before=run.heat_at_start,
-        heat_after=run.heat(),
+        heat_after=heat_after,
         n_step=int(p.clock[march.TAKEN]),
         n_refused=int(p.clock[march.REFUSED]),
         n_newton=int(p.clock[march.ITERATIONS]),

@@ -17,9 +17,9 @@ from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
 
 FormName = Literal["slab", "round", "tube", "ball", "bar", "ring"]
-FIRST_OVER_FILM = 0.25  # first cell as a share of k/h, the length over which a film acts
+FIRST_OVER_FILM = 0.05  # first of 64 cells as a share of k/h, the depth a film acts over
 HOT_STEEL_K = 27.0  # W/(m K), any steel near 700 degC, for choosing cells only
-FEWEST_FIRST = 1.0 / 400.0  # first cell not below this share of the side
+SMALLEST_FIRST = 1.0 / 4000.0  # first cell not below this share of the side
 
 
 @dataclass(frozen=True)
@@ -67,6 +67,13 @@ class Section:
         """Names of all surfaces."""
         names = [z for span in self.spans for z in (span.low_zone, span.high_zone)]
         return tuple(name for name in names if name is not None)
+
+    @property
+    def whole(self) -> tuple[float, str]:
+        """Factor from the solved extent to a whole that a person would name, and its name."""
+        folds = 2.0 ** sum(span.folded for span in self.spans)
+        factor, name = _WHOLE[self.sense]
+        return factor * folds, name
 
     def folded(self, same: Mapping[tuple[str, str], bool]) -> "Section":
         """The section with each axis folded whose two zones always see the same."""
@@ -156,6 +163,15 @@ def ring(outside: float, bore: float, height: float) -> Section:
     return Section("ring", spans, "axisymmetric", text)
 
 
+_WHOLE: Mapping[str, tuple[float, str]] = {
+    "slab": (1.0, "per square metre of plate"),
+    "cylinder": (2.0 * np.pi, "per metre of length"),
+    "ball": (4.0 * np.pi, "of the whole ball"),
+    "plane": (1.0, "per metre of length"),
+    "axisymmetric": (2.0 * np.pi, "of the whole part"),
+}
+
+
 def _mm(length: float) -> str:
     return f"{length * 1e3:.6g}"
 
@@ -163,10 +179,10 @@ def _mm(length: float) -> str:
 def cells_for(section: Section, accuracy: float) -> tuple[int, ...]:
     """Cells along each axis for an accuracy [K], before the error is known.
 
-    The error falls with the square of the cells; 64 per cooled side in one
-    dimension and 32 in two meet about half a kelvin, and the run checks it.
+    The error falls with the square of the cells; 96 per cooled side in one
+    dimension and 48 in two meet about half a kelvin, and the run checks it.
     """
-    base = 64 if len(section.spans) == 1 else 32
+    base = 96 if len(section.spans) == 1 else 48
     wanted = base * np.sqrt(0.5 / accuracy)
     counts = []
     for span in section.spans:
@@ -212,7 +228,7 @@ def cut(section: Section, cells: tuple[int, ...], *, strongest_film: Mapping[str
             fine = "low" if low_film > 0.0 else "high"
         side = (end - span.low) / (2.0 if fine == "both" else 1.0)
         film = max(low_film, high_film, 1e-9)
-        first = max(FIRST_OVER_FILM * HOT_STEEL_K / film * 64.0 / count, FEWEST_FIRST * side)
+        first = max(FIRST_OVER_FILM * HOT_STEEL_K / film * 64.0 / count, SMALLEST_FIRST * side)
         axes.append(
             axis(
                 span.low,

@@ -130,6 +130,7 @@ def _texts(result: Result) -> dict[str, str]:
         "section": result.section,
         "sense": result.sense,
         "soak": result.soak,
+        "heat_extent": result.heat_extent,
         "positions_json": _json(
             [{"name": p.name, "coordinates_mm": p.coordinates_mm} for p in result.positions]
         ),

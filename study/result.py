@@ -61,7 +61,7 @@ class Profile:
 
 @dataclass(frozen=True)
 class StageRecord:
-    """One stage of the route as it was run."""
+    """One stage of the route as it was run; heat [J] in the extent that the result names."""
 
     kind: str
     medium: str
@@ -104,6 +104,7 @@ class Result:
     critical_degC: Mapping[str, float]
     soak: str
     heat_given_J_per_kg: float
+    heat_extent: str
     heat_balance_relative: float
     time_error_K: float
     grid_error_K: float

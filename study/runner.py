@@ -1,7 +1,7 @@
 """Run a case: solve, solve again coarser and finer in time, say how far to trust it."""
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass
 from functools import partial
 
 import numpy as np
@@ -38,6 +38,8 @@ TIGHTER = 1.0 / 8.0  # tolerance of the run that measures the time error
 TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
 GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
 MOST_NODES = {1: 2049, 2: 25_000}
+# Above it bainite could still form on the way to room temperature [estimate].
+ENDS_HOT = 200.0 + ZERO_DEGC
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
 Tell = Callable[[float, float], None]
@@ -93,7 +95,11 @@ class _Material:
         total, _ = hardness.vickers(
             history.phases,
             composition,
-            carbon_austenite_pct=self.austenite.carbon_pct * np.ones(history.phases.shape[1]),
+            carbon_austenite_pct=np.where(
+                np.isnan(history.carbon_martensite_pct),
+                self.austenite.carbon_pct,
+                history.carbon_martensite_pct,
+            ),
             carbon_initial_pct=composition.C,
             rate_700=history.rate_700,
             pearlite_temp=history.pearlite_temp,
@@ -228,6 +234,7 @@ def _result(
     history, cut = main.history, main.cut
     view = draw(cut)
     depth, nodes, label = forms.profile(cut)
+    factor, extent = setup.section.whole
     mass = properties.DENSITY * float(cut.body.volume.sum())
     positions = tuple(
         _position(name, main, at_fine[name], rough, sharp, at_coarse[name])
@@ -263,7 +270,7 @@ def _result(
                 start_s=went.start,
                 end_s=went.end,
                 ended_by="time" if went.ended_by == "time" else f"{stage.until_place} temperature",
-                heat_to_bath_J=went.heat_given,
+                heat_to_bath_J=factor * went.heat_given,
             )
             for stage, went in zip(setup.stages, history.stages, strict=True)
         ),
@@ -273,11 +280,12 @@ def _result(
             )
             - ZERO_DEGC,
             "Ae1": eq.ae1 - ZERO_DEGC,
-            "Bs": diffusional.bainite_start(replace(composition, C=left.carbon_pct)) - ZERO_DEGC,
-            "Ms": float(martensite.start(composition, left.carbon_pct)) - ZERO_DEGC,
+            "Bs": diffusional.bainite_start(left.composition) - ZERO_DEGC,
+            "Ms": float(martensite.start(left.composition, left.carbon_pct)) - ZERO_DEGC,
         },
         soak=_soak_text(case, left),
         heat_given_J_per_kg=history.heat_given / mass,
+        heat_extent=extent,
         heat_balance_relative=history.balance,
         time_error_K=time_error,
         grid_error_K=grid_error,
@@ -341,11 +349,24 @@ def _notes(case: Case, setup: Setup, left: Austenite, history: History) -> tuple
     composition = case.steel.steel.composition
     found = [
         *steel.range_notes(composition),
+        *equilibrium.range_notes(composition),
         *left.notes,
         *diffusional.range_notes(composition, left.carbon_pct, left.grain_astm),
+        *martensite.range_notes(left.composition),
         *hardness.range_notes(composition, history.phases, history.rate_700),
+        *properties.range_notes(history.field, composition.C),
         *setup.notes,
     ]
+    hottest = float(history.temp.max())
+    if hottest > ENDS_HOT:
+        found.append(
+            RangeNote(
+                "phases at room temperature",
+                "hottest node at the end of the route",
+                f"{hottest - ZERO_DEGC:.0f} degC",
+                f"below {ENDS_HOT - ZERO_DEGC:.0f} degC (add a stage that cools further)",
+            )
+        )
     return tuple(dict.fromkeys(found))
 
 
@@ -357,8 +378,6 @@ def _sources(setup: Setup) -> tuple[Source, ...]:
 
 
 def _inputs(case: Case) -> dict[str, object]:
-    from dataclasses import asdict
-
     resolved = asdict(case)
     resolved.pop("text")
     resolved["path"] = case.path.name if case.path else None

@@ -176,6 +176,8 @@ def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
         "One part alone in the bath; every zone has one film over all of it. Packed loads cool"
         " slower and less evenly.",
         "Density 7850 kg/m3 and the cold dimensions throughout.",
+        "Phases and hardness are those at 20 degC: austenite left at the end of the route follows"
+        " the martensite curve; temperatures, times and heat end with the route.",
     ]
     if section.form in ("tube", "ring") and case.section.bore_medium is None:
         lines.append("The bore sees the same medium as the outside, as freely.")

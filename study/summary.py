@@ -93,6 +93,7 @@ def document(result: Result) -> dict[str, Any]:
         "n_node": result.n_node,
         "n_step": result.n_step,
         "heat_given_J_per_kg": result.heat_given_J_per_kg,
+        "heat_extent": result.heat_extent,
         "heat_balance_relative": result.heat_balance_relative,
         "time_error_K": result.time_error_K,
         "grid_error_K": result.grid_error_K,
@@ -130,7 +131,7 @@ def terminal(result: Result, console: "Console") -> None:
     for heading, table in (
         ("Route", _route(result)),
         ("Result", _properties(result)),
-        ("Microstructure, % by volume", _phases(result)),
+        ("Microstructure, % by mass", _phases(result)),
     ):
         console.print(Text(f"\n{heading}", "bold"))
         console.print(table)

@@ -62,9 +62,11 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
     value[:, kin.K_FERRITE] = properties.conductivity_ferrite(temp)
     value[:, kin.K_MARTENSITE] = properties.conductivity_martensite(temp)
     eq = equilibrium.equilibrium(composition)
-    soaked = equilibrium.equilibrium(type(composition)(**{**vars(composition), "C": carbon}))
+    # Rates and martensite belong to the austenite as it is: without the chromium
+    # that undissolved carbide holds.
+    soaked = equilibrium.equilibrium(austenite.composition)
     rates = diffusional.rates(
-        composition,
+        austenite.composition,
         temp,
         carbon_pct=carbon,
         grain_astm=austenite.grain_astm,
@@ -93,8 +95,8 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
         clock=fraction,
         back=back,
         whole=whole,
-        start=np.array(martensite.start_coefficients(composition)),
-        rate=np.array(martensite.rate_coefficients(composition)),
+        start=np.array(martensite.start_coefficients(austenite.composition)),
+        rate=np.array(martensite.rate_coefficients(austenite.composition)),
         top=float(temp[active].max() + GRID_K),
         transforms=True,
     )

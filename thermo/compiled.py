@@ -89,9 +89,10 @@ def _writable(folder: Path) -> bool:
 @contextmanager
 def _cached_in(folder: Path) -> Iterator[None]:
     """The compiler reads its cache folder from a setting, once per function."""
-    before = numba.config.CACHE_DIR
-    numba.config.CACHE_DIR = str(folder)
+    settings: Any = numba.config  # its type stubs do not list the settings
+    before = settings.CACHE_DIR
+    settings.CACHE_DIR = str(folder)
     try:
         yield
     finally:
-        numba.config.CACHE_DIR = before
+        settings.CACHE_DIR = before

@@ -116,6 +116,7 @@ def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
         critical_degC={"Ae3": 762.0, "Ae1": 738.0, "Ms": 331.0, "Acm": float("nan")},
         soak="860 degC, 4 h: fully austenitic, ASTM 7",
         heat_given_J_per_kg=5.5e5,
+        heat_extent="per metre of length",
         heat_balance_relative=3.1e-9,
         time_error_K=0.7,
         grid_error_K=float("nan"),
