@@ -25,7 +25,7 @@ import numpy as np
 from midradius.fem.linear import Scheme, solve
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.compiled import kernel
-from midradius.thermo.kinetics import Tables, advance_node, enthalpy_node
+from midradius.thermo.kinetics import Tables, advance, enthalpy_node
 
 GAMMA = 2.0 - np.sqrt(2.0)  # where the first stage ends, as a share of the step
 IMPLICIT = 1.0 - np.sqrt(2.0) / 2.0  # weight of the newest rate in both stages
@@ -182,6 +182,7 @@ def stage(
     stiff: Array,
     zone_rate: Array,
     work: Array,
+    backward: bool,
 ) -> int:
     """One implicit stage by Newton's method; returns the iterations, 0 if it failed."""
     n = len(temp)
@@ -189,7 +190,11 @@ def stage(
     for iteration in range(MOST_ITERATIONS):
         for i in range(n):
             state[i] = from_state[i]
-            slope = advance_node(state[i], from_temp[i], temp[i], span, progress.scale[i], tables)
+            slope = 0.0
+            if min(from_temp[i], temp[i]) < tables.top:
+                slope = advance(
+                    state, i, from_temp[i], temp[i], span, progress.scale, tables, backward
+                )
             energy, cp, conductivity[i] = enthalpy_node(
                 state[i], temp[i], progress.carbon[i], tables
             )
@@ -205,7 +210,10 @@ def stage(
             capacity[i] = max(capacity[i] + share * stiff[i], 0.2 * capacity[i])
         for e in range(len(weight)):
             weight[e] *= share
-        if solve(how, capacity, weight, work[4], move, 0.1 * tolerance) < 0:
+        # The first move is corrected by the second anyway: an iterative scheme may
+        # stop early on it.
+        accuracy = 5.0 * tolerance if iteration == 0 else 0.1 * tolerance
+        if solve(how, capacity, weight, work[4], move, accuracy) < 0:
             return 0
         most = 0.0
         for i in range(n):

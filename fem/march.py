@@ -35,6 +35,8 @@ from midradius.thermo.kinetics import N_STATE, Tables, enthalpy_node
 ERROR_CONSTANT = (-3.0 * GAMMA**2 + 4.0 * GAMMA - 2.0) / (12.0 * (2.0 - GAMMA))
 
 REACHED_END, REACHED_LIMIT, PAUSED, GAVE_UP = range(4)
+NEWTON_SHARE = 0.02  # last move of Newton's method against the tolerance of a step
+NEWTON_MOST = 1e-3  # K
 SMALLEST_STEP = 1e-9  # s
 
 # What is noted per node the first time it cools through 800, 700 and 500 degC.
@@ -95,7 +97,7 @@ def march(
     n_zone = len(skin.flux)
     zone0, zone1, zone2 = np.empty(n_zone), np.empty(n_zone), np.empty(n_zone)
     known, work = np.empty(n), np.empty((5, n))
-    newton = 1e-3 * control.tolerance
+    newton = min(NEWTON_SHARE * control.tolerance, NEWTON_MOST)
     n_watch = progress.history.shape[1]
 
     for i in range(n):
@@ -143,6 +145,7 @@ def march(
             stiff,
             zone1,
             work,
+            clock[TAKEN] % 2 == 1,
         )
         clock[ITERATIONS] += used
         if used > 0:
@@ -170,6 +173,7 @@ def march(
                 stiff,
                 zone2,
                 work,
+                clock[TAKEN] % 2 == 0,
             )
             clock[ITERATIONS] += used
         if used == 0:

@@ -1,6 +1,8 @@
 """The command line. Numerics are imported only inside the commands that need them."""
 
 import json
+import logging
+import os
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -77,12 +79,15 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
         from midradius.study import job
 
         target = folder if folder is not None else Path(case.stem)
+        # It would tell of its font cache on stderr, where only errors belong.
+        logging.getLogger("matplotlib").setLevel(logging.ERROR)
         with _progress(asked.title, hidden=quiet or as_json) as tell:
             result = job.run(asked, target, tell=tell)
     if as_json:
         from midradius.study.summary import document
 
-        click.echo(json.dumps(document(result), indent=1, ensure_ascii=False, allow_nan=False))
+        # Escapes instead of letters beyond ASCII: whole whatever encoding stdout has.
+        click.echo(json.dumps(document(result), indent=1, allow_nan=False))
     elif not quiet:
         from rich.console import Console
 
@@ -146,10 +151,13 @@ def steels(part: str) -> None:
     """List the shipped grades, or those whose name or number contains PART."""
     from midradius.thermo.grades import all_grades
 
-    for steel in all_grades():
-        if part.lower() in f"{steel.name} {steel.standard}".lower():
-            aims = ", ".join(f"{k} {v:g}" for k, v in vars(steel.composition).items() if v)
-            click.echo(f"{steel.name:14} {steel.standard:34} {aims}")
+    found = [s for s in all_grades() if part.lower() in f"{s.name} {s.standard}".lower()]
+    for steel in found:
+        aims = ", ".join(f"{k} {v:g}" for k, v in vars(steel.composition).items() if v)
+        click.echo(f"{steel.name:14} {steel.standard:18} {aims}")
+    if not found:
+        click.echo(f'No shipped grade contains "{part}"; midradius steels lists all.', err=True)
+        sys.exit(BAD_INPUT)
 
 
 @cli.command()
@@ -160,8 +168,9 @@ def media() -> None:
     for name in names():
         found = medium(name)
         low, high = found.bath_min - ZERO_DEGC, found.bath_max - ZERO_DEGC
-        bath = "no bath" if found.kind == "ideal" else f"{low:.0f} to {high:.0f} degC"
-        click.echo(f"{name:26} {bath:18} film +-{found.uncertainty_pct:.0f} %")
+        bath = "" if found.kind == "ideal" else f"{low:.0f} to {high:.0f} degC"
+        sure = f"film +-{found.uncertainty_pct:.0f} %" if found.uncertainty_pct else "no heat passes"
+        click.echo(f"{name:26} {bath:18} {sure}")
 
 
 @cli.command()
@@ -169,7 +178,7 @@ def schema() -> None:
     """Print the JSON Schema of the case file, for editors."""
     from midradius.study.schema import document
 
-    click.echo(json.dumps(document(), indent=2, ensure_ascii=False))
+    click.echo(json.dumps(document(), indent=2))
 
 
 @contextmanager
@@ -217,14 +226,37 @@ def _progress(title: str, *, hidden: bool) -> Iterator[Callable[[float, float], 
 
 def main() -> None:
     """The console entry: Ctrl-C anywhere ends quietly, a closed pipe too."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):  # a title may not fit an old terminal's letters
+            stream.reconfigure(errors="backslashreplace")
     try:
         cli(standalone_mode=False)
+        if sys.stdout is not None:
+            sys.stdout.flush()
     except click.exceptions.Abort:
-        click.echo("Interrupted; nothing was written.", err=True)
+        click.echo("Interrupted.", err=True)
         sys.exit(INTERRUPTED)
     except click.ClickException as fault:
         fault.show()
         sys.exit(fault.exit_code)
+    except SystemExit as leaving:
+        # what click and rich make of a reader that went away
+        if isinstance(leaving.__context__, BrokenPipeError):
+            _reader_gone()
+        raise
     except BrokenPipeError:
-        sys.stderr.close()
-        sys.exit(DONE)
+        _reader_gone()
+    except OSError as fault:
+        _silence_stdout()
+        click.echo(f"The answer could not be printed: {fault.strerror}.", err=True)
+        sys.exit(BAD_INPUT)
+
+
+def _reader_gone() -> None:
+    _silence_stdout()
+    sys.exit(DONE)
+
+
+def _silence_stdout() -> None:
+    """Let what is still buffered go nowhere, so that leaving says nothing about it."""
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())

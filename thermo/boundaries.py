@@ -20,11 +20,11 @@ the table the end value holds; alloy shifts reach that only for steels at the
 edge of what `thermo.steel` admits, below 20 degC, where every limit is 0.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from scipy.optimize import brentq
 
 from midradius.thermo.arrays import Array
 from midradius.thermo.gibbs import (
@@ -80,8 +80,18 @@ def boundaries() -> Boundaries:
         austenite_cementite=_against_cementite(AUSTENITE, temp),
         ferrite_austenite=ferrite,
         ferrite_cementite=_against_cementite(FERRITE, temp),
-        a3_iron=float(brentq(_iron_gap, 1100.0, 1250.0)),
+        a3_iron=_crossing(np.linspace(1100.0, 1250.0, 15001), _iron_gap),
     )
+
+
+def _crossing(temp: Array, gap: Callable[[Array], Array]) -> float:
+    """Where a monotone gap is zero, straight between temperatures [K] (n_temp,).
+
+    Without a root finder: reading a case file needs A1 and should not wait for one.
+    """
+    values = gap(temp)
+    order = np.argsort(values)
+    return float(np.interp(0.0, values[order], temp[order]))
 
 
 def _iron_gap(temp: Array | float) -> Array:

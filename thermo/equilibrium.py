@@ -29,7 +29,6 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from scipy.optimize import brentq
 
 from midradius.thermo.arrays import Array
 from midradius.thermo.boundaries import boundaries
@@ -112,11 +111,9 @@ def computed_invariants() -> Invariants:
     """The eutectoid where the two computed boundaries of austenite cross."""
     lines = boundaries()
 
-    def gap(temp: float) -> float:
-        ferrite = np.interp(temp, lines.temp, lines.austenite_ferrite)
-        return float(ferrite - np.interp(temp, lines.temp, lines.austenite_cementite))
-
-    temp = float(brentq(gap, 900.0, 1100.0))
+    near = (lines.temp >= 900.0) & (lines.temp <= 1100.0)
+    gap = lines.austenite_ferrite[near] - lines.austenite_cementite[near]  # falls with temp
+    temp = float(np.interp(0.0, gap[::-1], lines.temp[near][::-1]))
     return Invariants(
         temp=temp,
         austenite_pct=float(np.interp(temp, lines.temp, lines.austenite_cementite)),

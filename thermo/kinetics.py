@@ -5,9 +5,9 @@ Model
 Each diffusional product keeps a clock that runs with a rate of temperature
 alone (see :mod:`midradius.thermo.diffusional`); what it can reach is its limit
 at that temperature: the lever rule for ferrite and cementite, the austenite
-still there for pearlite and bainite. All run at once. A step is split in two
-halves, ferrite to bainite and back, so that the order of the products costs no
-first-order error. Carbon is a balance: ferrite and cementite change the carbon
+still there for pearlite and bainite. All run at once. Passes over the products go
+from ferrite to bainite and back by turns, so that their order costs no first-order
+error. Carbon is a balance: ferrite and cementite change the carbon
 of the austenite; pearlite, bainite and martensite take it as it is. Martensite
 follows the lowest temperature reached, with the start that belongs to the
 carbon of the austenite at that moment.
@@ -61,7 +61,7 @@ N_COLUMN = 16
 
 CEMENTITE_CARBON_PCT = 6.690
 NOTHING_LEFT = 1e-9  # austenite below this is taken as gone
-LONGEST_STRIDE = 10.0  # K of temperature that one split step may cover
+LONGEST_STRIDE = 5.0  # K of temperature that one pass over the products may cover
 
 
 class Tables(NamedTuple):
@@ -126,23 +126,40 @@ def _grown(present: float, limit: float, ticks: float, tables: Tables) -> tuple[
 
 
 @kernel
-def advance_node(
-    state: Array, from_temp: float, to_temp: float, span: float, scale: Array, tables: Tables
+def _at(value: Array, row: int, share: float, column: int) -> float:
+    """A column of the table between two rows."""
+    low: float = value[row, column]
+    high: float = value[row + 1, column]
+    return low + share * (high - low)
+
+
+@kernel
+def advance(
+    states: Array,
+    node: int,
+    from_temp: float,
+    to_temp: float,
+    span: float,
+    scales: Array,
+    tables: Tables,
+    backward: bool,
 ) -> float:
-    """Take one node along a straight temperature path; the state changes in place.
+    """Take one node along a straight temperature path; its state changes in place.
 
     Parameters
     ----------
-    state
-        The node's state, shape (N_STATE,).
+    states, node
+        All states, shape (n_node, N_STATE), and the node to advance.
     from_temp, to_temp
         Temperatures at the ends of the path [K].
     span
         Duration [s].
-    scale
-        Factors on the rates of ferrite, pearlite and bainite, shape (3,).
+    scales
+        Factors on the rates of ferrite, pearlite and bainite, shape (n_node, 3).
     tables
         The steel.
+    backward
+        Whether the first pass goes from bainite to ferrite; callers alternate.
 
     Returns
     -------
@@ -152,97 +169,97 @@ def advance_node(
     """
     austenite = 1.0
     for i in range(5):
-        austenite -= state[i]
+        austenite -= states[node, i]
     if austenite <= NOTHING_LEFT or not tables.transforms:
-        state[COLDEST] = min(state[COLDEST], to_temp)
+        states[node, COLDEST] = min(states[node, COLDEST], to_temp)
         return 0.0
-    if from_temp > tables.top and to_temp > tables.top:
-        return 0.0
-
     value = tables.value
     last = value.shape[0] - 2
     stride = to_temp - from_temp
-    n_half = 2 * (1 + int(abs(stride) / LONGEST_STRIDE))
-    part = span / n_half
+    n_pass = 1 + int(abs(stride) / LONGEST_STRIDE)
+    part = span / n_pass
     slope: float = 0.0
-    for half in range(n_half):
-        place = (half + 0.5) / n_half
+    for lap in range(n_pass):
+        place = (lap + 0.5) / n_pass
         temp = from_temp + place * stride
         grid = (temp - tables.first) / tables.step
         row = min(max(int(grid), 0), last)
         share = grid - row
-        here = value[row]
-        there = value[row + 1]
-        carbon = state[CARBON_AUSTENITE] / austenite
+        carbon = states[node, CARBON_AUSTENITE] / austenite
         # Latent heats of this moment [J/kg], for the derivative only.
-        h_austenite = here[H_AUSTENITE] + carbon * here[H_AUSTENITE_C]
-        h_product = here[H_FERRITE] + carbon * here[H_FERRITE_C]
+        h_austenite = value[row, H_AUSTENITE] + carbon * value[row, H_AUSTENITE_C]
+        h_product = value[row, H_FERRITE] + carbon * value[row, H_FERRITE_C]
         by_temp = (h_product - h_austenite) * part * place / tables.step
         for turn in range(3):
-            which = turn if half % 2 == 0 else 2 - turn
-            if which == 0:
-                rate = here[RATE_FERRITE] + share * (there[RATE_FERRITE] - here[RATE_FERRITE])
-                limit = here[LIMIT_FERRITE] + share * (there[LIMIT_FERRITE] - here[LIMIT_FERRITE])
-                limit = min(limit, state[FERRITE] + austenite)
-                grown, per = _grown(state[FERRITE], limit, rate * scale[0] * part, tables)
-                more = grown - state[FERRITE]
-                if more > 0.0:
-                    state[FERRITE] = grown
-                    state[CARBON_AUSTENITE] -= more * here[CARBON_FERRITE]
-                    austenite -= more
-                slope += by_temp * per * scale[0] * (there[RATE_FERRITE] - here[RATE_FERRITE])
-                limit = here[LIMIT_CEMENTITE] + share * (
-                    there[LIMIT_CEMENTITE] - here[LIMIT_CEMENTITE]
-                )
-                limit = min(limit, state[CEMENTITE] + austenite)
-                if limit > state[CEMENTITE]:
-                    rate = here[RATE_CEMENTITE] + share * (
-                        there[RATE_CEMENTITE] - here[RATE_CEMENTITE]
-                    )
-                    filled = (state[CEMENTITE] / limit) ** 2
-                    filled = 1.0 - (1.0 - filled) * np.exp(-rate * part)
-                    more = limit * np.sqrt(filled) - state[CEMENTITE]
-                    if more > 0.0:
-                        state[CEMENTITE] += more
-                        state[CARBON_AUSTENITE] -= more * CEMENTITE_CARBON_PCT
-                        austenite -= more
-            else:
-                column = RATE_PEARLITE if which == 1 else RATE_BAINITE
+            which = turn if (lap % 2 == 0) != backward else 2 - turn
+            column = RATE_FERRITE + which
+            rate = _at(value, row, share, column)
+            if which > 0 and rate > 0.0:
                 product = PEARLITE if which == 1 else BAINITE
-                rate = here[column] + share * (there[column] - here[column])
-                present = state[product]
-                grown, per = _grown(
-                    present, present + austenite, rate * scale[which] * part, tables
-                )
+                present = states[node, product]
+                ticks = rate * scales[node, which] * part
+                grown, per = _grown(present, present + austenite, ticks, tables)
                 more = grown - present
                 if more > 0.0:
-                    carbon = state[CARBON_AUSTENITE] / austenite
-                    state[product] = grown
-                    state[CARBON_AUSTENITE] -= more * carbon
+                    carbon = states[node, CARBON_AUSTENITE] / austenite
+                    states[node, product] = grown
+                    states[node, CARBON_AUSTENITE] -= more * carbon
                     if which == 1:
-                        state[PEARLITE_HEAT] += more * temp
+                        states[node, PEARLITE_HEAT] += more * temp
                     austenite -= more
-                slope += by_temp * per * scale[which] * (there[column] - here[column])
+                steep = value[row + 1, column] - value[row, column]
+                slope += by_temp * per * scales[node, which] * steep
+            elif which == 0:
+                present = states[node, FERRITE]
+                limit = min(_at(value, row, share, LIMIT_FERRITE), present + austenite)
+                if rate > 0.0 and limit > present:
+                    ticks = rate * scales[node, 0] * part
+                    grown, per = _grown(present, limit, ticks, tables)
+                    more = grown - present
+                    states[node, FERRITE] = grown
+                    states[node, CARBON_AUSTENITE] -= more * value[row, CARBON_FERRITE]
+                    austenite -= more
+                    steep = value[row + 1, column] - value[row, column]
+                    slope += by_temp * per * scales[node, 0] * steep
+                present = states[node, CEMENTITE]
+                limit = min(_at(value, row, share, LIMIT_CEMENTITE), present + austenite)
+                if limit > present:
+                    rate = _at(value, row, share, RATE_CEMENTITE)
+                    filled = 1.0 - (1.0 - (present / limit) ** 2) * np.exp(-rate * part)
+                    more = limit * np.sqrt(filled) - present
+                    if more > 0.0:
+                        states[node, CEMENTITE] += more
+                        states[node, CARBON_AUSTENITE] -= more * CEMENTITE_CARBON_PCT
+                        austenite -= more
             if austenite <= NOTHING_LEFT:
-                state[COLDEST] = min(state[COLDEST], to_temp)
+                states[node, COLDEST] = min(states[node, COLDEST], to_temp)
                 return slope
-        reached = from_temp + (half + 1.0) / n_half * stride
-        if reached < state[COLDEST]:
-            carbon = state[CARBON_AUSTENITE] / austenite
+        reached = from_temp + (lap + 1.0) / n_pass * stride
+        if reached < states[node, COLDEST]:
+            carbon = states[node, CARBON_AUSTENITE] / austenite
             start = tables.start[0] - tables.start[1] * (1.0 - np.exp(-tables.start[2] * carbon))
             if reached < start:
                 speed = tables.rate[0] - tables.rate[1] * (1.0 - np.exp(-tables.rate[2] * carbon))
-                under = min(start, state[COLDEST]) - reached
+                under = min(start, states[node, COLDEST]) - reached
                 more = austenite * -np.expm1(-speed * under)
-                state[MARTENSITE] += more
-                state[CARBON_MARTENSITE] += more * carbon
-                state[CARBON_AUSTENITE] -= more * carbon
+                states[node, MARTENSITE] += more
+                states[node, CARBON_MARTENSITE] += more * carbon
+                states[node, CARBON_AUSTENITE] -= more * carbon
                 austenite -= more
-                if half == n_half - 1:
-                    h_martensite = here[H_MARTENSITE] + carbon * here[H_MARTENSITE_C]
+                if lap == n_pass - 1:
+                    h_martensite = value[row, H_MARTENSITE] + carbon * value[row, H_MARTENSITE_C]
                     slope += (h_austenite - h_martensite) * speed * austenite
-            state[COLDEST] = reached
+            states[node, COLDEST] = reached
     return slope
+
+
+@kernel
+def advance_node(
+    state: Array, from_temp: float, to_temp: float, span: float, scale: Array, tables: Tables
+) -> float:
+    """`advance` for a single state, shape (N_STATE,), with its own ``scale`` (3,)."""
+    one = state.reshape(1, N_STATE)
+    return advance(one, 0, from_temp, to_temp, span, scale.reshape(1, 3), tables, False)
 
 
 @kernel
