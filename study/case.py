@@ -70,7 +70,10 @@ class SteelInput:
 
 @dataclass(frozen=True)
 class SectionInput:
-    """The section's form and its dimensions [m]; those of other forms are None."""
+    """The section's form and its dimensions [m]; those of other forms are None.
+
+    ``emissivity`` of the surface [-] acts in gases: 0.8 is scaled steel.
+    """
 
     form: Form
     thickness: float | None = None
@@ -81,6 +84,7 @@ class SectionInput:
     width: float | None = None
     height: float | None = None
     bore_medium: MediumUse | None = None
+    emissivity: float = 0.8
 
     @property
     def zones(self) -> tuple[str, ...]:

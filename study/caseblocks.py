@@ -95,17 +95,17 @@ def section_input(table: Table) -> SectionInput | None:
     if form is None:
         if not table.has("form"):
             table.missing("form", one_of(forms))
-        table.only(("form", *keys.ALL_DIMENSIONS, "bore_medium"))
+        table.only(("form", *keys.ALL_DIMENSIONS, "bore_medium", "emissivity"))
         for name in keys.ALL_DIMENSIONS:
             table.quantity(name, "length", keys.DIMENSION_RANGE)
         return None
-    known = ("form", *keys.DIMENSIONS[form], *keys.OPTIONAL[form])
+    known = ("form", *keys.DIMENSIONS[form], *keys.OPTIONAL[form], "emissivity")
     strange = f'form = "{form}" has no such key; it takes {", ".join(known[1:])}.'
     table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, "bore_medium"), strange))
     size = {
         name: table.quantity(name, "length", keys.DIMENSION_RANGE)
         for name in known[1:]
-        if name != "bore_medium"
+        if name not in ("bore_medium", "emissivity")
     }
     low, high = (show(end, "length") for end in keys.DIMENSION_RANGE)
     for name in keys.DIMENSIONS[form]:
@@ -122,7 +122,22 @@ def section_input(table: Table) -> SectionInput | None:
         medium = medium_use(table, "bore_medium")
     if table.has("length") and size.get("length") is None:
         return None  # whether the ends cool is not known
-    return SectionInput(form=form, bore_medium=medium, **size)
+    emissivity = _emissivity(table)
+    return SectionInput(form=form, bore_medium=medium, emissivity=emissivity, **size)
+
+
+def _emissivity(table: Table) -> float:
+    """Emissivity of the surface; scaled steel where it is left out."""
+    low, high = keys.EMISSIVITY_RANGE
+    value = table.number("emissivity", f"{low:g} to {high:g}")
+    if value is not None and not low <= value <= high:
+        table.fault(
+            "emissivity",
+            f"{low:g} to {high:g}",
+            "Scaled steel has 0.8, bright steel 0.35 to 0.5; it acts in air and gas only.",
+        )
+        value = None
+    return SectionInput("slab").emissivity if value is None else value
 
 
 def grid(table: Table | None, section: SectionInput | None) -> Grid:

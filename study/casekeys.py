@@ -34,6 +34,7 @@ OPTIONAL: Mapping[Form, tuple[str, ...]] = {
     "bar": (),
     "ring": ("bore_medium",),
 }
+EMISSIVITY_RANGE = (0.05, 1.0)
 ALL_DIMENSIONS = ("thickness", "diameter", "length", "outside", "bore", "width", "height")
 STAGES: tuple[StageKind, ...] = ("soak", "transfer", "quench", "hold")
 SOAK = ("stage", "at", "time")

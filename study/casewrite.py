@@ -8,7 +8,17 @@ from midradius.thermo.grades import grade
 from midradius.thermo.units import show
 
 from . import casekeys as keys
-from .case import Case, Grid, MediumUse, Outputs, PositionInput, Stage, SteelInput, position
+from .case import (
+    Case,
+    Grid,
+    MediumUse,
+    Outputs,
+    PositionInput,
+    SectionInput,
+    Stage,
+    SteelInput,
+    position,
+)
 
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 
@@ -27,6 +37,8 @@ def dumps(case: Case) -> str:
             lines.append(f"{name} = {_length(size)}")
     if case.section.bore_medium:
         lines.append(f"bore_medium = {_inline(case.section.bore_medium, folder)}")
+    if case.section.emissivity != SectionInput("slab").emissivity:
+        lines.append(f"emissivity = {case.section.emissivity!r}")
     for stage in case.route:
         lines += ["", "[[route]]", *_stage(stage, folder)]
     lines += ["", "[output]", *_outputs(case.outputs)]

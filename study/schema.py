@@ -79,10 +79,18 @@ def _section() -> Schema:
         for name in keys.ALL_DIMENSIONS
     }
     bore = _to("medium_use")
+    low, high = keys.EMISSIVITY_RANGE
+    emissivity = {
+        "type": "number",
+        "minimum": low,
+        "maximum": high,
+        "description": "Of the surface, in air and gas; scaled steel 0.8, bright 0.35 to 0.5.",
+    }
     forms = [
         _table(
             {"form": {"const": form}}
-            | {name: sizes.get(name, bore) for name in (*needed, *keys.OPTIONAL[form])},
+            | {name: sizes.get(name, bore) for name in (*needed, *keys.OPTIONAL[form])}
+            | {"emissivity": emissivity},
             ("form", *needed),
         )
         for form, needed in keys.DIMENSIONS.items()

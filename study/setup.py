@@ -83,7 +83,7 @@ def prepare(case: Case) -> Setup:
     for stage, use in zip(case.route[1:], uses, strict=True):
         surfaces = {}
         for zone, medium_use in use.items():
-            surface, more, source, warned = _surface(medium_use, section)
+            surface, more, source, warned = _surface(medium_use, section, case.section.emissivity)
             surfaces[zone] = surface
             notes += more
             notes += beyond(surface.film, coldest=surface.ambient, hottest=soak)
@@ -135,7 +135,7 @@ _GEOMETRY: Mapping[str, Geometry] = {
 
 
 def _surface(
-    use: MediumUse, section: Section
+    use: MediumUse, section: Section, emissivity: float
 ) -> tuple[Surface, list[RangeNote], list[Source], tuple[str, ...]]:
     if use.film_file is not None:
         curve = film_from_csv(use.film_file)
@@ -156,7 +156,11 @@ def _surface(
     elif section.form == "bar":
         length = spans[1].length
     curve, notes = film(
-        found, bath=bath, length=length, geometry=_GEOMETRY.get(section.form, "horizontal cylinder")
+        found,
+        bath=bath,
+        length=length,
+        geometry=_GEOMETRY.get(section.form, "horizontal cylinder"),
+        emissivity=emissivity,
     )
     label = found.name if found.kind == "ideal" else f"{found.name}, {bath - ZERO_DEGC:.4g} degC"
     return Surface(label, curve, bath), list(notes), [found.source], found.cautions

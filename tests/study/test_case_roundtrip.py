@@ -70,6 +70,7 @@ def uses(draw: st.DrawFn) -> MediumUse:
 def sections(draw: st.DrawFn) -> SectionInput:
     form: Form = draw(st.sampled_from(list(casekeys.DIMENSIONS)))
     size = {name: draw(floats(0.5e-3, 4.0)) for name in casekeys.DIMENSIONS[form]}
+    size["emissivity"] = draw(st.just(0.8) | floats(0.05, 1.0))
     if "bore" in size:
         size["outside"] = size["bore"] + draw(floats(1.1e-3, 2.0))
         return SectionInput(form=form, bore_medium=draw(st.none() | uses()), **size)
