@@ -10,11 +10,11 @@ Control volumes: Patankar, Numerical Heat Transfer and Fluid Flow, 1980, ch. 3-4
 (remembered). Geometric and tanh stretching are common practice, no source.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-from scipy.optimize import brentq
 
 from midradius.fem.volumes import ControlVolumes, Sense
 from midradius.thermo.arrays import Array
@@ -83,13 +83,19 @@ def axis(
     return Axis(nodes, low, high)
 
 
-def _solve(gap, low: float, high: float) -> float:  # type: ignore[no-untyped-def]
-    """Root of a falling function, or the bound that comes nearest."""
+def _solve(gap: Callable[[float], float], low: float, high: float) -> float:
+    """Root of a falling function, or the bound that comes nearest.
+
+    Halving instead of a library's root finder: importing one costs more than the run.
+    """
     if gap(high) > 0.0:
         return high
     if gap(low) < 0.0:
         return low
-    return float(brentq(gap, low, high, xtol=1e-12))
+    for _ in range(60):
+        middle = 0.5 * (low + high)
+        low, high = (middle, high) if gap(middle) > 0.0 else (low, middle)
+    return 0.5 * (low + high)
 
 
 def halved(line: Axis) -> Axis:

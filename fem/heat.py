@@ -25,7 +25,7 @@ import numpy as np
 from midradius.fem.linear import Scheme, solve
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.compiled import kernel
-from midradius.thermo.kinetics import Tables, advance, enthalpy_node
+from midradius.thermo.kinetics import N_STATE, Tables, advance, enthalpy_node
 
 GAMMA = 2.0 - np.sqrt(2.0)  # where the first stage ends, as a share of the step
 IMPLICIT = 1.0 - np.sqrt(2.0) / 2.0  # weight of the newest rate in both stages
@@ -99,6 +99,19 @@ class Progress(NamedTuple):
 
 
 @kernel
+def _cell(moment: Array, now: float) -> int:
+    """The interval of ascending moments that holds ``now``; the last one beyond the end."""
+    low, high = 0, len(moment) - 1
+    while high - low > 1:
+        middle = (low + high) // 2
+        if moment[middle] < now:
+            low = middle
+        else:
+            high = middle
+    return low
+
+
+@kernel
 def _between(table: Array, moment: Array, row: int, now: float) -> float:
     """Linear interpolation in time of one row; the ends hold."""
     n = len(moment)
@@ -106,7 +119,7 @@ def _between(table: Array, moment: Array, row: int, now: float) -> float:
     if n > 1 and now >= moment[n - 1]:
         value = table[row, n - 1]
     elif n > 1 and now > moment[0]:
-        k = int(np.searchsorted(moment, now)) - 1
+        k = _cell(moment, now)
         share = (now - moment[k]) / (moment[k + 1] - moment[k])
         value = table[row, k] + share * (table[row, k + 1] - table[row, k])
     return value
@@ -131,7 +144,7 @@ def heat_rate(
         for i in range(len(temp)):
             rate[i] = body.volume[i] * skin.source[0, i]
     else:
-        k = min(int(np.searchsorted(skin.source_moment, now)) - 1, n_moment - 2)
+        k = _cell(skin.source_moment, now)
         share = (now - skin.source_moment[k]) / (skin.source_moment[k + 1] - skin.source_moment[k])
         for i in range(len(temp)):
             source = skin.source[k, i] + share * (skin.source[k + 1, i] - skin.source[k, i])
@@ -189,7 +202,8 @@ def stage(
     stored, capacity, move = work[0], work[1], work[2]
     for iteration in range(MOST_ITERATIONS):
         for i in range(n):
-            state[i] = from_state[i]
+            for column in range(N_STATE):  # assigning whole rows compiles error texts
+                state[i, column] = from_state[i, column]
             slope = 0.0
             if min(from_temp[i], temp[i]) < tables.top:
                 slope = advance(

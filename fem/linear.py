@@ -188,8 +188,10 @@ def _sum_up(grid: Aggregates, excess: Array, weight: Array) -> None:
     n_level = len(grid.node_start) - 1
     grid.excess[:] = 0.0
     grid.weight[:] = 0.0
-    grid.excess[: len(excess)] = excess
-    grid.weight[: len(weight)] = weight
+    for i in range(len(excess)):
+        grid.excess[i] = excess[i]
+    for e in range(len(weight)):
+        grid.weight[e] = weight[e]
     for level in range(n_level):
         n0, n1 = grid.node_start[level], grid.node_start[level + 1]
         e0, e1 = grid.edge_start[level], grid.edge_start[level + 1]
@@ -228,7 +230,8 @@ def _smooth(grid: Aggregates, level: int, backward: bool) -> None:
 def _cycle(grid: Aggregates, load: Array, out: Array) -> None:
     """One symmetric V-cycle: ``out`` approximates the solution for ``load``."""
     n_level = len(grid.node_start) - 1
-    grid.load[: len(load)] = load
+    for i in range(len(load)):
+        grid.load[i] = load[i]
     for level in range(n_level):
         n0, n1 = grid.node_start[level], grid.node_start[level + 1]
         e0 = grid.edge_start[level]
@@ -255,7 +258,8 @@ def _cycle(grid: Aggregates, load: Array, out: Array) -> None:
         for i in range(n0, n1):
             grid.guess[i] += grid.guess[n1 + grid.parent[i]]
         _smooth(grid, level, True)
-    out[:] = grid.guess[: len(out)]
+    for i in range(len(out)):
+        out[i] = grid.guess[i]
 
 
 @kernel
@@ -267,10 +271,12 @@ def _gradients(
     n_edge = len(weight)
     _sum_up(grid, excess, weight)
     rest, step, image, fixed = grid.work[0], grid.work[1], grid.work[2], grid.work[3]
-    out[:] = 0.0
-    rest[:] = rhs
+    for i in range(n):
+        out[i] = 0.0
+        rest[i] = rhs[i]
     _cycle(grid, rest, fixed)
-    step[:] = fixed
+    for i in range(n):
+        step[i] = fixed[i]
     gain = np.dot(rest, fixed)
     if gain <= 0.0:
         return 0

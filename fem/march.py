@@ -243,7 +243,8 @@ def march(
             older[i] = temp[i]
             temp[i] = end[i]
             rate0[i] = rate2[i]
-            progress.state[i] = state2[i]
+            for column in range(N_STATE):
+                progress.state[i, column] = state2[i, column]
         for zone in range(n_zone):
             zone0[zone] = zone2[zone]
         clock[TIME] = start + step
