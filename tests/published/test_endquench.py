@@ -2,7 +2,7 @@
 
 Every row is asserted with its suggested tolerance; a row that the job misses is a
 strict expected failure with the figures, so that a better model is noticed.
-Why they fail: the cooling rates on the dry side lie 20 to 50 % above the chart, and
+Why they fail: beyond 8 mm the cooling rates lie 20 to 55 % above the chart, and
 mixtures of martensite and bainite come out 5 to 8 HRC harder than Hodge & Orehoski
 (1946) measured at half martensite (42.4 HRC at 0.4 % C, from memory).
 """
