@@ -8,11 +8,11 @@ twelve 4140 values: median 2.6, nine in ten within 14.2, worst 16.9 HRC; in stil
 8.0 and 12.2. Of 1080: 7.0, 20.8, 24.1; still 4.6, 19.7, 23.4. Normalised bars are
 measured at mid-radius, where the tensile piece comes from.
 
-A row that the job misses is a strict expected failure with the figures. 4140: bars of
-50 mm cool as the end-quench charts say (13 K/s at the core, J10 to J12 in oil), but
-come out 80 % martensite, and mixtures are too hard (see ``test_endquench``). 1080: the
-pearlite rate falls with the exponential of 4.36 Mn, so that 0.75 % Mn makes a pearlitic
-bar martensitic; thick bars are soft by 5 to 7 HRC.
+A row that the job misses is a strict expected failure with the figures. 4140: the core
+of 50 mm cools at 13 K/s (equivalence charts: J10 to J12 in oil, 12 to 9 K/s), but comes
+out 83 % martensite, and mixtures are too hard (see ``test_endquench``). 1080: the
+pearlite rate falls with the exponential of 4.36 Mn and ends in a long tail, so that a
+pearlitic bar comes out martensitic; thick bars are soft by 5 to 7 HRC.
 """
 
 from functools import cache
