@@ -121,7 +121,7 @@ _POSITION_COLUMNS = (
 
 
 def _texts(result: Result) -> dict[str, str]:
-    return {
+    texts = {
         "case_toml": result.case_text,
         "inputs_json": _json(result.inputs),
         "title": result.title,
@@ -141,6 +141,8 @@ def _texts(result: Result) -> dict[str, str]:
         "assumptions_json": _json(result.assumptions),
         "cautions_json": _json(result.cautions),
     }
+    # A file name need not be UTF-8; what the record holds must be.
+    return {key: text.encode(errors="replace").decode() for key, text in texts.items()}
 
 
 def _json(value: object) -> str:

@@ -3,6 +3,7 @@
 import json
 import logging
 import os
+import shlex
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -41,7 +42,29 @@ The folder holds:
 """
 
 
+class _ReaderGone(Exception):
+    """Whoever read stdout has left."""
+
+
+class _Commands(click.Group):
+    """The commands, with their ends told apart before click turns them into exit code 1."""
+
+    def invoke(self, ctx: click.Context) -> object:
+        try:
+            return super().invoke(ctx)
+        except BrokenPipeError as gone:
+            raise _ReaderGone from gone
+        except SystemExit as leaving:
+            if isinstance(leaving.__context__, BrokenPipeError):  # so ends rich
+                raise _ReaderGone from leaving
+            raise
+        except KeyboardInterrupt:
+            click.echo("Interrupted.", err=True)
+            sys.exit(INTERRUPTED)
+
+
 @click.group(
+    cls=_Commands,
     context_settings={"help_option_names": ["-h", "--help"]},
     epilog=_EPILOG,
     no_args_is_help=True,
@@ -78,7 +101,7 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
         asked = read(case)
         from midradius.study import job
 
-        target = folder if folder is not None else Path(case.stem)
+        target = folder if folder is not None else _folder_of(case)
         # It would tell of its font cache on stderr, where only errors belong.
         logging.getLogger("matplotlib").setLevel(logging.ERROR)
         with _progress(asked.title, hidden=quiet or as_json) as tell:
@@ -95,7 +118,7 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
 
         console = Console(highlight=False)
         terminal(result, console)
-        console.print(f"Written to {target}", markup=False)
+        console.print(f"\nWritten to {_printable(target)}", markup=False)
 
 
 @cli.command()
@@ -106,10 +129,10 @@ def check(case: Path) -> None:
 
     with _answered():
         asked = read(case)
-    click.echo(f"{case}: sound ({asked.title})")
+    click.echo(f"{_printable(case)}: sound ({asked.title})")
 
 
-@cli.command()
+@cli.command(short_help="Write a commented starter case.")
 @click.argument("file", type=click.Path(path_type=Path), required=False)
 @click.option(
     "--form",
@@ -128,7 +151,8 @@ def new(file: Path | None, form: str) -> None:
         return
     with _answered():
         _write_new(file, content)
-    click.echo(f"Wrote {file}. Next: midradius run {file} --out {file.stem}", err=True)
+    shown, target = (shlex.quote(_printable(path)) for path in (file, _folder_of(file)))
+    click.echo(f"Wrote {shown}. Next: midradius run {shown} --out {target}", err=True)
 
 
 def _write_new(file: Path, content: str) -> None:
@@ -145,7 +169,7 @@ def _write_new(file: Path, content: str) -> None:
         raise InputFault("file", str(file), "a place that can be written", f"{fault}.") from fault
 
 
-@cli.command()
+@cli.command(short_help="List the shipped grades.")
 @click.argument("part", required=False, default="")
 def steels(part: str) -> None:
     """List the shipped grades, or those whose name or number contains PART."""
@@ -160,7 +184,7 @@ def steels(part: str) -> None:
         sys.exit(BAD_INPUT)
 
 
-@cli.command()
+@cli.command(short_help="List the media and their bath temperatures.")
 def media() -> None:
     """List the media and the bath temperatures they are known for."""
     from midradius.fem.media import ZERO_DEGC, medium, names
@@ -169,7 +193,9 @@ def media() -> None:
         found = medium(name)
         low, high = found.bath_min - ZERO_DEGC, found.bath_max - ZERO_DEGC
         bath = "" if found.kind == "ideal" else f"{low:.0f} to {high:.0f} degC"
-        sure = f"film +-{found.uncertainty_pct:.0f} %" if found.uncertainty_pct else "no heat passes"
+        sure = (
+            f"film +-{found.uncertainty_pct:.0f} %" if found.uncertainty_pct else "no heat passes"
+        )
         click.echo(f"{name:26} {bath:18} {sure}")
 
 
@@ -179,6 +205,15 @@ def schema() -> None:
     from midradius.study.schema import document
 
     click.echo(json.dumps(document(), indent=2))
+
+
+def _folder_of(case: Path) -> Path:
+    """Where the result of a case goes unless it is said: here, under the case's name."""
+    return Path(case.stem if case.suffix else f"{case.name}-result")
+
+
+def _printable(path: Path | str) -> str:
+    return "".join(c if c.isprintable() else "?" for c in str(path))
 
 
 @contextmanager
@@ -230,7 +265,7 @@ def main() -> None:
         if hasattr(stream, "reconfigure"):  # a title may not fit an old terminal's letters
             stream.reconfigure(errors="backslashreplace")
     try:
-        cli(standalone_mode=False)
+        cli(prog_name="midradius", standalone_mode=False)
         if sys.stdout is not None:
             sys.stdout.flush()
     except click.exceptions.Abort:
@@ -239,22 +274,13 @@ def main() -> None:
     except click.ClickException as fault:
         fault.show()
         sys.exit(fault.exit_code)
-    except SystemExit as leaving:
-        # what click and rich make of a reader that went away
-        if isinstance(leaving.__context__, BrokenPipeError):
-            _reader_gone()
-        raise
-    except BrokenPipeError:
-        _reader_gone()
+    except (_ReaderGone, BrokenPipeError):
+        _silence_stdout()
+        sys.exit(DONE)
     except OSError as fault:
         _silence_stdout()
         click.echo(f"The answer could not be printed: {fault.strerror}.", err=True)
         sys.exit(BAD_INPUT)
-
-
-def _reader_gone() -> None:
-    _silence_stdout()
-    sys.exit(DONE)
 
 
 def _silence_stdout() -> None:

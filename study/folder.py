@@ -110,12 +110,15 @@ class ResultFolder:
     def _check_existing(self, place: Path) -> None:
         if not place.is_dir():
             raise InputFault(
-                "output folder", str(self.target), _ALLOWED, "A file of that name is there."
+                "output folder",
+                shown(self.target),
+                _ALLOWED,
+                "A file of that name is there.",
             )
         if os.path.ismount(place):
             raise InputFault(
                 "output folder",
-                str(self.target),
+                shown(self.target),
                 "a folder that can be moved",
                 "This one is a mount point: name a folder inside it.",
             )
@@ -126,7 +129,7 @@ class ResultFolder:
         if foreign:
             raise InputFault(
                 "output folder",
-                str(self.target),
+                shown(self.target),
                 _ALLOWED,
                 f"It holds {foreign}: choose another place, or move that away.",
             )
@@ -164,7 +167,14 @@ class ResultFolder:
         self._made = []
 
     def _fault(self, allowed: str, fault: Exception) -> InputFault:
-        return InputFault("output folder", repr(str(self.target)), allowed, f"{fault}.")
+        # Without the hidden name that was tried, which would only puzzle.
+        reason = getattr(fault, "strerror", None) or str(fault)
+        return InputFault("output folder", shown(self.target), allowed, f"{reason}.")
+
+
+def shown(target: Path) -> str:
+    """A path on one line of a message, whatever its name holds."""
+    return '"' + "".join(c if c.isprintable() else "?" for c in str(target)) + '"'
 
 
 def sweep(place: Path) -> None:

@@ -1,17 +1,30 @@
 """The one job: a case in, a result folder out. Everything that starts a run calls it."""
 
-from collections.abc import Callable
+import contextlib
+from collections.abc import Callable, Iterator
+from concurrent.futures import ThreadPoolExecutor
+from importlib import import_module
 from pathlib import Path
+from threading import Thread
 from typing import TYPE_CHECKING
 
 from midradius.study.casefile import read
-from midradius.study.folder import ResultFolder
+from midradius.study.folder import ResultFolder, shown
+from midradius.thermo.errors import InputFault
 
 if TYPE_CHECKING:
     from midradius.study.case import Case
     from midradius.study.result import Result
 
 Tell = Callable[[float, float], None]
+
+_WRITERS = (
+    "matplotlib.backends.backend_agg",
+    "matplotlib.figure",
+    "matplotlib.tri",
+    "meshio",
+    "h5py",
+)
 
 
 def solve(case: "Case | Path | str", *, tell: Tell | None = None) -> "Result":
@@ -40,18 +53,56 @@ def write(result: "Result", folder: Path | str) -> Path:
         The place cannot be written or holds something else.
     """
     target = Path(folder)
-    with ResultFolder(target) as work:
+    with _written(target) as work:
         _fill(result, work)
     return target
 
 
 def run(case: "Case | Path | str", folder: Path | str, *, tell: Tell | None = None) -> "Result":
-    """Solve a case and write its result folder; refuses a bad folder before solving."""
+    """Solve a case and write its result folder; refuses a bad folder before solving.
+
+    Raises
+    ------
+    CaseFaults, InputFault, SolverFault
+        As `solve` and `write`.
+    """
     asked = read(case) if isinstance(case, Path | str) else case
-    with ResultFolder(Path(folder)) as work:
-        result = solve(asked, tell=tell)
+    with _written(Path(folder)) as work:
+        with _meanwhile(_load_writers):
+            result = solve(asked, tell=tell)
         _fill(result, work)
     return result
+
+
+@contextlib.contextmanager
+def _written(target: Path) -> Iterator[Path]:
+    """A result folder to fill; what the disk refuses on the way is an answer, not a crash."""
+    try:
+        with ResultFolder(target) as work:
+            yield work
+    except OSError as fault:
+        reason = fault.strerror or str(fault)
+        raise InputFault(
+            "output folder", shown(target), "a place that takes all files", f"{reason}."
+        ) from fault
+
+
+@contextlib.contextmanager
+def _meanwhile(action: Callable[[], None]) -> Iterator[None]:
+    """Do ``action`` beside the body: compiled kernels leave the interpreter free."""
+    beside = Thread(target=action)
+    beside.start()
+    try:
+        yield
+    finally:
+        beside.join()
+
+
+def _load_writers() -> None:
+    # Half a second of imports; whatever fails here fails again, and loudly, in `_fill`.
+    with contextlib.suppress(Exception):
+        for name in _WRITERS:
+            import_module(name)
 
 
 def _fill(result: "Result", work: Path) -> None:
@@ -59,9 +110,12 @@ def _fill(result: "Result", work: Path) -> None:
     from midradius.study.pictures import write_pictures
     from midradius.study.tables import write_tables
 
-    write_fields(result, work)
-    write_tables(result, work)
-    write_pictures(result, work)
+    # Field files are zlib, which leaves the interpreter free for the pictures.
+    with ThreadPoolExecutor(max_workers=1) as beside:
+        fields = beside.submit(write_fields, result, work)
+        write_pictures(result, work)
+        write_tables(result, work)
+        fields.result()
     write_result_record(result, work)
     if result.case_text:
         (work / "case.toml").write_text(result.case_text, encoding="utf-8")

@@ -1,9 +1,17 @@
-"""An invented run for the tests of what a run leaves: smooth made-up numbers, no physics.
+"""What the tests of this floor share: an invented run, a small case, the command.
 
-The part is a round of 300 mm from the works of Hallgrund Forge, drawn as a disc.
+The run has smooth made-up numbers and no physics; its part is a round of 300 mm from
+the works of Hallgrund Forge, drawn as a disc.
 """
 
-from dataclasses import replace
+import os
+import subprocess
+import sys
+import sysconfig
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -159,3 +167,99 @@ def result() -> Result:
 def slow_result(result: Result) -> Result:
     """An invented run that is pearlite throughout, with nothing measured on the way."""
     return slow_cooled(result)
+
+
+SMALL = """\
+title = "Stud HF-0001"
+
+[steel]
+grade = "C45E"
+
+[section]
+form = "round"
+diameter = "30 mm"
+
+[[route]]
+stage = "soak"
+at = "850 degC"
+time = "1 h"
+
+[[route]]
+stage = "quench"
+medium = "mineral oil, agitated"
+bath = "60 degC"
+time = "100 s"
+
+[output]
+fields = 3
+
+[grid]
+cells = 16
+accuracy = "4 K"
+"""
+
+
+@pytest.fixture(scope="session")
+def small() -> str:
+    """The text of a case that is solved in no time, coarsely."""
+    return SMALL
+
+
+@dataclass(frozen=True)
+class Answer:
+    """What a command left: its exit code and what stood on stdout and stderr."""
+
+    code: int
+    out: str
+    err: str
+
+
+Call = Callable[..., Answer]
+
+
+@pytest.fixture
+def call(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> Call:
+    """Run the command line in this process, in ``tmp_path``."""
+
+    def run(*words: str) -> Answer:
+        from midradius.study.cli import main
+
+        monkeypatch.chdir(tmp_path)
+        monkeypatch.setattr(sys, "argv", ["midradius", *words])
+        capsys.readouterr()
+        code = 0
+        try:
+            main()
+        except SystemExit as leaving:
+            code = int(leaving.code or 0)
+        said = capsys.readouterr()
+        return Answer(code, said.out, said.err)
+
+    return run
+
+
+Start = Callable[..., "subprocess.Popen[str]"]
+
+
+@pytest.fixture
+def start(tmp_path: Path) -> Iterator[Start]:
+    """Start the installed command in a process of its own, in ``tmp_path``."""
+    started: list[subprocess.Popen[str]] = []
+
+    def run(
+        *words: str, env: Mapping[str, str] | None = None, **how: Any
+    ) -> "subprocess.Popen[str]":
+        command = str(Path(sysconfig.get_path("scripts")) / "midradius")
+        pipes = {"stdout": subprocess.PIPE, "stderr": subprocess.PIPE, "text": True}
+        process = subprocess.Popen(
+            [command, *words], cwd=tmp_path, env={**os.environ, **(env or {})}, **{**pipes, **how}
+        )
+        started.append(process)
+        return process
+
+    yield run
+    for process in started:
+        process.kill()
+        process.communicate()
