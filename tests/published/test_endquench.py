@@ -2,9 +2,10 @@
 
 Every row is asserted with its suggested tolerance; a row that the job misses is a
 strict expected failure with the figures, so that a better model is noticed.
-Why they fail: beyond 8 mm the cooling rates lie 20 to 55 % above the chart, and
-mixtures of martensite and bainite come out 5 to 8 HRC harder than Hodge & Orehoski
-(1946) measured at half martensite (42.4 HRC at 0.4 % C, from memory).
+Every band is met. The rates of the chart are not: beyond 10 mm the piece in air cools
+20 to 35 % faster, of which the radiating side makes the larger part; a steel that
+transforms at 704 degC (1045) stays within the chart. The constant 30 kW/(m2 K) of the
+jet, an estimate, is too strong for the first two distances.
 """
 
 import numpy as np
@@ -18,17 +19,11 @@ from midradius.thermo.conversion import hv_to_hrc
 BANDS, CHART = rows("end_quench_bands"), rows("end_quench_rates")
 CHART_DEGC = 704.0  # 1300 degF; the result's own rate is at 700 degC, 1 % lower
 
-OUT_OF_BAND = {
-    "42CrMo4 20 mm": "56.2 HRC, band to 56",
-    "42CrMo4 25 mm": "54.8 HRC, band to 53",
-    "42CrMo4 30 mm": "52.8 HRC, band to 51",
-    "42CrMo4 35 mm": "49.6 HRC, band to 48",
-}
+OUT_OF_BAND: dict[str, str] = {}
 # By how many percent the computed rate is above the printed one
 OFF_CHART_IN_AIR = {
-    "J1": 135, "J2": 31, "J5": 20.0, "J6": 21, "J7": 25, "J8": 30, "J9": 33, "J10": 35, "J11": 38,
-    "J12": 32, "J13": 35, "J14": 36, "J16": 36, "J18": 38, "J20": 39, "J24": 50, "J28": 55,
-    "J32": 51,
+    "J1": 135, "J2": 31, "J7": 22, "J8": 26, "J9": 28, "J10": 30, "J11": 31, "J12": 24, "J13": 27,
+    "J14": 27, "J16": 25, "J18": 26, "J20": 26, "J24": 32, "J28": 35, "J32": 30,
 }  # fmt: skip
 OFF_CHART_INSULATED = {"J1": 134, "J2": 29, "J9": 20.3, "J10": 20.1}
 # within 0.2 % of the limit: the grid decides on which side, so these may pass
