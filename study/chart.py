@@ -4,7 +4,7 @@ Sheets are `Figure` objects on the Agg canvas, 1200 pixels wide at ``DPI``.
 """
 
 from collections.abc import Iterable, Sequence
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
@@ -21,18 +21,21 @@ SIZE = 9.5
 SMALL = 8.5
 
 
-def sheet(result: Result, *, height: float) -> "tuple[Figure, Axes]":
-    """A sheet with one pair of axes."""
-    figure, (axes,) = sheets(result, height=height, rows=1)
+def sheet(result: Result, *, height: float, drawing: bool = False) -> "tuple[Figure, Axes]":
+    """A sheet with one pair of axes; those of a ``drawing`` have equal scales."""
+    figure, (axes,) = sheets(result, height=height, rows=1, drawing=drawing)
     return figure, axes
 
 
-def sheets(result: Result, *, height: float, rows: int) -> "tuple[Figure, Sequence[Axes]]":
+def sheets(
+    result: Result, *, height: float, rows: int, drawing: bool = False
+) -> "tuple[Figure, Sequence[Axes]]":
     """A sheet with ``rows`` pairs of axes that share their abscissa."""
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
 
-    figure = Figure(figsize=(WIDTH_INCH, height), layout="constrained", facecolor="white")
+    layout: Literal["constrained", "compressed"] = "compressed" if drawing else "constrained"
+    figure = Figure(figsize=(WIDTH_INCH, height), layout=layout, facecolor="white")
     FigureCanvasAgg(figure)
     axes = figure.subplots(rows, 1, sharex=True, squeeze=False)[:, 0]
     figure.suptitle(_heading(result), fontsize=SIZE + 1.5)

@@ -52,17 +52,29 @@ _BELOW: Any = {
     "frameon": False,
 }
 _CRITICAL = ("Acm", "Ae3", "Ae1", "Bs", "Ms")
+# About evenly apart in the logarithm; those of the second column where there is room.
 _ROUND_TIMES = (
-    (0.01, "0.01 s"),
-    (0.1, "0.1 s"),
-    (1.0, "1 s"),
-    (10.0, "10 s"),
-    (60.0, "1 min"),
-    (600.0, "10 min"),
-    (3600.0, "1 h"),
-    (36000.0, "10 h"),
-    (360000.0, "100 h"),
+    (0.01, "0.01 s", True),
+    (0.03, "0.03 s", False),
+    (0.1, "0.1 s", True),
+    (0.3, "0.3 s", False),
+    (1.0, "1 s", True),
+    (3.0, "3 s", False),
+    (10.0, "10 s", True),
+    (30.0, "30 s", False),
+    (60.0, "1 min", True),
+    (180.0, "3 min", False),
+    (600.0, "10 min", True),
+    (1800.0, "30 min", False),
+    (3600.0, "1 h", True),
+    (10_800.0, "3 h", False),
+    (36_000.0, "10 h", True),
+    (86_400.0, "1 d", False),
+    (259_200.0, "3 d", True),
+    (864_000.0, "10 d", False),
 )
+_MOST_TICKS = 10
+_LEAST_SHARE = 0.005  # of a constituent: less is thinner than a line
 
 
 def write_pictures(result: Result, folder: Path) -> tuple[Path, ...]:
@@ -93,8 +105,11 @@ def cooling(result: Result) -> "Figure":
     if span > 50.0:
         axes.set_xscale("log")
         axes.set_xlim(start, times[-1])
-        ticks = [(t, text) for t, text in _ROUND_TIMES if start <= t <= times[-1]]
-        axes.set_xticks([t for t, _ in ticks], [text for _, text in ticks])
+        ticks = [tick for tick in _ROUND_TIMES if start <= tick[0] <= times[-1]]
+        if len(ticks) > _MOST_TICKS:
+            ticks = [tick for tick in ticks if tick[2]]
+        axes.set_xticks([t for t, _, _ in ticks], [text for _, text, _ in ticks])
+        axes.minorticks_off()
         axes.set_xlabel("time (logarithmic)", fontsize=SIZE)
     else:
         axes.set_xlim(0.0, times[-1])
@@ -118,18 +133,23 @@ def profile(result: Result) -> "Figure":
     depth, node = result.profile.depth_mm, result.profile.node
     hardness = result.hardness_hv[node]
     upper.plot(depth, hardness, color=BLACK, lw=1.8)
-    for k, p in enumerate(result.positions):
+    on_line = [(k, p, _along(result, p.coordinates_mm)) for k, p in enumerate(result.positions)]
+    for k, p, place in on_line:
+        if place is None:
+            continue
         error = abs(p.hardness_time_error_hv) + abs(p.hardness_grid_error_hv)
         if np.isfinite(error):
             upper.errorbar(
-                p.depth_mm, p.hardness_hv, yerr=error, fmt="none", capsize=4, ecolor=color_of(k)
+                place, p.hardness_hv, yerr=error, fmt="none", capsize=4, ecolor=color_of(k)
             )
-        mark(upper, k, p.depth_mm, p.hardness_hv, label(p.name))
-    low, high = around([*hardness, *(p.hardness_hv for p in result.positions)], least=40.0)
+        mark(upper, k, place, p.hardness_hv, label(p.name))
+    low, high = around(
+        [*hardness, *(p.hardness_hv for _, p, place in on_line if place is not None)], least=40.0
+    )
     upper.set_ylim(low, high)
     upper.set_ylabel("hardness [HV]", fontsize=SIZE)
     _rockwell_axis(upper, low, high)
-    present = [k for k in range(len(PHASE_NAMES)) if result.phases[k, node].max() > 5e-4]
+    present = [k for k in range(len(PHASE_NAMES)) if result.phases[k, node].max() > _LEAST_SHARE]
     lower.stackplot(
         depth,
         100.0 * result.phases[present][:, node],
@@ -139,7 +159,7 @@ def profile(result: Result) -> "Figure":
         lw=0.6,
     )
     lower.set_ylim(0.0, 100.0)
-    lower.set_ylabel("volume fraction [%]", fontsize=SIZE)
+    lower.set_ylabel("mass fraction [%]", fontsize=SIZE)
     lower.set_xlabel(f"depth below the surface [mm], {result.profile.label}", fontsize=SIZE)
     for axes in (upper, lower):
         axes.set_xlim(float(depth.min()), float(depth.max()))
@@ -154,10 +174,12 @@ def section(result: Result) -> "Figure":
     """Hardness over the drawing of the part."""
     from matplotlib.tri import Triangulation
 
-    figure, axes = sheet(result, height=6.4)
     view = result.view
     first, second = _plane(view.points_mm)
     x, y = view.points_mm[:, first], view.points_mm[:, second]
+    slender = float(np.ptp(y) / np.ptp(x))  # height over width of the drawing
+    flat = slender < 0.6
+    figure, axes = sheet(result, height=2.6 + 5.6 * slender if flat else 6.4, drawing=True)
     hardness = result.hardness_hv[view.node]
     low, high = around(hardness, least=10.0, margin=0.0)
     drawn = axes.tripcolor(
@@ -178,14 +200,46 @@ def section(result: Result) -> "Figure":
         )
     axes.set_aspect("equal")
     axes.grid(visible=False)
-    names = "xyz"
-    axes.set_xlabel(f"{names[first]} [mm]", fontsize=SIZE)
-    axes.set_ylabel(f"{names[second]} [mm]", fontsize=SIZE)
-    bar = figure.colorbar(drawn, ax=axes, shrink=0.9, pad=0.03)
+    _name_axes(axes, result.sense)
+    bar = figure.colorbar(
+        drawn,
+        ax=axes,
+        location="bottom" if flat else "right",
+        shrink=0.6 if flat else 0.9,
+        aspect=30 if flat else 20,
+        pad=0.03,
+    )
     bar.set_label("hardness [HV]", fontsize=SIZE)
     bar.ax.tick_params(labelsize=SMALL)
     figure.legend(**_BELOW)
     return figure
+
+
+def _name_axes(axes: "Axes", sense: str) -> None:
+    """Axis names of the drawing; a slab has no end, so only its thickness has a scale."""
+    axes.set_xlabel("radius [mm]" if sense == "axisymmetric" else "x [mm]", fontsize=SIZE)
+    if sense == "axisymmetric":
+        axes.xaxis.set_major_formatter(lambda value, _: f"{abs(value):g}")
+    if sense == "slab":
+        axes.set_yticks([])
+    else:
+        axes.set_ylabel("z [mm]" if sense == "axisymmetric" else "y [mm]", fontsize=SIZE)
+
+
+def _along(result: Result, coordinates_mm: tuple[float, ...]) -> float | None:
+    """Depth of a place along the line of the profile [mm]; None if it lies elsewhere."""
+    line = result.points_mm[result.profile.node]
+    depth = result.profile.depth_mm
+    length = float(np.linalg.norm(line[-1] - line[0]))
+    ahead = (line[-1] - line[0]) / length
+    away = np.asarray(coordinates_mm) - line[0]
+    far = float(away @ ahead)
+    if len(coordinates_mm) == 1 and far > length:  # the other half of a slab
+        far = 2.0 * length - far
+    beside = float(np.linalg.norm(away - (away @ ahead) * ahead))
+    if beside > 0.01 * length or not -1e-6 <= far / length <= 1.0 + 1e-6:
+        return None
+    return float(depth[0]) + far
 
 
 def _first_change(times: Array, temps: Array) -> float:
@@ -214,7 +268,8 @@ def _stage_marks(axes: "Axes", result: Result, top: float) -> None:
         begin, end = place(stage.start_s), place(stage.end_s)
         if 0.0 < begin < 1.0:
             axes.axvline(stage.start_s, color=GUIDE, lw=0.8, zorder=1)
-        full = label(f"{stage.kind}, {stage.medium}" if stage.medium else stage.kind)
+        medium = stage.medium.replace("degC", "°C")
+        full = label(f"{stage.kind}, {medium}" if medium else stage.kind)
         for text in (full, label(stage.kind)):
             if len(text) * 0.0115 < end - begin:
                 axes.text(
@@ -230,15 +285,17 @@ def _stage_marks(axes: "Axes", result: Result, top: float) -> None:
 
 
 def _rockwell_axis(axes: "Axes", low: float, high: float) -> None:
-    marks = np.arange(20.0, 69.0, 2.0)
+    marks = np.arange(20.0, 69.0)
     places = np.asarray(hrc_to_hv(marks))
     shown = np.isfinite(places) & (places >= low) & (places <= high)
+    marks, places = marks[shown], places[shown]
     if not shown.any():
         return
-    step = max(1, int(np.ceil(shown.sum() / 7)))
+    step = next(s for s in (1, 2, 5, 10) if len(marks) / s <= 8)
+    round_ones = marks % step == 0
     twin = axes.twinx()
     twin.set_ylim(low, high)
-    twin.set_yticks(places[shown][::step], [f"{m:.0f}" for m in marks[shown][::step]])
+    twin.set_yticks(places[round_ones], [f"{m:.0f}" for m in marks[round_ones]])
     twin.tick_params(labelsize=SMALL)
     twin.set_ylabel("hardness [HRC], by conversion", fontsize=SIZE)
 

@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from rich.text import Text
 
 SCHEMA_VERSION = 1
+_LAST_BIT = 1e-14
 
 _ALWAYS = (
     "Cracking, distortion and residual stress are not computed: a hard quench can crack a part"
@@ -175,13 +176,13 @@ def _properties(result: Result) -> "Table":
             _number(p.hardness_hrc, 1),
             _number(p.hardness_hb, 0),
             _number(p.tensile_mpa, 0),
-            _number(p.time_800_500_s, 1),
-            _number(p.rate_700_K_per_s, 2),
+            _significant(p.time_800_500_s),
+            _significant(p.rate_700_K_per_s),
         ]
         for p in result.positions
     ]
     heads = ["position", "depth\nmm", "\nHV", "\nHRC", "\nHB", "tensile\nMPa"]
-    return _table([*heads, "800-500\ns", "at 700\nK/s"], rows, left={0})
+    return _table([*heads, "800-500\ndegC, s", "at 700\ndegC, K/s"], rows, left={0})
 
 
 def _phases(result: Result) -> "Table":
@@ -193,7 +194,7 @@ def _phases(result: Result) -> "Table":
     above = "\n" if "austenite" in shown else ""
     heads = ["retained\naustenite" if name == "austenite" else above + name for name in shown]
     rows = [
-        [p.name, *(f"{100.0 * p.phases.get(name, 0.0):.1f}" for name in shown)]
+        [p.name, *(_number(100.0 * abs(p.phases.get(name, 0.0)), 1) for name in shown)]
         for p in result.positions
     ]
     return _table(["position", *heads], rows, left={0})
@@ -203,7 +204,7 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
     remembered = sum(source.status == "remembered" for source in result.sources)
     estimated = sum(source.status == "estimate" for source in result.sources)
     rows = [
-        ("heat balance closes to", f"{result.heat_balance_relative:.1e} of the heat given"),
+        ("heat balance closes to", f"{_closure(result)} of the heat given"),
         ("temperature, time steps", _error(result.time_error_K, "K")),
         ("temperature, grid", _error(result.grid_error_K, "K")),
     ]
@@ -218,10 +219,18 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
         rows.append((label, _error(worst[0], "HV") + place))
     count = len(result.sources)
     if count:
-        rows.append(("sources", f"{count} models; {remembered} from memory, {estimated} estimates"))
+        estimates = f"{estimated} estimate{'s' * (estimated != 1)}"
+        rows.append(("sources", f"{count} models; {remembered} from memory, {estimates}"))
     if not result.notes:
         rows.append(("ranges", "every model was used inside the range of its source"))
     return rows
+
+
+def _closure(result: Result) -> str:
+    # Below it the digits are those of the last bit, not of the solver.
+    if result.heat_balance_relative < _LAST_BIT:
+        return f"better than {_LAST_BIT:.0e}"
+    return f"{result.heat_balance_relative:.1e}"
 
 
 def _error(value: float, unit: str) -> str:
@@ -241,6 +250,14 @@ def duration(seconds: float) -> str:
 
 def _number(value: float | None, digits: int) -> str:
     return "-" if value is None or not math.isfinite(value) else f"{value:.{digits}f}"
+
+
+def _significant(value: float | None) -> str:
+    """Three digits, and all of those before the point."""
+    if value is None or not math.isfinite(value):
+        return "-"
+    digits = 2 - math.floor(math.log10(abs(value))) if value else 0
+    return f"{value:.{min(max(digits, 0), 6)}f}"
 
 
 def _text(string: str, style: str = "") -> "Text":

@@ -119,6 +119,40 @@ def test_profile_has_hardness_above_and_all_phases_below(result: Result) -> None
     assert_allclose(upper.lines[0].get_ydata(), result.hardness_hv[::-1], rtol=0, atol=0)
 
 
+def test_profile_marks_only_places_on_its_line_each_at_its_depth_along_it(result: Result) -> None:
+    upper = profile(result).axes[0]
+    marks = {line.get_label(): line.get_xdata()[0] for line in upper.lines[1:]}
+    for p in result.positions:
+        assert_allclose(marks.pop(p.name), p.depth_mm, rtol=0, atol=1e-9)
+    # a disc: 30 mm from its face but 150 mm from the rim, and a place beside the line
+    half = np.column_stack([result.points_mm[:, 0], np.full(result.n_node, 30.0)])
+    core = replace(result.positions[3], depth_mm=30.0, coordinates_mm=(0.0, 30.0))
+    face = replace(result.positions[0], name="face", coordinates_mm=(0.0, 0.0))
+    disc = replace(result, points_mm=half, sense="axisymmetric", positions=(core, face))
+    upper = profile(disc).axes[0]
+    marks = {line.get_label(): line.get_xdata()[0] for line in upper.lines[1:]}
+    assert marks.keys() >= {"core"} and "face" not in marks
+    assert_allclose(marks["core"], 150.0, rtol=0, atol=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("sense", "names"),
+    [
+        ("cylinder", ("x [mm]", "y [mm]")),
+        ("plane", ("x [mm]", "y [mm]")),
+        ("slab", ("x [mm]", "")),
+        ("axisymmetric", ("radius [mm]", "z [mm]")),
+    ],
+)
+def test_section_names_its_axes_as_the_part_has_them(
+    result: Result, sense: str, names: tuple[str, str]
+) -> None:
+    axes = section(replace(result, sense=sense)).axes[0]
+    assert (axes.get_xlabel(), axes.get_ylabel()) == names
+    (left,) = axes.xaxis.get_major_formatter().format_ticks([-50.0])
+    assert left == ("50" if sense == "axisymmetric" else "\N{MINUS SIGN}50")
+
+
 def test_section_marks_each_position_where_its_depth_says(result: Result) -> None:
     axes = section(result).axes[0]
     marks = {line.get_label().split(":")[0]: line.get_xydata()[0] for line in axes.lines}
