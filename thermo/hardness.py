@@ -6,10 +6,10 @@ Mean by fraction. Martensite, bainite and ferrite-pearlite by Maynier from
 composition and the logarithm of the cooling rate at 700 degC in degC per hour.
 Martensite above 0.45 % C is held under ``150 + 1667 C - 926 C^2`` (C to 0.9),
 the bound coming in between 0.45 and 0.50 % so that hardness has no step.
-Ferrite-pearlite is the harder of Maynier and Gladman's tensile strength / 3.2,
-since Maynier alone is too soft for fine pearlite. Bainite is never softer than
-Maynier's ferrite-pearlite (closure: its equation turns negative in plain carbon
-steel cooled slowly). Retained austenite 250 HV, cementite 850 HV.
+Ferrite-pearlite is the harder of Maynier and the tensile strength of
+`thermo.strength` / 3.2, since Maynier alone is too soft for fine pearlite. Bainite
+is never softer than Maynier's ferrite-pearlite (closure: its equation turns negative
+in plain carbon steel cooled slowly). Retained austenite 250 HV, cementite 850 HV.
 
 A mean by fraction is too hard for martensite with bainite: measured structures of
 50, 90 and 99.9 % martensite have the hardness of Hodge & Orehoski, which depends on
@@ -62,12 +62,11 @@ SOURCES = (
         "via ASTM A255",
         "remembered",
     ),
-    *strength.SOURCES[:2],
+    *strength.SOURCES[:3],
 )
 
 RETAINED_AUSTENITE_HV = 250.0
 CEMENTITE_HV = 850.0
-TENSILE_PER_HV = 3.2  # MPa per HV of ferrite-pearlite
 BOUND_FROM_PCT, BOUND_WHOLE_PCT, BOUND_CARBON_PCT = 0.45, 0.50, 0.9
 CARBON_OF_PRODUCTS_PCT = 0.8  # most carbon that bainite and ferrite-pearlite are given
 HALF_MARTENSITE = 0.5
@@ -134,10 +133,10 @@ def vickers(
     ferrite_share, scales = _ferrite_pearlite(
         fractions, composition, rate, pearlite_temp, ae1, grain_intercept
     )
-    tensile = strength.gladman_tensile(
+    tensile = strength.ferrite_pearlite_tensile(
         ferrite_share, grain=scales[0], spacing=scales[1], composition=composition
     )
-    mixture = np.maximum(slow, tensile / TENSILE_PER_HV)
+    mixture = np.maximum(slow, tensile / strength.TENSILE_PER_HV)
     by_phase[FERRITE] = by_phase[PEARLITE] = mixture
     weighted = np.where(fractions > PRESENT, fractions * by_phase, 0.0)
     held = np.where(fractions > PRESENT, fractions, 0.0)

@@ -105,6 +105,20 @@ def test_pearlite_alone_has_the_tabulated_hardness(spacing_um: float, hv: float)
     assert_allclose(tensile / 3.2, hv, rtol=0.0, atol=0.6)
 
 
+@pytest.mark.parametrize(("at_degC", "hrc"), [(650.0, 32.0), (600.0, 38.0), (550.0, 40.0)])
+def test_pearlite_of_eutectoid_steel_is_as_hard_as_the_atlas_says(
+    at_degC: float, hrc: float
+) -> None:
+    # 1080 in the I-T diagrams of U.S. Steel, hardness at the edge (from memory)
+    tensile = strength.ferrite_pearlite_tensile(
+        np.array(0.0),
+        grain=np.array(np.nan),
+        spacing=strength.interlamellar_spacing(at_degC + ZERO, 727.0 + ZERO),
+        composition=Composition(C=0.79, Mn=0.76, Si=0.20),
+    )
+    assert_allclose(hv_to_hrc(tensile / 3.2), hrc, rtol=0.0, atol=0.5)
+
+
 def test_pearlite_formed_at_600_degrees_is_spaced_as_observed() -> None:
     # 0.14 um at 600 degC (from memory)
     spacing = strength.interlamellar_spacing(600.0 + ZERO, 726.5 + ZERO)
