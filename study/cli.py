@@ -32,7 +32,7 @@ Examples:
 
 \b
 The folder holds:
-  fields.pvd, fields_*.vtu  temperatures over time, for any VTK viewer
+  fields.pvd, fields/*.vtu  temperatures over time, for any VTK viewer
   final.vtu                 phases, hardness and cooling times at the end
   histories.csv             temperature over time at the named positions
   profile.csv               everything from surface to core

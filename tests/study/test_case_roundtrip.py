@@ -31,6 +31,8 @@ from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import all_grades
 from midradius.thermo.steel import Composition, Steel
 
+MESHES = Path(__file__).resolve().parents[2] / "meshes"
+SHIPPED = sorted(path for path in MESHES.glob("*.toml") if "[section]" in path.read_text("utf-8"))
 FOLDER = Path(__file__).parent / "bad"
 FILM = Path("film_good.csv")  # beside the case
 SOAK_COLDEST = 1200.0  # K, above the Ae1 of every steel here
@@ -154,6 +156,16 @@ def test_a_case_written_and_read_is_the_same_case_to_the_last_digit(case: Case) 
 @given(cases())
 def test_every_case_that_the_reader_takes_fits_the_schema(case: Case) -> None:
     assert fits(tomllib.loads(casefile.dumps(case)), schema.document())
+
+
+@pytest.mark.parametrize("path", SHIPPED, ids=lambda path: path.stem)
+def test_every_shipped_case_fits_the_schema_and_survives_the_way_there_and_back(
+    path: Path,
+) -> None:
+    text = path.read_text(encoding="utf-8")
+    assert fits(tomllib.loads(text), schema.document())
+    case = casefile.read(path)
+    assert casefile.loads(casefile.dumps(case), path) == case
 
 
 @pytest.mark.parametrize("form", list(casekeys.DIMENSIONS))
