@@ -224,13 +224,12 @@ def dividing_factor(diameter: float, distance: Array) -> Array:
     position = np.round(np.asarray(distance, dtype=np.float64) / SIXTEENTH, 9)
     inches = diameter / INCH
     positions, coefficients, largest = _rows()
-    factors = np.polynomial.polynomial.polyval(inches, coefficients.T)
+    factors: Array = np.asarray(np.polynomial.polynomial.polyval(inches, coefficients.T))
     factors = np.where(inches > largest, 1.0, factors)
     if inches < CONTINUED_TO_IN:
         factors = np.full(factors.shape, np.nan)
     known, values = np.append(1.0, positions), np.append(1.0, factors)
-    between = np.interp(position, known, values, left=np.nan, right=np.nan)
-    return np.where(position == 1.0, 1.0, between)
+    return np.asarray(np.interp(position, known, values, left=np.nan, right=np.nan))
 
 
 @cache
@@ -248,7 +247,7 @@ def distance_notes(model: str, distance: Array, near: float, far: float) -> list
     least, most = float(np.min(distance)), float(np.max(distance))
     if near * (1.0 - 1e-9) <= least and most <= far * (1.0 + 1e-9):
         return []
-    value, allowed = (f"{1e3 * a:.1f} to {1e3 * b:.1f} mm" for a, b in ((least, most), (near, far)))
+    value, allowed = (f"{1e3 * a:.2f} to {1e3 * b:.2f} mm" for a, b in ((least, most), (near, far)))
     return [RangeNote(model, "distance from the quenched end", value, allowed)]
 
 
@@ -256,6 +255,6 @@ def curve(model: str, distance: Array, hardness_hrc: Array, notes: list[RangeNot
     """The curve with nan, and a note, in place of what lies below the scale."""
     soft = hardness_hrc < SOFTEST_HRC
     if np.any(soft):
-        value = f"below 20 HRC from {1e3 * float(distance[soft].min()):.1f} mm on"
+        value = f"below 20 HRC from {1e3 * float(distance[soft].min()):.2f} mm on"
         notes = [*notes, RangeNote(model, "hardness", value, "20 HRC and more")]
     return Curve(distance, np.where(soft, np.nan, hardness_hrc), tuple(notes))
