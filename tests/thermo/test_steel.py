@@ -15,7 +15,8 @@ def test_every_shipped_grade_can_be_computed() -> None:
     assert len(all_grades()) >= 24
     for steel in all_grades():
         assert check(steel.composition) == []
-        assert range_notes(steel.composition) == ()
+        seen = [note for note in range_notes(steel.composition) if note.quantity not in ("B", "S")]
+        assert seen == []  # boron and resulphurised grades carry their note
         assert steel.composition.Si > 0.0
 
 
@@ -40,9 +41,9 @@ def test_an_unknown_grade_names_its_neighbours() -> None:
         grade("42CrMo5")
     assert str(caught.value) == (
         'grade = "42CrMo5", but must be a grade of the shipped table. '
-        "Nearest: 42CrMo4, 34CrMo4, 25CrMo4. Or give a composition in mass percent."
+        "Nearest: 42CrMo4, G42CrMo4, 42CrMoS4. Or give a composition in mass percent."
     )
-    with pytest.raises(InputFault, match="Known grades: 1020"):
+    with pytest.raises(InputFault, match="grades is near. Families: carbon, Mn"):
         grade("xyzzy")
 
 
