@@ -12,6 +12,7 @@ from midradius.thermo import diffusional, equilibrium, martensite, properties
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
+from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.kinetics import Tables
 from midradius.thermo.steel import Steel
 
@@ -35,7 +36,7 @@ def _clock_tables() -> tuple[Array, Array, float]:
     return fraction, back, whole
 
 
-def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
+def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> Tables:
     """Tables of one heat of steel after its soak.
 
     Parameters
@@ -44,6 +45,8 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
         Name and composition [mass %].
     austenite
         What the soak left: carbon in solution and grain.
+    shifts
+        What distinguishes this heat from its grade.
     """
     composition = steel.composition
     temp = np.arange(COLDEST_K, HOTTEST_K + 0.5 * GRID_K, GRID_K)
@@ -73,9 +76,9 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
         ae3=soaked.ae3,
         ae1=soaked.ae1,
     )
-    value[:, kin.RATE_FERRITE] = rates.ferrite
-    value[:, kin.RATE_PEARLITE] = rates.pearlite
-    value[:, kin.RATE_BAINITE] = rates.bainite
+    value[:, kin.RATE_FERRITE] = rates.ferrite / shifts.diffusional_time
+    value[:, kin.RATE_PEARLITE] = rates.pearlite / shifts.diffusional_time
+    value[:, kin.RATE_BAINITE] = rates.bainite / shifts.bainite_time
     value[:, kin.RATE_CEMENTITE] = diffusional.cementite_rate(
         temp, carbon_pct=carbon, grain_intercept=austenite.grain_mean_intercept
     )
@@ -95,7 +98,8 @@ def steel_tables(steel: Steel, austenite: Austenite) -> Tables:
         clock=fraction,
         back=back,
         whole=whole,
-        start=np.array(martensite.start_coefficients(austenite.composition)),
+        start=np.array(martensite.start_coefficients(austenite.composition))
+        + np.array([shifts.martensite_start, 0.0, 0.0]),
         rate=np.array(martensite.rate_coefficients(austenite.composition)),
         top=float(temp[active].max() + GRID_K),
         transforms=True,
