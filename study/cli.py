@@ -12,8 +12,9 @@ from typing import Any
 
 import click
 
-DONE, NOT_MET, BAD_INPUT, GAVE_UP = 0, 1, 2, 3
-INTERRUPTED = 130
+from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED
+from midradius.study.cli_answer import answered as _answered
+from midradius.study.cli_answer import printable as _printable
 
 _EPILOG = """\b
 Exit codes:
@@ -210,28 +211,6 @@ def schema() -> None:
 def _folder_of(case: Path) -> Path:
     """Where the result of a case goes unless it is said: here, under the case's name."""
     return Path(case.stem if case.suffix else f"{case.name}-result")
-
-
-def _printable(path: Path | str) -> str:
-    return "".join(c if c.isprintable() else "?" for c in str(path))
-
-
-@contextmanager
-def _answered() -> Iterator[None]:
-    """Turn what can go wrong into one message and the documented exit code."""
-    from midradius.thermo.errors import MidradiusError, SolverFault
-
-    try:
-        yield
-    except SolverFault as fault:
-        click.echo(f"{fault}", err=True)
-        sys.exit(GAVE_UP)
-    except MidradiusError as fault:
-        click.echo(f"{fault}", err=True)
-        sys.exit(BAD_INPUT)
-    except KeyboardInterrupt:
-        click.echo("Interrupted; nothing was written.", err=True)
-        sys.exit(INTERRUPTED)
 
 
 @contextmanager
