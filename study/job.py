@@ -1,6 +1,7 @@
 """The one job: a case in, a result folder out. Everything that starts a run calls it."""
 
 import contextlib
+import re
 from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
 from importlib import import_module
@@ -8,7 +9,8 @@ from pathlib import Path
 from threading import Thread
 from typing import TYPE_CHECKING
 
-from midradius.study.casefile import read
+from midradius.study.casefile import CaseFaults, Fault, read
+from midradius.study.caselines import locate
 from midradius.study.folder import ResultFolder, shown
 from midradius.thermo.errors import InputFault
 
@@ -33,15 +35,30 @@ def solve(case: "Case | Path | str", *, tell: Tell | None = None) -> "Result":
     Raises
     ------
     CaseFaults
-        The file cannot be read or is not a sound case.
+        The file cannot be read or is not a sound case, or it asks for something that
+        turns out only on the way not to be computable.
     InputFault
-        The case asks for something that cannot be computed.
+        The same, of a case that was made in Python.
     SolverFault
         The solver gave up.
     """
     from midradius.study import runner
 
-    return runner.run(read(case) if isinstance(case, Path | str) else case, tell=tell)
+    asked = read(case) if isinstance(case, Path | str) else case
+    try:
+        return runner.run(asked, tell=tell)
+    except InputFault as fault:
+        if not asked.path:
+            raise
+        raise CaseFaults((_placed(fault, asked.text, asked.path),)) from fault
+
+
+def _placed(fault: InputFault, text: str, path: Path) -> Fault:
+    """A fault of the solver, which knows no file, with the line of the case that it means."""
+    parts = re.findall(r"[^.\[\]]+", fault.quantity)
+    key = tuple(int(part) if part.isdecimal() else part for part in parts)
+    line = locate(text).get(key)
+    return Fault(line, fault.quantity, fault.value, fault.allowed, fault.remedy, str(path))
 
 
 def write(result: "Result", folder: Path | str) -> Path:
