@@ -23,7 +23,7 @@ from midradius.fem.volumes import ControlVolumes
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.compiled import kernel
 
-COARSEST = 24  # nodes below which sweeps alone solve the system
+COARSEST = 24  # nodes below which a level is eliminated
 
 
 class Line(NamedTuple):
@@ -38,7 +38,8 @@ class Aggregates(NamedTuple):
     ``node_start`` and ``edge_start`` (n_level + 1,) say where a level lies;
     ``tail``, ``head`` are node numbers within the level; ``parent`` gives each
     node's aggregate, ``edge_parent`` each edge's coarse edge or -1 inside one;
-    ``row``, ``neighbour``, ``through`` list each node's neighbours and edges.
+    ``row``, ``neighbour``, ``through`` list each node's neighbours and edges;
+    ``coarsest`` holds the triangular factor of the last level.
     """
 
     node_start: IntArray
@@ -56,6 +57,7 @@ class Aggregates(NamedTuple):
     guess: Array
     load: Array
     work: Array
+    coarsest: Array
 
 
 Scheme = Line | Aggregates
@@ -160,6 +162,7 @@ def _aggregates(body: ControlVolumes) -> Aggregates:
         guess=np.zeros(n_all),
         load=np.zeros(n_all),
         work=np.zeros((4, n_node)),
+        coarsest=np.zeros((sizes[-1], sizes[-1])),
     )
 
 
@@ -206,6 +209,50 @@ def _sum_up(grid: Aggregates, excess: Array, weight: Array) -> None:
             for e in range(e0, e1):
                 if grid.edge_parent[e] >= 0:
                     grid.weight[e1 + grid.edge_parent[e]] += grid.weight[e]
+    _factor(grid)
+
+
+@kernel
+def _factor(grid: Aggregates) -> None:
+    """Cholesky's factor of the last level, whose matrix is small and full."""
+    last = len(grid.node_start) - 2
+    n0, e0 = grid.node_start[last], grid.edge_start[last]
+    n = grid.node_start[last + 1] - n0
+    a = grid.coarsest
+    for i in range(n):
+        for j in range(n):
+            a[i, j] = 0.0
+        a[i, i] = grid.diagonal[n0 + i]
+    for e in range(e0, grid.edge_start[last + 1]):
+        i, j = grid.tail[e], grid.head[e]
+        a[i, j] -= grid.weight[e]
+        a[j, i] -= grid.weight[e]
+    for j in range(n):
+        for k in range(j):
+            a[j, j] -= a[j, k] * a[j, k]
+        a[j, j] = np.sqrt(a[j, j])
+        for i in range(j + 1, n):
+            for k in range(j):
+                a[i, j] -= a[i, k] * a[j, k]
+            a[i, j] /= a[j, j]
+
+
+@kernel
+def _eliminate(grid: Aggregates) -> None:
+    """Solve the last level exactly: without it a smooth error hardly moves."""
+    n0 = grid.node_start[len(grid.node_start) - 2]
+    n = len(grid.coarsest)
+    a, x = grid.coarsest, grid.guess
+    for i in range(n):
+        total = grid.load[n0 + i]
+        for k in range(i):
+            total -= a[i, k] * x[n0 + k]
+        x[n0 + i] = total / a[i, i]
+    for i in range(n - 1, -1, -1):
+        total = x[n0 + i]
+        for k in range(i + 1, n):
+            total -= a[k, i] * x[n0 + k]
+        x[n0 + i] = total / a[i, i]
 
 
 @kernel
@@ -237,9 +284,7 @@ def _cycle(grid: Aggregates, load: Array, out: Array) -> None:
         e0 = grid.edge_start[level]
         grid.guess[n0:n1] = 0.0
         if level == n_level - 1:
-            for _ in range(8):
-                _smooth(grid, level, False)
-                _smooth(grid, level, True)
+            _eliminate(grid)
             break
         _smooth(grid, level, False)
         n2 = grid.node_start[level + 2]
@@ -280,6 +325,9 @@ def _gradients(
     gain = np.dot(rest, fixed)
     if gain <= 0.0:
         return 0
+    held = 0.0
+    for i in range(n):
+        held += excess[i]
     for iteration in range(200):
         for i in range(n):
             image[i] = excess[i] * step[i]
@@ -295,14 +343,13 @@ def _gradients(
             out[i] += move
             rest[i] -= length * image[i]
             most = max(most, abs(move))
-        if most < accuracy:
-            return iteration + 1
         _cycle(grid, rest, fixed)
         fresh = np.dot(rest, fixed)
+        # A smooth error moves little in one iteration; its energy shows it.
+        if fresh <= 0.0 or (most < accuracy and fresh < held * accuracy * accuracy):
+            return iteration + 1
         ratio = fresh / gain
         gain = fresh
-        if gain <= 0.0:
-            return iteration + 1
         for i in range(n):
             step[i] = fixed[i] + ratio * step[i]
     return -1
