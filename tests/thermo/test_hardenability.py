@@ -114,6 +114,21 @@ def test_a_larger_ideal_diameter_is_never_softer_and_a_farther_distance_never_ha
     assert np.all(np.diff(small) >= -1e-12)
 
 
+@pytest.mark.parametrize(
+    ("position", "largest_in"),
+    [(2, 2.1), (3, 3.1), (4, 4.1), (6, 5.0), (8, 5.6), (9, 5.8), (10, 6.1), (12, 6.6)],
+)
+def test_each_row_reaches_the_hardness_of_martensite_at_its_largest_diameter(
+    position: int, largest_in: float
+) -> None:
+    # the standard goes over to a factor of 1 there; its polynomials end at 1.00 to 1.06
+    # (from memory)
+    at = np.array([SIXTEENTH * position])
+    last = a255.dividing_factor(largest_in * INCH * (1.0 - 1e-9), at)
+    assert 1.0 <= last[0] < 1.06
+    assert a255.dividing_factor(largest_in * INCH * (1.0 + 1e-9), at) == 1.0
+
+
 def test_beyond_the_last_known_row_the_standard_gives_nothing_and_says_so() -> None:
     composition = grade("4140").composition
     at = SIXTEENTH * np.array([0.5, 1.0, 12.0, 12.1, 16.0])
