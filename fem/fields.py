@@ -39,6 +39,7 @@ UNIT_ENDINGS = (
     "_degC",
     "_fraction",
     "_HV",
+    "_MPa",
     "_mm",
     "_pct",
     "_s",

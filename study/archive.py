@@ -32,6 +32,8 @@ def write_fields(result: Result, folder: Path) -> Path:
     }
     at_end |= {
         "hardness_HV": result.hardness_hv[node],
+        "hardness_as_quenched_HV": result.hardness_as_quenched_hv[node],
+        "yield_strength_MPa": result.yield_mpa[node],
         "time_800_500_s": result.time_800_500_s[node],
         "cooling_rate_700degC_K_per_s": result.rate_700_K_per_s[node],
         "austenite_carbon_pct": result.austenite_carbon_pct[node],
@@ -78,6 +80,10 @@ def _numbers(result: Result) -> dict[str, Quantity]:
             r.phases, "1", f"phase fractions at the end (phase, node): {', '.join(PHASE_NAMES)}"
         ),
         "fields/hardness": many(r.hardness_hv, "HV", "Vickers hardness at the end"),
+        "fields/hardness_as_quenched": many(
+            r.hardness_as_quenched_hv, "HV", "Vickers hardness before the tempers"
+        ),
+        "fields/yield_strength": many(r.yield_mpa, "MPa", "yield strength, nan outside"),
         "fields/time_800_500": many(r.time_800_500_s, "s", "time from 800 to 500 degC"),
         "fields/rate_700": many(r.rate_700_K_per_s, "K/s", "cooling rate at 700 degC"),
         "fields/austenite_carbon": many(
@@ -111,7 +117,9 @@ _POSITION_COLUMNS = (
     ("hardness_hv", "HV", "Vickers hardness"),
     ("hardness_hrc", "HRC", "Rockwell C hardness by conversion, nan outside"),
     ("hardness_hb", "HB", "Brinell hardness by conversion, nan outside"),
+    ("hardness_as_quenched_hv", "HV", "Vickers hardness before the tempers"),
     ("tensile_mpa", "MPa", "tensile strength by conversion, nan outside"),
+    ("yield_mpa", "MPa", "yield strength by microstructure, nan outside"),
     ("time_800_500_s", "s", "time from 800 to 500 degC"),
     ("rate_700_K_per_s", "K/s", "cooling rate at 700 degC"),
     ("austenite_carbon_pct", "mass percent", "carbon in the austenite left"),
@@ -136,6 +144,7 @@ def _texts(result: Result) -> dict[str, str]:
         ),
         "position_phases_json": _json([dict(p.phases) for p in result.positions]),
         "stages_json": _json([asdict(stage) for stage in result.stages]),
+        "tempers_json": _json([asdict(temper) for temper in result.tempers]),
         "notes_json": _json([asdict(note) for note in result.notes]),
         "sources_json": _json([asdict(source) for source in result.sources]),
         "assumptions_json": _json(result.assumptions),

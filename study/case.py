@@ -46,7 +46,8 @@ class Until:
 class Stage:
     """One stage of the route.
 
-    ``at`` [K] belongs to the soak, ``time`` [s] to any stage. A stage with both
+    ``at`` [K] belongs to the soak and to tempers, ``time`` [s] to any stage; that of a
+    temper counts from when the part is hot throughout. A stage with both
     ``time`` and ``until`` ends at whichever comes first. ``faces`` names the
     zones that see something else than ``medium``; it wins over the bore medium
     of the section.
@@ -147,6 +148,16 @@ class Case:
     grid: Grid = Grid()
     text: str = field(default="", compare=False, repr=False)
     path: Path | None = field(default=None, compare=False)
+
+    @property
+    def cooling(self) -> tuple[Stage, ...]:
+        """The stages between the soak and the tempers."""
+        return tuple(stage for stage in self.route if stage.kind not in ("soak", "temper"))
+
+    @property
+    def tempers(self) -> tuple[Stage, ...]:
+        """The stages that temper the cooled part, the last of the route."""
+        return tuple(stage for stage in self.route if stage.kind == "temper")
 
     def position(self, name: str) -> PositionInput:
         """The place that ``name`` means: an output position, else a trade term or a depth.

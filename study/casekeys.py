@@ -36,8 +36,10 @@ OPTIONAL: Mapping[Form, tuple[str, ...]] = {
 }
 EMISSIVITY_RANGE = (0.05, 1.0)
 ALL_DIMENSIONS = ("thickness", "diameter", "length", "outside", "bore", "width", "height")
-STAGES: tuple[StageKind, ...] = ("soak", "transfer", "quench", "hold")
+STAGES: tuple[StageKind, ...] = ("soak", "transfer", "quench", "hold", "temper")
+COOLS: tuple[StageKind, ...] = ("transfer", "quench", "hold")
 SOAK = ("stage", "at", "time")
+TEMPER = ("stage", "at", "time")
 COOLING = ("stage", "medium", "bath", "film", "time", "until", "faces")
 MEDIUM = ("medium", "bath", "film")
 OUTPUT = ("positions", "fields", "times")
@@ -52,6 +54,7 @@ FIELD_TIME_RANGE = (0.0, 30.0 * 86_400.0)
 # The thermal properties hold from 250 to 1500 K; a whole number of degC inside.
 TEMP_RANGE = (253.15, 1493.15)
 SOAK_RANGE = (600.0 + ZERO_DEGC, TEMP_RANGE[1])
+TEMPER_COLDEST, TEMPER_HOTTEST = 50.0 + ZERO_DEGC, 727.0 + ZERO_DEGC  # or Ae1 of the steel
 GRAIN_RANGE = (-1.0, 14.0)
 FIELDS_RANGE = (2, 1000)
 CELLS_RANGE = (4, 5000)

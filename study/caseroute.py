@@ -6,6 +6,7 @@ from typing import cast
 
 from midradius.thermo.equilibrium import equilibrium
 from midradius.thermo.errors import InputFault
+from midradius.thermo.tempering import refuse_secondary_hardening
 from midradius.thermo.units import parse, show
 
 from . import casekeys as keys
@@ -18,7 +19,6 @@ from .casetable import Table, nearest, one_of
 _SOAK = 'stage = "soak", at = "860 degC", time = "2 h"'
 _UNTIL = 'such as "core below 150 degC"'
 _COOL = "Heat flows to what the stage names: medium, or film with bath."
-_TEMPER = "This version does not compute tempering: take the stage out, the result is as cooled."
 
 
 def route(
@@ -33,6 +33,7 @@ def route(
         return ()
     stages: list[Stage] = []
     soak: float | None = None
+    seen: set[StageKind] = set()
     items = top.items("route", "[[route]] before each stage")
     if len(items) > keys.STAGES_MOST:
         top.refuse("route", f"route has {len(items)} stages, at most {keys.STAGES_MOST} are read")
@@ -42,8 +43,12 @@ def route(
             top.notes.add(key, value, "a table, written as [[route]]")
             continue
         table = Table(value, key, top.notes)
-        kind = _kind(table, place)
-        if kind == "soak":
+        kind = _kind(table, place, seen)
+        if kind:
+            seen.add(kind)
+        if kind == "temper":
+            stage = _temper(table, steel)
+        elif kind == "soak":
             stage = _soak(table, steel)
             soak = stage.at if stage else None
         elif kind:
@@ -65,10 +70,7 @@ def route(
 _SOAK_HINT = f"Write [[route]] and below it {_SOAK.replace(', ', '; ')}."
 
 
-def _kind(table: Table, place: int) -> StageKind | None:
-    if table.raw("stage") == "temper":
-        table.fault("stage", one_of(keys.STAGES), _TEMPER)
-        return None
+def _kind(table: Table, place: int, seen: set[StageKind]) -> StageKind | None:
     if not table.has("stage"):
         table.missing("stage", one_of(keys.STAGES))
         table.only(tuple(dict.fromkeys(keys.SOAK + keys.COOLING)))
@@ -79,6 +81,12 @@ def _kind(table: Table, place: int) -> StageKind | None:
     if kind == "soak" and place > 0:
         remedy = "Heating up again between stages is not computed; describe the last soak only."
         table.fault("stage", '"transfer", "quench" or "hold" after the first stage', remedy)
+    if kind == "temper" and place > 0 and seen.isdisjoint(keys.COOLS):
+        remedy = "A temper softens what a quench has hardened: put it last."
+        table.fault("stage", f"{one_of(keys.COOLS)} before the first temper", remedy)
+    if kind in keys.COOLS and "temper" in seen:
+        remedy = "Tempers come last: what cools the part after them changes nothing here."
+        table.fault("stage", 'only "temper" after a temper', remedy)
     return kind
 
 
@@ -104,6 +112,35 @@ def _soak(table: Table, steel: SteelInput | None) -> Stage | None:
     if at is None or time is None:
         return None
     return Stage(kind="soak", at=at, time=time)
+
+
+def _temper(table: Table, steel: SteelInput | None) -> Stage | None:
+    other = dict.fromkeys(keys.COOLING, "A temper has no medium: the part is hot throughout.")
+    table.only(keys.TEMPER, other)
+    at = table.quantity("at", "temperature", (0.0, float("inf")))
+    time = table.quantity("time", "duration", keys.STAGE_TIME_RANGE)
+    low, high, of_steel = keys.TEMPER_COLDEST, keys.TEMPER_HOTTEST, ""
+    if steel:
+        high = equilibrium(steel.steel.composition).ae1
+        of_steel = f", below the Ae1 of {steel.steel.name}"
+        try:
+            refuse_secondary_hardening(steel.steel.composition)
+        except InputFault as fault:
+            sentence = f"{fault.quantity} = {fault.value}, but must be {fault.allowed}"
+            table.refuse("stage", sentence, fault.remedy)
+    celsius = (math.ceil(low - keys.ZERO_DEGC), math.floor(high - keys.ZERO_DEGC))
+    allowed = f"{celsius[0]} to {celsius[1]} degC{of_steel}"
+    if not table.has("at"):
+        table.missing("at", allowed)
+    if not table.has("time"):
+        table.missing("time", "a duration", 'Write for example time = "4 h".')
+    if at is not None and not low <= at < high:
+        remedy = "From Ae1 on austenite forms again: that is a soak, not a temper."
+        table.fault("at", allowed, remedy if at >= high else "")
+        return None
+    if at is None or time is None:
+        return None
+    return Stage(kind="temper", at=at, time=time)
 
 
 def _cooling(

@@ -132,7 +132,12 @@ def profile(result: Result) -> "Figure":
     figure, (upper, lower) = sheets(result, height=7.2, rows=2)
     depth, node = result.profile.depth_mm, result.profile.node
     hardness = result.hardness_hv[node]
-    upper.plot(depth, hardness, color=BLACK, lw=1.8)
+    before = result.hardness_as_quenched_hv[node]
+    if result.tempers:
+        upper.plot(depth, before, color=BLACK, lw=0.8, label="as quenched")
+        upper.plot(depth, hardness, color=BLACK, lw=2.4, label="tempered")
+    else:
+        upper.plot(depth, hardness, color=BLACK, lw=1.8)
     on_line = [(k, p, _along(result, p.coordinates_mm)) for k, p in enumerate(result.positions)]
     for k, p, place in on_line:
         if place is None:
@@ -144,7 +149,8 @@ def profile(result: Result) -> "Figure":
             )
         mark(upper, k, place, p.hardness_hv, label(p.name))
     low, high = around(
-        [*hardness, *(p.hardness_hv for _, p, place in on_line if place is not None)], least=40.0
+        [*hardness, *before, *(p.hardness_hv for _, p, place in on_line if place is not None)],
+        least=40.0,
     )
     upper.set_ylim(low, high)
     upper.set_ylabel("hardness [HV]", fontsize=SIZE)

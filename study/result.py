@@ -31,7 +31,9 @@ class Position:
     """The answer at one named place of the drawing.
 
     ``hardness_hrc`` and ``hardness_hb`` are None where the conversion does not
-    hold; times and rates are None where the place never crossed the range.
+    hold; times and rates are None where the place never crossed the range. Without a
+    temper ``hardness_as_quenched_hv`` equals ``hardness_hv``; ``yield_mpa`` is None where
+    its hardened part is outside 147 to 656 HV.
     ``depth_mm`` counts from the nearest cooled surface.
     """
 
@@ -41,7 +43,9 @@ class Position:
     hardness_hv: float
     hardness_hrc: float | None
     hardness_hb: float | None
+    hardness_as_quenched_hv: float
     tensile_mpa: float | None
+    yield_mpa: float | None
     phases: Mapping[str, float]
     time_800_500_s: float | None
     rate_700_K_per_s: float | None
@@ -72,11 +76,19 @@ class StageRecord:
 
 
 @dataclass(frozen=True)
+class TemperRecord:
+    """One temper of the cooled part; the time counts from when it is hot throughout."""
+
+    at_degC: float
+    time_s: float
+
+
+@dataclass(frozen=True)
 class Result:
     """One run of the main job.
 
     Shapes: ``times_s`` (n_time,), ``temp_degC`` (n_time, n_node), ``phases``
-    (n_phase, n_node), other fields (n_node,), ``history_times_s`` (n_step,),
+    (n_phase, n_node) after all tempers, other fields (n_node,), ``history_times_s`` (n_step,),
     ``history_temp_degC`` (n_step, n_position).
     """
 
@@ -92,6 +104,8 @@ class Result:
     temp_degC: Array
     phases: Array
     hardness_hv: Array
+    hardness_as_quenched_hv: Array
+    yield_mpa: Array
     time_800_500_s: Array
     rate_700_K_per_s: Array
     austenite_carbon_pct: Array
@@ -101,6 +115,7 @@ class Result:
     positions: tuple[Position, ...]
     profile: Profile
     stages: tuple[StageRecord, ...]
+    tempers: tuple[TemperRecord, ...]
     critical_degC: Mapping[str, float]
     soak: str
     heat_given_J_per_kg: float

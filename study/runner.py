@@ -12,17 +12,28 @@ from midradius.fem.media import ZERO_DEGC
 from midradius.fem.route import CoolingStage, History, cool
 from midradius.fem.section import Cut, Place
 from midradius.study.case import Case
-from midradius.study.result import Position, Profile, Result, SectionView, StageRecord
+from midradius.study.result import (
+    Position,
+    Profile,
+    Result,
+    SectionView,
+    StageRecord,
+    TemperRecord,
+)
 from midradius.study.setup import Setup, coordinates_of, prepare
+from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
 from midradius.thermo import (
     conversion,
     diffusional,
+    embrittlement,
     equilibrium,
     hardness,
     martensite,
     properties,
     steel,
+    strength,
+    tempering,
 )
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import initial_state, steel_tables
@@ -51,11 +62,11 @@ Tell = Callable[[float, float], None]
 
 @dataclass(frozen=True)
 class _Attempt:
-    """One march with the hardness it gives."""
+    """One march and what its structure is worth."""
 
     cut: Cut
     history: History
-    hardness_hv: Array
+    worth: Worth
 
 
 @dataclass(frozen=True)
@@ -92,25 +103,7 @@ class _Material:
             tolerance=tolerance,
             tell=tell,
         )
-        return _Attempt(cut, history, self.hardness(history))
-
-    def hardness(self, history: History) -> Array:
-        composition = self.case.steel.steel.composition
-        total, _ = hardness.vickers(
-            history.phases,
-            composition,
-            carbon_austenite_pct=np.where(
-                np.isnan(history.carbon_martensite_pct),
-                self.austenite.carbon_pct,
-                history.carbon_martensite_pct,
-            ),
-            carbon_initial_pct=composition.C,
-            rate_700=history.rate_700,
-            pearlite_temp=history.pearlite_temp,
-            ae1=equilibrium.equilibrium(composition).ae1,
-            grain_intercept=self.austenite.grain_mean_intercept,
-        )
-        return total
+        return _Attempt(cut, history, worth(self.case, self.austenite, history))
 
 
 def run(case: Case, *, tell: Tell | None = None) -> Result:
@@ -198,7 +191,7 @@ def _watched(case: Case) -> tuple[str, ...]:
 
 def _places(case: Case, cut: Cut) -> dict[str, Place]:
     named = {place.name: place for place in case.outputs.positions}
-    for stage in case.route[1:]:
+    for stage in case.cooling:
         if stage.until and stage.until.position not in named:
             named[stage.until.position] = case.position(stage.until.position)
     return {
@@ -262,8 +255,10 @@ def _result(
         view=SectionView(view.points * 1e3, view.quads, view.triangles, view.node),
         times_s=history.times,
         temp_degC=history.field - ZERO_DEGC,
-        phases=history.phases,
-        hardness_hv=main.hardness_hv,
+        phases=main.worth.phases,
+        hardness_hv=main.worth.hardness_hv,
+        hardness_as_quenched_hv=main.worth.as_quenched_hv,
+        yield_mpa=main.worth.yield_mpa,
         time_800_500_s=history.time_800_500,
         rate_700_K_per_s=history.rate_700,
         austenite_carbon_pct=history.carbon_austenite_pct,
@@ -283,6 +278,7 @@ def _result(
             )
             for stage, went in zip(setup.stages, history.stages, strict=True)
         ),
+        tempers=tuple(TemperRecord(t.temp - ZERO_DEGC, t.time) for t in tempers_of(case)),
         critical_degC={
             ("Acm" if np.isfinite(eq.acm) and eq.acm > eq.ae1 else "Ae3"): (
                 eq.acm if np.isfinite(eq.acm) and eq.acm > eq.ae1 else eq.ae3
@@ -300,10 +296,10 @@ def _result(
         grid_error_K=grid_error,
         n_step=history.n_step,
         n_node=cut.body.n_node,
-        notes=_notes(case, setup, left, history),
-        sources=_sources(setup),
+        notes=_notes(case, setup, left, main),
+        sources=_sources(case, setup),
         assumptions=setup.assumptions,
-        cautions=setup.cautions,
+        cautions=setup.cautions + main.worth.cautions,
         inputs=_inputs(case),
         case_text=case.text,
     )
@@ -315,10 +311,11 @@ def _position(
     def here(values: Array, place: Place) -> float:
         return float((values[place.node] * place.share).sum())
 
-    hv = here(main.hardness_hv, at)
-    hv_rough, hv_sharp = here(rough.hardness_hv, at_coarse), here(sharp.hardness_hv, at_coarse)
+    hv = here(main.worth.hardness_hv, at)
+    hv_rough = here(rough.worth.hardness_hv, at_coarse)
+    hv_sharp = here(sharp.worth.hardness_hv, at_coarse)
     history = main.history
-    phases = {phase: here(history.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
+    phases = {phase: here(main.worth.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
     return Position(
         name=name,
         depth_mm=at.depth * 1e3,
@@ -326,7 +323,9 @@ def _position(
         hardness_hv=hv,
         hardness_hrc=_known(float(conversion.hv_to_hrc(np.array(hv)))),
         hardness_hb=_known(float(conversion.hv_to_hb(np.array(hv)))),
+        hardness_as_quenched_hv=here(main.worth.as_quenched_hv, at),
         tensile_mpa=_known(float(conversion.hv_to_uts(np.array(hv)))),
+        yield_mpa=_known(here(main.worth.yield_mpa, at)),
         phases=phases,
         time_800_500_s=_known(here(history.time_800_500, at)),
         rate_700_K_per_s=_known(here(history.rate_700, at)),
@@ -354,8 +353,8 @@ def _soak_text(case: Case, left: Austenite) -> str:
     return text
 
 
-def _notes(case: Case, setup: Setup, left: Austenite, history: History) -> tuple[RangeNote, ...]:
-    composition = case.steel.steel.composition
+def _notes(case: Case, setup: Setup, left: Austenite, main: _Attempt) -> tuple[RangeNote, ...]:
+    composition, history = case.steel.steel.composition, main.history
     found = [
         *steel.range_notes(composition),
         *equilibrium.range_notes(composition),
@@ -363,6 +362,7 @@ def _notes(case: Case, setup: Setup, left: Austenite, history: History) -> tuple
         *diffusional.range_notes(composition, left.carbon_pct, left.grain_astm),
         *martensite.range_notes(left.composition),
         *hardness.range_notes(composition, history.phases, history.rate_700),
+        *main.worth.notes,
         *properties.range_notes(history.field, composition.C),
         *setup.notes,
     ]
@@ -379,9 +379,11 @@ def _notes(case: Case, setup: Setup, left: Austenite, history: History) -> tuple
     return tuple(dict.fromkeys(found))
 
 
-def _sources(setup: Setup) -> tuple[Source, ...]:
+def _sources(case: Case, setup: Setup) -> tuple[Source, ...]:
     found: list[Source] = []
-    for module in (equilibrium, soaking, diffusional, martensite, properties, hardness, conversion):
+    used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
+    used += [strength, tempering, embrittlement] if case.tempers else [strength]
+    for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]
     return tuple(dict.fromkeys([*found, *setup.sources]))
 

@@ -119,14 +119,14 @@ def _route() -> Schema:
         },
         "faces": _table({zone: _to("medium_use") for zone in zones}, ()),
     }
-    stages = [
-        _table({"stage": {"const": kind}, **cooling}, ("stage",))
-        for kind in keys.STAGES
-        if kind != "soak"
-    ]
+    stages = [_table({"stage": {"const": kind}, **cooling}, ("stage",)) for kind in keys.COOLS]
+    tempering = _quantity("temperature", (keys.TEMPER_COLDEST, keys.TEMPER_HOTTEST), "Below Ae1.")
+    stages.append(
+        _table({"stage": {"const": "temper"}, "at": tempering, "time": time}, keys.TEMPER)
+    )
     return {
         "type": "array",
-        "description": "One soak, then the stages that cool, in their order.",
+        "description": "One soak, the stages that cool in their order, tempers last.",
         "minItems": 2,
         "maxItems": keys.STAGES_MOST,
         "items": {

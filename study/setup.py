@@ -68,7 +68,7 @@ def prepare(case: Case) -> Setup:
         zone that no medium was given for.
     """
     section = section_of(case.section)
-    uses = [_uses(section, case.section, stage) for stage in case.route[1:]]
+    uses = [_uses(section, case.section, stage) for stage in case.cooling]
     same = {
         pair: all(use[pair[0]] == use[pair[1]] for use in uses)
         for pair in combinations(section.zones, 2)
@@ -80,7 +80,7 @@ def prepare(case: Case) -> Setup:
     stages = []
     strongest: dict[str, float] = dict.fromkeys(section.zones, 0.0)
     soak = case.route[0].at or 0.0
-    for stage, use in zip(case.route[1:], uses, strict=True):
+    for stage, use in zip(case.cooling, uses, strict=True):
         surfaces = {}
         for zone, medium_use in use.items():
             surface, more, source, warned = _surface(medium_use, section, case.section.emissivity)
@@ -183,6 +183,12 @@ def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
         "Phases and hardness are those at 20 degC: austenite left at the end of the route follows"
         " the martensite curve; temperatures, times and heat end with the route.",
     ]
+    if case.tempers:
+        lines.append(
+            "Tempers act alike on the whole section, cooled to 20 degC before: their time counts"
+            " from when the part is hot throughout; heating up and cooling after them add nothing."
+            " Retained austenite that they decompose counts as bainite."
+        )
     if section.form in ("tube", "ring") and case.section.bore_medium is None:
         lines.append("The bore sees the same medium as the outside, as freely.")
     if section.form == "slab":

@@ -100,6 +100,7 @@ def document(result: Result) -> dict[str, Any]:
         "grid_error_K": result.grid_error_K,
         "positions": [_position(p) for p in result.positions],
         "stages": [asdict(stage) for stage in result.stages],
+        "tempers": [asdict(temper) for temper in result.tempers],
         "notes": [{**asdict(note), "text": str(note)} for note in result.notes],
         "assumptions": result.assumptions,
         "cautions": cautions(result),
@@ -131,7 +132,8 @@ def terminal(result: Result, console: "Console") -> None:
     console.print(_pairs(_head(result)))
     for heading, table in (
         ("Route", _route(result)),
-        ("Result", _properties(result)),
+        *([("As quenched", _as_quenched(result))] if result.tempers else []),
+        ("Result, tempered" if result.tempers else "Result", _properties(result)),
         ("Microstructure, % by mass", _phases(result)),
     ):
         console.print(Text(f"\n{heading}", "bold"))
@@ -164,10 +166,15 @@ def _route(result: Result) -> "Table":
         [s.kind, s.medium, duration(s.start_s), duration(s.end_s), s.ended_by]
         for s in result.stages
     ]
+    rows += [
+        ["temper", f"{t.at_degC:.0f} degC throughout", "-", duration(t.time_s), "time"]
+        for t in result.tempers
+    ]
     return _table(["stage", "medium", "from", "to", "ended by"], rows, left={0, 1, 4})
 
 
 def _properties(result: Result) -> "Table":
+    """The answer; with tempers, what belongs to the cooling has a table of its own."""
     rows = [
         [
             p.name,
@@ -176,13 +183,25 @@ def _properties(result: Result) -> "Table":
             _number(p.hardness_hrc, 1),
             _number(p.hardness_hb, 0),
             _number(p.tensile_mpa, 0),
-            _significant(p.time_800_500_s),
-            _significant(p.rate_700_K_per_s),
+            _number(p.yield_mpa, 0),
+            *([] if result.tempers else _cooling(p)),
         ]
         for p in result.positions
     ]
-    heads = ["position", "depth\nmm", "\nHV", "\nHRC", "\nHB", "tensile\nMPa"]
-    return _table([*heads, "800-500\ndegC, s", "at 700\ndegC, K/s"], rows, left={0})
+    heads = ["position", "depth\nmm", "\nHV", "\nHRC", "\nHB", "tensile\nMPa", "yield\nMPa"]
+    return _table(heads + ([] if result.tempers else _COOLING), rows, left={0})
+
+
+def _as_quenched(result: Result) -> "Table":
+    rows = [[p.name, f"{p.hardness_as_quenched_hv:.0f}", *_cooling(p)] for p in result.positions]
+    return _table(["position", "\nHV", *_COOLING], rows, left={0})
+
+
+_COOLING = ["800-500\ndegC, s", "at 700\ndegC, K/s"]
+
+
+def _cooling(p: Position) -> list[str]:
+    return [_significant(p.time_800_500_s), _significant(p.rate_700_K_per_s)]
 
 
 def _phases(result: Result) -> "Table":

@@ -19,6 +19,10 @@ HISTORIES = "histories.csv"
 PROFILE = "profile.csv"
 POSITIONS = "positions.csv"
 
+_HARDNESS = [
+    *("hardness_HV", "hardness_HRC", "hardness_HB"),
+    *("tensile_strength_MPa", "yield_strength_MPa", "hardness_as_quenched_HV"),
+]
 _AFTER_HARDNESS = ["time_800_500_s", "cooling_rate_700degC_K_per_s", "austenite_carbon_pct"]
 
 
@@ -47,6 +51,8 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         hv_to_hrc(hardness),
         hv_to_hb(hardness),
         hv_to_uts(hardness),
+        result.yield_mpa[node],
+        result.hardness_as_quenched_hv[node],
         result.time_800_500_s[node],
         result.rate_700_K_per_s[node],
         result.austenite_carbon_pct[node],
@@ -54,7 +60,7 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
     yield [
         "depth_mm",
         *(f"{name}_fraction" for name in PHASE_NAMES),
-        *("hardness_HV", "hardness_HRC", "hardness_HB", "tensile_strength_MPa"),
+        *_HARDNESS,
         *_AFTER_HARDNESS,
     ]
     for row in np.column_stack(columns):
@@ -64,7 +70,7 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
 def _positions(result: Result) -> Iterable[Sequence[object]]:
     yield [
         *("position", "depth_mm"),
-        *("hardness_HV", "hardness_HRC", "hardness_HB", "tensile_strength_MPa"),
+        *_HARDNESS,
         *(f"{name}_fraction" for name in PHASE_NAMES),
         *_AFTER_HARDNESS,
         *("hardness_time_error_HV", "hardness_grid_error_HV"),
@@ -72,7 +78,8 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
     for p in result.positions:
         yield [
             *(p.name, p.depth_mm),
-            *(p.hardness_hv, p.hardness_hrc, p.hardness_hb, p.tensile_mpa),
+            *(p.hardness_hv, p.hardness_hrc, p.hardness_hb),
+            *(p.tensile_mpa, p.yield_mpa, p.hardness_as_quenched_hv),
             *(p.phases.get(name, 0.0) for name in PHASE_NAMES),
             *(p.time_800_500_s, p.rate_700_K_per_s, p.austenite_carbon_pct),
             *(p.hardness_time_error_hv, p.hardness_grid_error_hv),

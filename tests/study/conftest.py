@@ -16,7 +16,14 @@ from typing import Any
 import numpy as np
 import pytest
 
-from midradius.study.result import Position, Profile, Result, SectionView, StageRecord
+from midradius.study.result import (
+    Position,
+    Profile,
+    Result,
+    SectionView,
+    StageRecord,
+    TemperRecord,
+)
 from midradius.thermo.phases import PHASE_NAMES
 from midradius.thermo.source import RangeNote, Source
 
@@ -83,7 +90,9 @@ def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
             hardness_hv=float(hardness[n]),
             hardness_hrc=None if hardness[n] < 238.0 else float(hardness[n] / 11.0),
             hardness_hb=float(hardness[n] * 0.95),
+            hardness_as_quenched_hv=float(hardness[n]),
             tensile_mpa=None if n == nodes[0] else float(hardness[n] * 3.2),
+            yield_mpa=None if n == nodes[0] else float(hardness[n] * 2.4),
             phases=dict(zip(PHASE_NAMES, map(float, phases[:, n]), strict=True)),
             time_800_500_s=None if np.isnan(cooling_time[n]) else float(cooling_time[n]),
             rate_700_K_per_s=None if np.isnan(rate[n]) else float(rate[n]),
@@ -107,6 +116,8 @@ def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
         temp_degC=temp(times, slow),
         phases=phases,
         hardness_hv=hardness,
+        hardness_as_quenched_hv=hardness,
+        yield_mpa=np.where(depth < 2.0, np.nan, hardness * 2.4),
         time_800_500_s=cooling_time,
         rate_700_K_per_s=rate,
         austenite_carbon_pct=np.full(n_node, 0.41),
@@ -121,6 +132,7 @@ def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
                 "quench", "mineral oil, agitated", 45.0, 9045.0, "core below 150 degC", 3.0e8
             ),
         ),
+        tempers=(),
         critical_degC={"Ae3": 762.0, "Ae1": 738.0, "Ms": 331.0, "Acm": float("nan")},
         soak="860 degC, 4 h: fully austenitic, ASTM 7",
         heat_given_J_per_kg=5.5e5,
@@ -151,6 +163,7 @@ def slow_cooled(result: Result) -> Result:
         result,
         phases=phases,
         hardness_hv=np.full(result.n_node, 205.0),
+        hardness_as_quenched_hv=np.full(result.n_node, 205.0),
         time_800_500_s=nothing,
         rate_700_K_per_s=nothing,
         pearlite_formed_at_degC=np.full(result.n_node, 690.0),
@@ -161,6 +174,17 @@ def slow_cooled(result: Result) -> Result:
 def result() -> Result:
     """An invented run of a round, quenched."""
     return invented_result()
+
+
+@pytest.fixture(scope="session")
+def tempered_result(result: Result) -> Result:
+    """The invented run of a round, its hardness four fifths after two tempers."""
+    return replace(
+        result,
+        hardness_hv=0.8 * result.hardness_hv,
+        positions=tuple(replace(p, hardness_hv=0.8 * p.hardness_hv) for p in result.positions),
+        tempers=(TemperRecord(600.0, 21_600.0), TemperRecord(580.0, 7_200.0)),
+    )
 
 
 @pytest.fixture(scope="session")

@@ -25,6 +25,8 @@ def test_the_last_file_of_the_series_carries_every_final_field(
         "position_mm",
         *(f"{name}_fraction" for name in PHASE_NAMES),
         "hardness_HV",
+        "hardness_as_quenched_HV",
+        "yield_strength_MPa",
         "time_800_500_s",
         "cooling_rate_700degC_K_per_s",
         "austenite_carbon_pct",
@@ -69,6 +71,8 @@ def test_the_record_holds_what_is_needed_to_redo_and_check_the_run(
         ("fields/temperature", result.temp_degC),
         ("fields/phases", result.phases),
         ("fields/hardness", result.hardness_hv),
+        ("fields/hardness_as_quenched", result.hardness_as_quenched_hv),
+        ("fields/yield_strength", result.yield_mpa),
         ("fields/rate_700", result.rate_700_K_per_s),
         ("histories/temperature", result.history_temp_degC),
         ("balance/closure", result.heat_balance_relative),
@@ -76,6 +80,20 @@ def test_the_record_holds_what_is_needed_to_redo_and_check_the_run(
         assert_allclose(record.data[name].values, expected, rtol=0, atol=0, equal_nan=True)
     assert record.data["grid/volume"].units == "m3 per radian and metre of length"
     assert np.isnan(record.data["positions/tensile_mpa"].values[0])
+
+
+def test_the_record_of_a_tempered_part_keeps_its_tempers_and_both_hardnesses(
+    tmp_path: Path, tempered_result: Result
+) -> None:
+    write_result_record(tempered_result, tmp_path)
+    record = read_record(tmp_path / "record.h5")
+    tempers = [{"at_degC": 600.0, "time_s": 21600.0}, {"at_degC": 580.0, "time_s": 7200.0}]
+    assert json.loads(record.text["tempers_json"]) == tempers
+    hardness = record.data["fields/hardness"].values
+    as_quenched = record.data["fields/hardness_as_quenched"].values
+    assert_allclose(hardness, 0.8 * as_quenched, rtol=1e-15, atol=0)
+    as_quenched = record.data["positions/hardness_as_quenched_hv"].values
+    assert_allclose(as_quenched[-1], tempered_result.hardness_hv[0] / 0.8, rtol=1e-15, atol=0)
 
 
 def test_the_same_result_gives_the_same_root_digest(tmp_path: Path, result: Result) -> None:

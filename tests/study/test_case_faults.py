@@ -4,6 +4,7 @@ Lines that begin with ``#>`` are the answer, word for word, but that ``FILE``
 stands for the path and ``<...>`` for what the steel model or ``tomllib`` says.
 """
 
+import math
 import re
 from pathlib import Path
 
@@ -103,13 +104,54 @@ def test_a_wall_is_at_least_half_a_millimetre_thick(bore: str, right: bool) -> N
         assert "section.bore" in faults_of(text)[0]
 
 
-def test_a_temper_stage_is_refused_because_tempering_is_not_computed() -> None:
-    text = GOOD + '[[route]]\nstage = "temper"\nat = "600 degC"\ntime = "6 h"\n'
-    assert faults_of(text) == [
-        'shaft.toml, line 17: route[2].stage = "temper", '
-        'but must be "soak", "transfer", "quench" or "hold".\n'
-        "  This version does not compute tempering: take the stage out, the result is as cooled."
+TEMPER = '[[route]]\nstage = "temper"\nat = "600 degC"\ntime = "6 h"\n'
+QUENCH = '[[route]]\nstage = "quench"\nmedium = "still air"\ntime = "1 h"\n'
+
+
+def test_tempers_follow_the_stages_that_cool() -> None:
+    case = casefile.loads(GOOD + TEMPER + TEMPER.replace("600", "580"))
+    assert [stage.kind for stage in case.cooling] == ["quench"]
+    assert [(stage.at, stage.time) for stage in case.tempers] == [
+        (873.15, 21_600.0),
+        (853.15, 21_600.0),
     ]
+
+
+def test_a_temper_before_any_quench_is_refused() -> None:
+    head, _, quench = GOOD.rpartition("[[route]]")
+    first, *_ = faults_of(head + TEMPER + "[[route]]" + quench)
+    assert first == (
+        'shaft.toml, line 12: route[1].stage = "temper", '
+        'but must be "transfer", "quench" or "hold" before the first temper.\n'
+        "  A temper softens what a quench has hardened: put it last."
+    )
+
+
+def test_a_stage_that_cools_after_a_temper_is_refused() -> None:
+    assert faults_of(GOOD + TEMPER + QUENCH) == [
+        'shaft.toml, line 21: route[3].stage = "quench", '
+        'but must be only "temper" after a temper.\n'
+        "  Tempers come last: what cools the part after them changes nothing here."
+    ]
+
+
+def test_a_temper_from_ae1_on_is_refused_and_just_below_it_taken() -> None:
+    ae1 = equilibrium(grade("42CrMo4").composition).ae1
+    (fault,) = faults_of(GOOD + TEMPER.replace("600 degC", f"{ae1!r} K"))
+    assert fault == (
+        f'shaft.toml, line 18: route[2].at = "{ae1!r} K", but must be 50 to '
+        f"{math.floor(ae1 - 273.15)} degC, below the Ae1 of 42CrMo4.\n"
+        "  From Ae1 on austenite forms again: that is a soak, not a temper."
+    )
+    casefile.loads(GOOD + TEMPER.replace("600 degC", f"{ae1 - 0.01!r} K"))
+
+
+def test_a_temper_of_a_secondary_hardening_steel_is_refused() -> None:
+    text = GOOD.replace('grade = "42CrMo4"', "composition = { C = 0.4, Cr = 3.8 }") + TEMPER
+    (fault,) = faults_of(text.replace("600 degC", "560 degC"))
+    assert fault.startswith(
+        "shaft.toml, line 17: Cr of a steel to be tempered = 3.8 %, but must be at most 3.5 %.\n"
+    )
 
 
 def test_a_soak_exactly_at_ae1_is_refused_and_just_above_it_taken() -> None:

@@ -127,6 +127,8 @@ def cases(draw: st.DrawFn) -> Case:
     n_field = 24 if field_times else draw(st.integers(2, 1000))
     counts = st.integers(4, 900)
     grids = st.one_of(st.just(()), st.tuples(*[counts] * section.n_dim))
+    for _ in range(draw(st.integers(0, 2))):
+        stages.append(Stage("temper", at=draw(floats(330.0, 900.0)), time=draw(times)))
     return Case(
         title=draw(line_texts),
         steel=SteelInput(
@@ -222,6 +224,10 @@ BAD_SHAPES = [
     ('"mid-radius"', '"midradius"'),
     ('"mid-radius"', '{ name = "a" }'),
     ('stage = "quench"', 'stage = "temper"'),
+    ('stage = "temper"', 'stage = "hold"'),
+    ('at = "600 degC"\n', ""),
+    ('at = "600 degC"', 'at = "600"'),
+    ('at = "600 degC"', 'at = "600 degC"\nuntil = "core below 150 degC"'),
     ('time = "3 h"', 'time = "3 hours"'),
     ('time = "3 h"', 'time = "3 h"\nmedium = "still air"'),
     ("fields = 24", "fields = 1"),

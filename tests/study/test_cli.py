@@ -359,7 +359,16 @@ EDITS: dict[str, tuple[str, str, str]] = {
         "",
         "a stage that cools",
     ),
-    "temper": ('stage = "quench"', 'stage = "temper"', "does not compute tempering"),
+    "temper before any quench": (
+        '[[route]]\nstage = "quench"',
+        '[[route]]\nstage = "temper"\nat = "600 degC"\ntime = "1 h"\n\n[[route]]\nstage = "quench"',
+        "put it last",
+    ),
+    "temper above Ae1": (
+        "\n[output]",
+        '\n[[route]]\nstage = "temper"\nat = "800 degC"\ntime = "1 h"\n\n[output]',
+        "that is a soak, not a temper",
+    ),
     "negative time": ('"100 s"', '"-100 s"', "line 19: route[1].time"),
     "unreachable end": ('time = "100 s"', 'until = "core below 50 degC"', "above the bath"),
     "film missing": (
@@ -414,9 +423,7 @@ def test_a_later_bath_hotter_than_the_part_at_that_time_is_refused(
     )
     case.write_text(small.replace("[output]", later), encoding="utf-8")
     assert call("check", "case.toml").code == 0  # it takes the solver to know
-    hint = (
-        r'case.toml(, line 2[0-9])?: route\[[0-9]\].bath = "400 degC" on "side", but must be'
-    )
+    hint = r'case.toml(, line 2[0-9])?: route\[[0-9]\].bath = "400 degC" on "side", but must be'
     assert re.search(hint, call("run", "case.toml", "--out", "out").err)
     refused(call, case.parent, "Heating up again is not computed", "run")
 

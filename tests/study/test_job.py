@@ -29,6 +29,8 @@ SHIPPED = sorted(
 AT_END = [
     *(f"{name}_fraction" for name in PHASE_NAMES),
     "hardness_HV",
+    "hardness_as_quenched_HV",
+    "yield_strength_MPa",
     "time_800_500_s",
     "cooling_rate_700degC_K_per_s",
     "austenite_carbon_pct",
@@ -251,6 +253,8 @@ def test_arrays_have_the_documented_shapes(solved: Result) -> None:
         "temp_degC": (n_time, n_node),
         "phases": (len(PHASE_NAMES), n_node),
         "hardness_hv": (n_node,),
+        "hardness_as_quenched_hv": (n_node,),
+        "yield_mpa": (n_node,),
         "time_800_500_s": (n_node,),
         "rate_700_K_per_s": (n_node,),
         "austenite_carbon_pct": (n_node,),

@@ -91,7 +91,9 @@ def drawn_texts(figure):
 
 
 @pytest.mark.parametrize("draw", [cooling, profile, section])
-def test_no_two_texts_overlap_and_none_leaves_the_sheet(draw, result: Result) -> None:
+@pytest.mark.parametrize("which", ["result", "tempered_result"])
+def test_no_two_texts_overlap_and_none_leaves_the_sheet(draw, which: str, request) -> None:
+    result = request.getfixturevalue(which)
     close = {"Ae3": 745.0, "Ae1": 741.0, "Acm": 743.0, "Ms": 331.0}
     ends = [0.0, 45.0, 47.0, 120.0, 300.0, 2000.0, 9045.0]
     route = tuple(
@@ -117,6 +119,20 @@ def test_profile_has_hardness_above_and_all_phases_below(result: Result) -> None
     # cementite is absent everywhere, so it has no entry
     assert labels == ["martensite", "bainite", "pearlite", "ferrite", "retained austenite"]
     assert_allclose(upper.lines[0].get_ydata(), result.hardness_hv[::-1], rtol=0, atol=0)
+
+
+def test_profile_of_a_tempered_part_draws_it_bold_over_the_thin_line_as_quenched(
+    tempered_result: Result,
+) -> None:
+    upper = profile(tempered_result).axes[0]
+    before, after = upper.lines[:2]
+    assert (before.get_label(), after.get_label()) == ("as quenched", "tempered")
+    assert before.get_linewidth() < 0.5 * after.get_linewidth()
+    hardness = tempered_result.hardness_hv[::-1]
+    assert_allclose(after.get_ydata(), hardness, rtol=0, atol=0)
+    assert_allclose(before.get_ydata(), hardness / 0.8, rtol=1e-15, atol=0)
+    low, high = upper.get_ylim()
+    assert low < hardness.min() and (hardness / 0.8).max() < high
 
 
 def test_profile_marks_only_places_on_its_line_each_at_its_depth_along_it(result: Result) -> None:

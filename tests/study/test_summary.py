@@ -98,11 +98,38 @@ def test_a_position_row_carries_every_number(result: Result) -> None:
         hardness_hrc=52.6,
         hardness_hb=None,
         tensile_mpa=1784.2,
+        yield_mpa=1515.4,
         time_800_500_s=23.31,
         rate_700_K_per_s=None,
     )
     lines = [flat(line) for line in printed(replace(result, positions=(p,))).splitlines()]
-    assert "here 8.0 558 52.6 - 1784 23.3 -" in lines
+    assert "here 8.0 558 52.6 - 1784 1515 23.3 -" in lines
+
+
+def test_a_tempered_part_shows_its_hardness_before_and_after(tempered_result: Result) -> None:
+    p = replace(
+        tempered_result.positions[1],
+        name="here",
+        depth_mm=8.0,
+        hardness_as_quenched_hv=558.4,
+        hardness_hv=318.2,
+        hardness_hrc=31.9,
+        hardness_hb=302.0,
+        tensile_mpa=1020.0,
+        yield_mpa=824.4,
+        time_800_500_s=23.31,
+        rate_700_K_per_s=6.67,
+    )
+    result = replace(tempered_result, positions=(p,))
+    lines = [flat(line) for line in printed(result).splitlines()]
+    assert "temper 600 degC throughout - 6 h 00 min time" in lines
+    assert "temper 580 degC throughout - 2 h 00 min time" in lines
+    assert lines.index("As quenched") < lines.index("here 558 23.3 6.67")
+    assert lines.index("Result, tempered") < lines.index("here 8.0 318 31.9 302 1020 824")
+    back = document(result)
+    assert back["tempers"][1] == {"at_degC": 580.0, "time_s": 7200.0}
+    assert back["positions"][0]["hardness_as_quenched_hv"] == 558.4
+    assert back["positions"][0]["yield_mpa"] == 824.4
 
 
 def test_only_phases_that_appear_get_a_column(result: Result, slow_result: Result) -> None:

@@ -59,6 +59,25 @@ def test_profile_runs_from_the_surface_to_the_core(folder: Path, result: Result)
         assert_allclose(column(table, f"{name}_fraction"), expected, rtol=1e-8, atol=1e-12)
 
 
+def test_both_tables_hold_hardness_before_and_after_the_temper_and_yield(
+    tmp_path: Path, tempered_result: Result
+) -> None:
+    r = tempered_result
+    write_tables(r, tmp_path)
+    table = rows(tmp_path / "profile.csv")
+    assert_allclose(column(table, "hardness_HV"), r.hardness_hv[::-1], rtol=1e-8, atol=0)
+    as_quenched = column(table, "hardness_as_quenched_HV")
+    assert_allclose(as_quenched, r.hardness_as_quenched_hv[::-1], rtol=1e-8, atol=0)
+    core = rows(tmp_path / "positions.csv")[-1]
+    p = r.positions[-1]
+    for heading, value in (
+        ("hardness_HV", p.hardness_hv),
+        ("hardness_as_quenched_HV", p.hardness_as_quenched_hv),
+        ("yield_strength_MPa", p.yield_mpa),
+    ):
+        assert_allclose(float(core[heading]), value, rtol=1e-8, atol=0)
+
+
 def test_what_is_not_available_is_an_empty_cell(folder: Path, result: Result) -> None:
     table = rows(folder / "profile.csv")
     assert table[0]["time_800_500_s"] == ""

@@ -1,0 +1,108 @@
+"""What the structure at the end of a route is worth: hardness, temper, strength."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from midradius.fem.route import History
+from midradius.study.case import Case
+from midradius.thermo import embrittlement, equilibrium, hardness, strength, tempering
+from midradius.thermo.arrays import Array
+from midradius.thermo.austenite import Austenite
+from midradius.thermo.phases import (
+    AUSTENITE,
+    BAINITE,
+    CEMENTITE,
+    FERRITE,
+    MARTENSITE,
+    PEARLITE,
+)
+from midradius.thermo.source import RangeNote
+from midradius.thermo.tempering import Temper, Tempered
+
+
+@dataclass(frozen=True)
+class Worth:
+    """Of every node: fractions (n_phase, n_node), hardness before and after the tempers
+    [HV] and yield strength [MPa], (n_node,) each; what the models say beside it."""
+
+    phases: Array
+    as_quenched_hv: Array
+    hardness_hv: Array
+    yield_mpa: Array
+    notes: tuple[RangeNote, ...]
+    cautions: tuple[str, ...]
+
+
+def tempers_of(case: Case) -> tuple[Temper, ...]:
+    """The tempers of a case, in its order."""
+    return tuple(Temper(stage.at or 0.0, stage.time or 0.0) for stage in case.tempers)
+
+
+def worth(case: Case, austenite: Austenite, history: History) -> Worth:
+    """Hardness as quenched, then through the tempers, then the strength of what is left.
+
+    Raises
+    ------
+    InputFault
+        A temper of a steel that hardens a second time.
+    """
+    composition = case.steel.steel.composition
+    ae1 = equilibrium.equilibrium(composition).ae1
+    as_quenched, by_phase = hardness.vickers(
+        history.phases,
+        composition,
+        carbon_austenite_pct=np.where(
+            np.isnan(history.carbon_martensite_pct),
+            austenite.carbon_pct,
+            history.carbon_martensite_pct,
+        ),
+        carbon_initial_pct=composition.C,
+        rate_700=history.rate_700,
+        pearlite_temp=history.pearlite_temp,
+        ae1=ae1,
+        grain_intercept=austenite.grain_mean_intercept,
+    )
+    tempers = tempers_of(case)
+    left = _tempered(history.phases, by_phase, as_quenched, case, tempers)
+    return Worth(
+        phases=left.fractions,
+        as_quenched_hv=as_quenched,
+        hardness_hv=left.hardness_hv,
+        yield_mpa=_yield_mpa(case, austenite, history, left, ae1),
+        notes=tempering.range_notes(composition, history.phases, by_phase, tempers),
+        cautions=embrittlement.cautions(composition, tempers, ae1=ae1) if tempers else (),
+    )
+
+
+def _tempered(
+    phases: Array, by_phase: Array, as_quenched: Array, case: Case, tempers: Sequence[Temper]
+) -> Tempered:
+    if not tempers:
+        return Tempered(phases, by_phase, as_quenched)
+    composition = case.steel.steel.composition
+    return tempering.temper(phases, by_phase, as_quenched, composition=composition, tempers=tempers)
+
+
+def _yield_mpa(
+    case: Case, austenite: Austenite, history: History, left: Tempered, ae1: float
+) -> Array:
+    composition = case.steel.steel.composition
+    some = np.where(left.fractions > hardness.PRESENT, left.fractions, 0.0)
+    soft = some[FERRITE] + some[PEARLITE]
+    rate = np.where(history.rate_700 > 0.0, history.rate_700, np.nan)
+    ferrite_pearlite = strength.gladman_yield(
+        np.where(soft > 0.0, some[FERRITE] / np.where(soft > 0.0, soft, 1.0), 1.0),
+        grain=strength.ferrite_grain(composition, rate, austenite.grain_mean_intercept),
+        spacing=strength.interlamellar_spacing(history.pearlite_temp, ae1),
+        composition=composition,
+    )
+    # Yield follows the hardness that is stated: where the mixture is held below the mean
+    # of its constituents, those that take their yield from hardness share the loss.
+    weighted = np.where(some > 0.0, some * left.hv_by_phase, 0.0)
+    steady = weighted[[FERRITE, CEMENTITE, PEARLITE]].sum(axis=0)
+    hard = weighted[[AUSTENITE, BAINITE, MARTENSITE]].sum(axis=0)
+    wanted = left.hardness_hv * some.sum(axis=0) - steady
+    share = np.clip(wanted / np.where(hard > 0.0, hard, 1.0), 0.0, 1.0)
+    return strength.yield_strength(some, left.hv_by_phase * share, ferrite_pearlite)
