@@ -27,11 +27,11 @@ from importlib.resources import files
 from typing import Literal
 
 import numpy as np
-from scipy.constants import g
 
 from midradius.thermo.arrays import Array
 from midradius.thermo.source import RangeNote, Source
 
+g = 9.80665  # m/s2, standard gravity
 Geometry = Literal["horizontal cylinder", "vertical plate", "sphere"]
 Gas = Literal["air", "nitrogen"]
 

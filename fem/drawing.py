@@ -12,7 +12,7 @@ from midradius.fem.grids import Axis
 from midradius.fem.section import Cut, Span
 from midradius.thermo.arrays import Array, IntArray
 
-N_ANGLE = 96
+N_ANGLE = 72
 
 
 @dataclass(frozen=True)

@@ -11,6 +11,7 @@ import numpy as np
 
 from midradius.fem import march
 from midradius.fem.coupled import Run, Surroundings, Until, Watch
+from midradius.fem.media import ZERO_DEGC
 from midradius.fem.section import Cut, Place
 from midradius.fem.surface import Film
 from midradius.thermo.arrays import Array
@@ -25,7 +26,6 @@ from midradius.thermo.kinetics import (
     advance_node,
 )
 from midradius.thermo.phases import AUSTENITE, MARTENSITE
-from midradius.thermo.units import show
 
 PART_OF_AUSTENITE = 1e-6  # less austenite than this has no carbon content to speak of
 LONGEST_STAGE = 30.0 * 24.0 * 3600.0  # s, for a stage that ends by temperature only
@@ -176,7 +176,7 @@ def cool(
         field_times=field_times,
     )
     ends = []
-    for number, stage in enumerate(stages, start=2):
+    for number, stage in enumerate(stages, start=1):
         _refuse_heating(stage, number, run.progress.temp)
         begun, before = run.time, run.progress.zone_heat.sum()
         until = None
@@ -193,7 +193,7 @@ def cool(
         if ended == "time" and stage.duration is None:
             raise InputFault(
                 f"route[{number}].until",
-                f'"{stage.until_place} below {show(stage.until_temp or 0.0, "temperature")}"',
+                f'"{stage.until_place} below {_degC(stage.until_temp or 0.0)}"',
                 "reached within 30 days",
                 "Give the stage a time, or a temperature that its surroundings allow.",
             )
@@ -215,14 +215,18 @@ def surroundings(zones: tuple[str, ...], surfaces: Mapping[str, Surface]) -> Sur
     )
 
 
+def _degC(temp: float) -> str:
+    return f"{temp - ZERO_DEGC:.4g} degC"
+
+
 def _refuse_heating(stage: CoolingStage, number: int, temp: Array) -> None:
     hottest = float(temp.max())
     for zone, surface in stage.surfaces.items():
         if surface.film.htc.max() > 0.0 and surface.ambient > hottest + HOTTER_BY:
             raise InputFault(
                 f"route[{number}].bath",
-                f'"{show(surface.ambient, "temperature")}" on "{zone}"',
-                f"colder than the part, which is at {show(hottest, 'temperature')} by then",
+                f'"{_degC(surface.ambient)}" on "{zone}"',
+                f"colder than the part, which is at {_degC(hottest)} by then",
                 "Heating up again is not computed: end the stage before earlier, or cool the bath.",
             )
 

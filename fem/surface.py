@@ -22,7 +22,6 @@ from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
-from scipy.constants import Stefan_Boltzmann
 
 from midradius.fem.convection import Geometry, forced, free
 from midradius.fem.filmfile import read_curve
@@ -31,6 +30,8 @@ from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 from midradius.thermo.source import RangeNote
 
+# CODATA 2018, exact; importing scipy.constants for it costs more than it saves.
+STEFAN_BOLTZMANN = 5.670374419e-8
 SCALED_STEEL = 0.80
 """Emissivity of hot-worked or furnace-scaled steel."""
 
@@ -120,7 +121,7 @@ def film(
 def radiation(surface: Array, surroundings: float, *, emissivity: float) -> Array:
     """Radiation as a film coefficient [W/(m2 K)], shape of ``surface`` [K]."""
     squares = surface**2 + surroundings**2
-    return np.asarray(emissivity * Stefan_Boltzmann * squares * (surface + surroundings))
+    return np.asarray(emissivity * STEFAN_BOLTZMANN * squares * (surface + surroundings))
 
 
 def beyond(film: Film, *, coldest: float, hottest: float) -> tuple[RangeNote, ...]:

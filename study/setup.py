@@ -170,7 +170,10 @@ def _label(surfaces: Mapping[str, Surface]) -> str:
     labels = dict.fromkeys(surface.label for surface in surfaces.values())
     if len(labels) == 1:
         return next(iter(labels))
-    return "; ".join(f"{zone}: {surface.label}" for zone, surface in surfaces.items())
+    seen = [surface.label for surface in surfaces.values()]
+    common = max(labels, key=seen.count)
+    rest = [f"{zone}: {s.label}" for zone, s in surfaces.items() if s.label != common]
+    return "; ".join([common, *rest])
 
 
 def _assumptions(case: Case, section: Section) -> tuple[str, ...]:

@@ -5,6 +5,7 @@ mixture of ferrite and cementite is exactly linear.
 """
 
 from collections.abc import Callable
+from functools import cache
 
 import numpy as np
 
@@ -21,9 +22,10 @@ N_CLOCK = 4097
 NEVER_K = 0.0  # a martensite start that no temperature reaches
 
 
+@cache
 def _clock_tables() -> tuple[Array, Array, float]:
     """Fraction at even S, S at even square roots of the fraction, and S(1)."""
-    fine = (1.0 - np.cos(np.linspace(0.0, np.pi, 20001))) / 2.0
+    fine = (1.0 - np.cos(np.linspace(0.0, np.pi, 6001))) / 2.0
     clock = diffusional.clock_integral(fine)
     whole = float(clock[-1])
     even = np.linspace(0.0, whole, N_CLOCK)
