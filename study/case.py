@@ -12,8 +12,11 @@ from pathlib import Path
 from typing import Literal
 
 from midradius.thermo.errors import InputFault
+from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Steel
 from midradius.thermo.units import parse
+
+from .steelfile import FileSteel
 
 Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
 StageKind = Literal["soak", "transfer", "quench", "hold", "temper"]
@@ -63,10 +66,16 @@ class Stage:
 
 @dataclass(frozen=True)
 class SteelInput:
-    """The steel, and its prior austenite grain [ASTM number] unless the soak gives it."""
+    """The steel, and its prior austenite grain [ASTM number] unless the soak gives it.
+
+    ``file`` is where a certificate was read; ``notes`` say where it leaves the limits
+    of the grade that was ordered.
+    """
 
     steel: Steel
     grain_astm: float | None = None
+    file: FileSteel | None = None
+    notes: tuple[RangeNote, ...] = ()
 
 
 @dataclass(frozen=True)

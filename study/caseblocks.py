@@ -2,8 +2,10 @@
 
 import math
 import re
+from pathlib import Path
 from typing import cast
 
+from midradius.thermo.certificate import Certificate, CertificateFaults, read_certificates
 from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import grade
 from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS, Composition, Steel, check
@@ -13,19 +15,28 @@ from . import casekeys as keys
 from .case import Form, Grid, SectionInput, SteelInput
 from .casemedium import medium_use
 from .casetable import Table, one_of
+from .steelfile import FileSteel, notes_of, pick
 
 _GRAIN = re.compile(r"ASTM\s*(-?[0-9]{1,2}(?:\.[0-9]{1,3})?)", re.IGNORECASE)
 _STRANGE = "No model here knows this element: leave it out."
 
 
 def steel_input(table: Table) -> SteelInput | None:
-    """``[steel]``: a grade of the table or a composition, never both."""
+    """``[steel]``: a grade of the table, a composition, or a steel of a file."""
     table.only(keys.STEEL)
     grain = _grain(table)
     example = 'grade = "42CrMo4" or composition = { C = 0.42, Mn = 0.75 }'
-    if table.has("grade") and table.has("composition"):
-        table.fault("composition", "left out where a grade is given", "Keep one of the two.")
+    given = [key for key in keys.STEEL_FROM if table.has(key)]
+    if len(given) > 1:
+        for key in given[1:]:
+            allowed = f"left out where a {given[0]} is given"
+            table.fault(key, allowed, "Keep one of the two.")
         return None
+    for key in ("heat", "name"):
+        if table.has(key) and given != ["file"]:
+            table.fault(key, "left out where no file is given", 'Write file = "works.toml" beside.')
+    if given == ["file"]:
+        return _steel_of_file(table, grain)
     if table.has("composition"):
         steel = _own_steel(table)
     else:
@@ -44,6 +55,51 @@ def _shipped_steel(table: Table) -> Steel | None:
     except InputFault as fault:
         table.fault("grade", fault.allowed, fault.remedy)
         return None
+
+
+def _steel_of_file(table: Table, grain: float | None) -> SteelInput | None:
+    """The certificate that ``file`` with ``heat`` or ``name`` means."""
+    if table.has("heat") and table.has("name"):
+        table.fault("name", "left out where a heat is given", "Keep one of the two.")
+        return None
+    key = "heat" if table.has("heat") else "name"
+    file = table.text("file", 1000)
+    wanted = table.text(key, keys.LONGEST_NAME)
+    if file is None or (table.has(key) and wanted is None):
+        return None
+    path = table.notes.folder / file
+    certificates = _certificates(table, path)
+    if certificates is None:
+        return None
+    try:
+        found = pick(certificates, key=key, wanted=wanted or "")
+    except InputFault as fault:
+        if table.has(key):
+            table.fault(key, fault.allowed, fault.remedy)
+        else:
+            table.missing(key, fault.allowed, fault.remedy)
+        return None
+    return SteelInput(found.steel, grain, FileSteel(path, found.name), notes_of(found))
+
+
+def _certificates(table: Table, path: Path) -> tuple[Certificate, ...] | None:
+    remedy = "There is no such file; the path counts from the case file."
+    try:
+        if path.is_file():
+            return read_certificates(path)
+        if path.exists():
+            remedy = "This is a folder." if path.is_dir() else "This is a device or a pipe."
+    except InputFault as fault:
+        faults = fault.faults if isinstance(fault, CertificateFaults) else (fault,)
+        for item in faults:
+            place = item.quantity.removeprefix("steels ")
+            sentence = f"{place} = {item.value}, but must be {item.allowed}"
+            table.refuse("file", sentence, item.remedy)
+        return None
+    except (OSError, ValueError) as error:
+        remedy = f"{error}."
+    table.fault("file", "a TOML or CSV file of certificates", remedy)
+    return None
 
 
 def _own_steel(table: Table) -> Steel | None:

@@ -19,6 +19,7 @@ from .case import (
     SteelInput,
     position,
 )
+from .steelfile import FileSteel
 
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 
@@ -29,7 +30,7 @@ def dumps(case: Case) -> str:
     A film curve inside the folder of ``case.path`` is written relative to it.
     """
     folder = case.path.parent if case.path else Path()
-    lines = [f"title = {_quoted(case.title)}", "", "[steel]", *_steel(case.steel)]
+    lines = [f"title = {_quoted(case.title)}", "", "[steel]", *_steel(case.steel, folder)]
     lines += ["", "[section]", f'form = "{case.section.form}"']
     for name in keys.ALL_DIMENSIONS:
         size = getattr(case.section, name)
@@ -46,11 +47,20 @@ def dumps(case: Case) -> str:
     return "\n".join(lines) + "\n"
 
 
-def _steel(steel: SteelInput) -> list[str]:
-    lines = [_grade(steel)]
+def _steel(steel: SteelInput, folder: Path) -> list[str]:
+    lines = _of_file(steel.file, folder) if steel.file else [_grade(steel)]
     if steel.grain_astm is not None:
         lines.append(f'austenite_grain = "ASTM {_number(steel.grain_astm)}"')
     return lines
+
+
+def _of_file(file: FileSteel, folder: Path) -> list[str]:
+    return [f"file = {_quoted(_beside(file.path, folder))}", f"name = {_quoted(file.name)}"]
+
+
+def _beside(path: Path, folder: Path) -> str:
+    inside = path.is_relative_to(folder)
+    return (path.relative_to(folder) if inside else path).as_posix()
 
 
 def _grade(steel: SteelInput) -> str:
@@ -84,9 +94,7 @@ def _stage(stage: Stage, folder: Path) -> list[str]:
 def _medium(use: MediumUse, folder: Path) -> list[tuple[str, str]]:
     pairs = []
     if use.film_file is not None:
-        inside = use.film_file.is_relative_to(folder)
-        film = use.film_file.relative_to(folder) if inside else use.film_file
-        pairs.append(("film", _quoted(film.as_posix())))
+        pairs.append(("film", _quoted(_beside(use.film_file, folder))))
     elif use.name is not None:
         pairs.append(("medium", _quoted(use.name)))
     if use.bath is not None:

@@ -15,6 +15,9 @@ import click
 from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED
 from midradius.study.cli_answer import answered as _answered
 from midradius.study.cli_answer import printable as _printable
+from midradius.study.cli_lever import lever
+from midradius.study.cli_sources import described, sources, used_lines
+from midradius.study.cli_steels import steels
 
 _EPILOG = """\b
 Exit codes:
@@ -84,6 +87,11 @@ def cli() -> None:
     """
 
 
+cli.add_command(lever)
+cli.add_command(sources)
+cli.add_command(steels)
+
+
 @cli.command(epilog=_RUN_EPILOG)
 @click.argument("case", type=click.Path(path_type=Path))
 @click.option(
@@ -94,7 +102,8 @@ def cli() -> None:
 )
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON document, nothing else.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
-def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
+@click.option("--sources", "with_sources", is_flag=True, help="Print the works it rests on.")
+def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_sources: bool) -> None:
     """Solve CASE and write a result folder."""
     from midradius.study.casefile import read
 
@@ -107,11 +116,16 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
         logging.getLogger("matplotlib").setLevel(logging.ERROR)
         with _progress(asked.title, hidden=quiet or as_json) as tell:
             result = job.run(asked, target, tell=tell)
+    if with_sources:
+        from midradius.study.sources import used
     if as_json:
         from midradius.study.summary import document
 
+        content = document(result)
+        if with_sources:
+            content["sources"] = described(used(result.sources))
         # Escapes instead of letters beyond ASCII: whole whatever encoding stdout has.
-        click.echo(json.dumps(document(result), indent=1, allow_nan=False))
+        click.echo(json.dumps(content, indent=1, allow_nan=False))
     elif not quiet:
         from rich.console import Console
 
@@ -119,6 +133,8 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool) -> None:
 
         console = Console(highlight=False)
         terminal(result, console)
+        for line in ["\nSources", *used_lines(used(result.sources))] if with_sources else []:
+            click.echo(line)
         console.print(f"\nWritten to {_printable(target)}", markup=False)
 
 
@@ -168,21 +184,6 @@ def _write_new(file: Path, content: str) -> None:
         ) from None
     except OSError as fault:
         raise InputFault("file", str(file), "a place that can be written", f"{fault}.") from fault
-
-
-@cli.command(short_help="List the shipped grades.")
-@click.argument("part", required=False, default="")
-def steels(part: str) -> None:
-    """List the shipped grades, or those whose name or number contains PART."""
-    from midradius.thermo.grades import all_grades
-
-    found = [s for s in all_grades() if part.lower() in f"{s.name} {s.standard}".lower()]
-    for steel in found:
-        aims = ", ".join(f"{k} {v:g}" for k, v in vars(steel.composition).items() if v)
-        click.echo(f"{steel.name:14} {steel.standard:18} {aims}")
-    if not found:
-        click.echo(f'No shipped grade contains "{part}"; midradius steels lists all.', err=True)
-        sys.exit(BAD_INPUT)
 
 
 @cli.command(short_help="List the media and their bath temperatures.")

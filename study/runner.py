@@ -21,6 +21,7 @@ from midradius.study.result import (
     TemperRecord,
 )
 from midradius.study.setup import Setup, coordinates_of, prepare
+from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
 from midradius.thermo import (
@@ -297,7 +298,7 @@ def _result(
         n_step=history.n_step,
         n_node=cut.body.n_node,
         notes=_notes(case, setup, left, main),
-        sources=_sources(case, setup),
+        sources=sources_of(case, setup),
         assumptions=setup.assumptions,
         cautions=setup.cautions + main.worth.cautions,
         inputs=_inputs(case),
@@ -356,6 +357,7 @@ def _soak_text(case: Case, left: Austenite) -> str:
 def _notes(case: Case, setup: Setup, left: Austenite, main: _Attempt) -> tuple[RangeNote, ...]:
     composition, history = case.steel.steel.composition, main.history
     found = [
+        *case.steel.notes,
         *steel.range_notes(composition),
         *equilibrium.range_notes(composition),
         *left.notes,
@@ -379,8 +381,9 @@ def _notes(case: Case, setup: Setup, left: Austenite, main: _Attempt) -> tuple[R
     return tuple(dict.fromkeys(found))
 
 
-def _sources(case: Case, setup: Setup) -> tuple[Source, ...]:
-    found: list[Source] = []
+def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
+    """The works that a run of the case rests on."""
+    found: list[Source] = [source_of(case.steel.steel)]
     used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
     for module in used:

@@ -61,6 +61,9 @@ def _steel() -> Schema:
                 "examples": [steel.name for steel in all_grades()],
             },
             "composition": _table(amounts, ("C",)),
+            "file": _text("TOML or CSV of certificates, beside the case file.", 1000),
+            "heat": _text("Which steel of the file, by its heat.", keys.LONGEST_NAME),
+            "name": _text("Which steel of the file, by its name.", keys.LONGEST_NAME),
             "austenite_grain": {
                 "type": "string",
                 "description": f"ASTM {low:g} to {high:g}; left out: from the soak.",
@@ -70,7 +73,10 @@ def _steel() -> Schema:
         },
         (),
     )
-    return steel | {"oneOf": [{"required": ["grade"]}, {"required": ["composition"]}]}
+    return steel | {
+        "oneOf": [{"required": [key]} for key in keys.STEEL_FROM],
+        "not": {"required": ["heat", "name"]},
+    }
 
 
 def _section() -> Schema:
