@@ -145,6 +145,7 @@ def _texts(result: Result) -> dict[str, str]:
         "position_phases_json": _json([dict(p.phases) for p in result.positions]),
         "stages_json": _json([asdict(stage) for stage in result.stages]),
         "tempers_json": _json([asdict(temper) for temper in result.tempers]),
+        "needs_json": _json([asdict(verdict) for verdict in result.verdicts]),
         "notes_json": _json([asdict(note) for note in result.notes]),
         "sources_json": _json([asdict(source) for source in result.sources]),
         "assumptions_json": _json(result.assumptions),

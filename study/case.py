@@ -146,6 +146,47 @@ class Grid:
 
 
 @dataclass(frozen=True)
+class Need:
+    """What the drawing asks for: a quantity at a place, within limits.
+
+    ``position`` names a place (an output position, a trade term, a depth) or is
+    ``EVERYWHERE``: every solved node. ``at_least`` and ``at_most`` are in ``unit``
+    (HRC, HV, HB; MPa, ksi; % by mass; mm, in; um; ASTM), one of them at least is
+    given. ``to`` belongs to a hardened depth: a hardness, or percent of martensite.
+    """
+
+    position: str
+    quantity: str
+    unit: str
+    at_least: float | None = None
+    at_most: float | None = None
+    to: float | None = None
+    to_unit: str = ""
+
+    @property
+    def text(self) -> str:
+        """The requirement in words: ``"hardness at mid-radius: at least 28 HRC"``."""
+        low, high = (
+            None if limit is None else with_unit(limit, self.unit)
+            for limit in (self.at_least, self.at_most)
+        )
+        limits = f"between {low} and {high}"
+        if low is None or high is None:
+            limits = f"at least {low}" if low is not None else f"at most {high}"
+        if self.to is not None:
+            where = f" to {with_unit(self.to, self.to_unit)}"
+        else:
+            where = f" {EVERYWHERE}" if self.position == EVERYWHERE else f" at {self.position}"
+        return f"{self.quantity}{where}: {limits}"
+
+
+def with_unit(value: float, unit: str) -> str:
+    """``28 HRC``, ``ASTM 5``: every digit of the value, the unit on its side."""
+    number = repr(float(value)).removesuffix(".0")
+    return f"{unit} {number}" if unit == "ASTM" else f"{number} {unit}"
+
+
+@dataclass(frozen=True)
 class Case:
     """A whole case. Two cases are equal when they ask for the same computation."""
 
@@ -155,6 +196,7 @@ class Case:
     route: tuple[Stage, ...]
     outputs: Outputs
     grid: Grid = Grid()
+    needs: tuple[Need, ...] = ()
     text: str = field(default="", compare=False, repr=False)
     path: Path | None = field(default=None, compare=False)
 
@@ -167,6 +209,15 @@ class Case:
     def tempers(self) -> tuple[Stage, ...]:
         """The stages that temper the cooled part, the last of the route."""
         return tuple(stage for stage in self.route if stage.kind == "temper")
+
+    @property
+    def watched(self) -> Mapping[str, PositionInput]:
+        """By name, the output positions and then the other places that a need names."""
+        found = {place.name: place for place in self.outputs.positions}
+        for need in self.needs:
+            if need.position != EVERYWHERE and need.position not in found:
+                found[need.position] = self.position(need.position)
+        return found
 
     def position(self, name: str) -> PositionInput:
         """The place that ``name`` means: an output position, else a trade term or a depth.
@@ -192,6 +243,7 @@ ZONES: Mapping[str, tuple[str, ...]] = {
 }
 TRADE_TERMS: tuple[PositionKind, ...] = ("surface", "mid-radius", "quarter thickness", "core")
 BELOW_SURFACE = " below surface"
+EVERYWHERE = "everywhere"
 
 
 def position(text: str) -> PositionInput:

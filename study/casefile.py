@@ -13,6 +13,7 @@ from .case import Case
 from .caseblocks import grid, section_input, steel_input
 from .casefaults import CaseFaults, Fault, Notebook
 from .caselines import locate
+from .caseneed import needs
 from .caseoutput import outputs
 from .caseroute import route
 from .casetable import Table, is_line
@@ -82,6 +83,7 @@ def loads(text: str, path: Path | None = None) -> Case:
     section = section_input(section_table) if section_table else None
     wanted = outputs(top.table("output", "[output]"), section)
     stages = route(top, steel, section, wanted)
+    asked = needs(top, section, wanted)
     cells = grid(top.table("grid", "[grid]"), section)
     notes.close()
     if steel is None or section is None:  # cannot be: each None has its note
@@ -93,6 +95,7 @@ def loads(text: str, path: Path | None = None) -> Case:
         route=stages,
         outputs=wanted,
         grid=cells,
+        needs=asked,
         text=text,
         path=path,
     )

@@ -6,14 +6,14 @@ they cannot differ.
 
 from collections.abc import Mapping
 
+from midradius.thermo.phases import PHASE_NAMES
+
 from .case import Form, StageKind
 
 ZERO_DEGC = 273.15
 
-TOP = ("title", "steel", "section", "route", "output", "grid")
+TOP = ("title", "steel", "section", "route", "need", "output", "grid")
 LATER: Mapping[str, str] = {
-    "need": "Requirements are not judged by this version: take the table out and compare "
-    "the summary with them yourself.",
     "load": "The heat of a whole load is not computed by this version: take the table out.",
     "tank": "A tank and its cooler are not computed by this version: take the table out.",
 }
@@ -46,6 +46,10 @@ MEDIUM = ("medium", "bath", "film")
 OUTPUT = ("positions", "fields", "times")
 POSITION = ("name", "depth", "at")
 GRID = ("cells", "accuracy")
+NEED = ("position", "quantity", "at_least", "at_most", "between", "to")
+DEPTH, FILM, GRAIN = "hardened depth", "cementite film", "grain"
+OF_MARTENSITE = "% martensite"
+QUANTITIES = ("hardness", "tensile", "yield", *PHASE_NAMES, DEPTH, FILM, GRAIN)
 OWN_COMPOSITION = "own composition"
 
 DIMENSION_RANGE = (0.5e-3, 10.0)
@@ -66,3 +70,22 @@ PLACES_MOST = 200
 TIMES_MOST = 1000
 LONGEST_NAME = 60
 LONGEST_TITLE = 200
+NEEDS_MOST = 100
+MARTENSITE_RANGE = (1.0, 99.0)
+# Units of a limit and their ranges: those in which thermo.conversion converts.
+NEED_UNITS: Mapping[str, Mapping[str, tuple[float, float]]] = {
+    "hardness": {"HRC": (20.0, 68.0), "HV": (50.0, 1200.0), "HB": (76.0, 617.0)},
+    "tensile": {"MPa": (255.0, 2180.0), "ksi": (37.0, 316.0)},
+    "yield": {"MPa": (50.0, 2500.0), "ksi": (8.0, 360.0)},
+    **dict.fromkeys(PHASE_NAMES, {"%": (0.0, 100.0)}),
+    DEPTH: {"mm": (0.0, 10_000.0), "in": (0.0, 390.0)},
+    FILM: {"um": (0.0, 1000.0)},
+    GRAIN: {"ASTM": (-3.0, 14.0)},
+}
+NEED_WHY: Mapping[str, str] = {
+    "HRC": "Rockwell C ends there: below 20 HRC ask in HB or HV.",
+    "HB": "Brinell ends there: above 617 HB ask in HRC or HV.",
+    "MPa": "Strength follows from hardness between these ends only.",
+    "ksi": "Strength follows from hardness between these ends only.",
+}
+LENGTHS: Mapping[str, float] = {"mm": 1e-3, "in": 0.0254}

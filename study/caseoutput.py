@@ -119,10 +119,10 @@ def place_fault(place: PositionInput, section: SectionInput) -> tuple[str, str] 
         return None
     spans = spans_of(section)
     if place.kind == "depth" and place.depth is not None:
-        deepest = _deepest(section)
-        if 0.0 < deepest * (1.0 + 1e-9) < place.depth:
+        most = deepest(section)
+        if 0.0 < most * (1.0 + 1e-9) < place.depth:
             return (
-                f"at most {deepest * 1e3:.6g} mm below the surface of this section",
+                f"at most {most * 1e3:.6g} mm below the surface of this section",
                 'Write a smaller depth; the middle of the section is "core".',
             )
     if place.coordinates is not None:
@@ -156,7 +156,8 @@ def spans_text(section: SectionInput) -> str:
     )
 
 
-def _deepest(section: SectionInput) -> float:
+def deepest(section: SectionInput) -> float:
+    """The largest depth [m] that a place of this section can have."""
     if section.form in ("round", "ball"):
         return (section.diameter or math.inf) / 2.0
     if section.form in ("tube", "ring"):

@@ -12,12 +12,14 @@ from .case import (
     Case,
     Grid,
     MediumUse,
+    Need,
     Outputs,
     PositionInput,
     SectionInput,
     Stage,
     SteelInput,
     position,
+    with_unit,
 )
 from .steelfile import FileSteel
 
@@ -42,6 +44,8 @@ def dumps(case: Case) -> str:
         lines.append(f"emissivity = {case.section.emissivity!r}")
     for stage in case.route:
         lines += ["", "[[route]]", *_stage(stage, folder)]
+    for need in case.needs:
+        lines += ["", "[[need]]", *_need(need)]
     lines += ["", "[output]", *_outputs(case.outputs)]
     lines += ["", "[grid]", *_grid(case.grid)]
     return "\n".join(lines) + "\n"
@@ -107,6 +111,22 @@ def _inline(use: MediumUse, folder: Path) -> str:
     if len(pairs) == 1 and pairs[0][0] == "medium":
         return pairs[0][1]
     return "{ " + ", ".join(f"{key} = {value}" for key, value in pairs) + " }"
+
+
+def _need(need: Need) -> list[str]:
+    lines = [] if need.to is not None else [f"position = {_quoted(need.position)}"]
+    lines.append(f'quantity = "{need.quantity}"')
+    if need.to is not None:
+        lines.append(f'to = "{with_unit(need.to, need.to_unit)}"')
+    low, high = (
+        None if limit is None else f'"{with_unit(limit, need.unit)}"'
+        for limit in (need.at_least, need.at_most)
+    )
+    if low and high:
+        lines.append(f"between = [{low}, {high}]")
+    else:
+        lines.append(f"at_least = {low}" if low else f"at_most = {high}")
+    return lines
 
 
 def _outputs(outputs: Outputs) -> list[str]:

@@ -12,7 +12,7 @@ from typing import Any
 
 import click
 
-from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED
+from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED, NOT_MET
 from midradius.study.cli_answer import answered as _answered
 from midradius.study.cli_answer import printable as _printable
 from midradius.study.cli_lever import lever
@@ -22,7 +22,7 @@ from midradius.study.cli_steels import steels
 _EPILOG = """\b
 Exit codes:
   0  done
-  1  a requirement of the case is not met (kept for requirements)
+  1  done, but a requirement of the case fails (too close to call is 0)
   2  bad input: nothing was written
   3  the solver gave up: nothing was written
 130  interrupted: nothing was written
@@ -41,6 +41,7 @@ The folder holds:
   histories.csv             temperature over time at the named positions
   profile.csv               everything from surface to core
   positions.csv             the answer at the named positions
+  needs.csv                 what the case asks for, and whether it is met
   record.h5                 all of it, with inputs, versions and sources
   *.png                     cooling curves, profile, section
 """
@@ -136,6 +137,8 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_source
         for line in ["\nSources", *used_lines(used(result.sources))] if with_sources else []:
             click.echo(line)
         console.print(f"\nWritten to {_printable(target)}", markup=False)
+    if any(verdict.outcome == "fails" for verdict in result.verdicts):
+        sys.exit(NOT_MET)
 
 
 @cli.command()

@@ -6,6 +6,7 @@ symmetry allows it); ``view`` draws the whole part from them.
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Literal
 
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.source import RangeNote, Source
@@ -83,6 +84,34 @@ class TemperRecord:
     time_s: float
 
 
+Outcome = Literal["holds", "fails", "too close to call"]
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """Whether one requirement of the drawing is met, by how much, and how sure that is.
+
+    Numbers are in ``unit``: the one asked, or HV where the value has no conversion to it.
+    ``margin`` to ``limit`` is positive on the good side; the uncertainties are those at
+    90 %, of the model on the side of the limit. None: no model gives it.
+    ``model_measured`` is False where ``model_basis`` is an estimate.
+    """
+
+    need: str
+    position: str
+    quantity: str
+    unit: str
+    value: float | None
+    limit: float
+    margin: float | None
+    numerical_uncertainty: float | None
+    model_uncertainty: float | None
+    model_measured: bool
+    model_basis: str
+    outcome: Outcome
+    note: str = ""
+
+
 @dataclass(frozen=True)
 class Result:
     """One run of the main job.
@@ -125,6 +154,7 @@ class Result:
     grid_error_K: float
     n_step: int
     n_node: int
+    verdicts: tuple[Verdict, ...] = ()
     notes: tuple[RangeNote, ...] = ()
     sources: tuple[Source, ...] = ()
     assumptions: tuple[str, ...] = ()

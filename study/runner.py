@@ -12,6 +12,7 @@ from midradius.fem.media import ZERO_DEGC
 from midradius.fem.route import CoolingStage, History, cool
 from midradius.fem.section import Cut, Place
 from midradius.study.case import Case
+from midradius.study.needs import judge
 from midradius.study.result import (
     Position,
     Profile,
@@ -53,6 +54,7 @@ TIGHTER = 1.0 / 8.0  # tolerance of the run that measures the time error
 # run still has, and so what its difference from the looser one leaves out.
 TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
 GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
+FACTORS = (TIME_FACTOR, GRID_FACTOR)
 MOST_NODES = {1: 2049, 2: 12_000}
 # Above it bainite could still form on the way to room temperature [estimate].
 ENDS_HOT = 200.0 + ZERO_DEGC
@@ -140,7 +142,7 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
     while True:
         fine = forms.cut(setup.section, _even(cells), strongest_film=setup.strongest_film)
         coarse = fine.coarser()
-        march = partial(material.march, stages=setup.stages, watched=_watched(case))
+        march = partial(material.march, stages=setup.stages, watched=tuple(case.watched))
         at_fine, at_coarse = _places(case, fine), _places(case, coarse)
         scout = march(
             coarse, places=at_coarse, times=np.zeros(1), tolerance=4.0 * tolerance
@@ -186,12 +188,8 @@ def _shared(field: Array, fine: Cut) -> Array:
     return kept.reshape(len(field), -1)
 
 
-def _watched(case: Case) -> tuple[str, ...]:
-    return tuple(place.name for place in case.outputs.positions)
-
-
 def _places(case: Case, cut: Cut) -> dict[str, Place]:
-    named = {place.name: place for place in case.outputs.positions}
+    named = dict(case.watched)
     for stage in case.cooling:
         if stage.until and stage.until.position not in named:
             named[stage.until.position] = case.position(stage.until.position)
@@ -240,8 +238,7 @@ def _result(
     factor, extent = setup.section.whole
     mass = properties.DENSITY * float(cut.body.volume.sum())
     positions = tuple(
-        _position(name, main, at_fine[name], rough, sharp, at_coarse[name])
-        for name in _watched(case)
+        _position(name, main, at_fine[name], rough, sharp, at_coarse[name]) for name in case.watched
     )
     eq = equilibrium.equilibrium(composition)
     left = material.austenite
@@ -297,6 +294,9 @@ def _result(
         grid_error_K=grid_error,
         n_step=history.n_step,
         n_node=cut.body.n_node,
+        verdicts=judge(
+            case, left, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS
+        ),
         notes=_notes(case, setup, left, main),
         sources=sources_of(case, setup),
         assumptions=setup.assumptions,

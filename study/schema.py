@@ -30,6 +30,7 @@ def document() -> Schema:
             "steel": _steel(),
             "section": _section(),
             "route": _route(),
+            "need": _needs(),
             "output": _output(),
             "grid": _grid(),
         },
@@ -141,6 +142,46 @@ def _route() -> Schema:
             "required": ["stage"],
             "oneOf": [soak, *stages],
         },
+    }
+
+
+def _needs() -> Schema:
+    units = dict.fromkeys(unit for known in keys.NEED_UNITS.values() for unit in known)
+    number = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
+    written = "|".join([*(unit for unit in units if unit != "ASTM"), "HBW", "N/mm2"])
+    limit = {
+        "type": "string",
+        "pattern": rf"^\s*(?:{number}\s*(?:{written})|[Aa][Ss][Tt][Mm]\s*{number})\s*$",
+        "examples": ["28 HRC", "900 MPa", "5 %", "8 mm", "ASTM 5"],
+    }
+    common: dict[str, Schema] = {
+        "at_least": limit,
+        "at_most": limit,
+        "between": {"type": "array", "items": limit, "minItems": 2, "maxItems": 2},
+    }
+    place = _text("A place of the output, a trade term, a depth, or everywhere.", 200)
+    kinds = [name for name in keys.QUANTITIES if name not in (keys.DEPTH, keys.GRAIN)]
+    to = {
+        "type": "string",
+        "description": "To what the depth counts.",
+        "examples": ["50 HRC", "50 % martensite"],
+    }
+    need = {
+        "type": "object",
+        "properties": {"quantity": {"enum": list(keys.QUANTITIES)}},
+        "required": ["quantity"],
+        "oneOf": [
+            _table({"quantity": {"enum": kinds}, "position": place, **common}, ("position",)),
+            _table({"quantity": {"const": keys.GRAIN}, "position": place, **common}, ()),
+            _table({"quantity": {"const": keys.DEPTH}, "to": to, **common}, ("to",)),
+        ],
+        "anyOf": [{"required": ["at_least"]}, {"required": ["at_most"]}, {"required": ["between"]}],
+    }
+    return {
+        "type": "array",
+        "description": "What the drawing asks for, each with its limit.",
+        "items": need,
+        "maxItems": keys.NEEDS_MOST,
     }
 
 

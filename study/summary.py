@@ -11,7 +11,8 @@ from dataclasses import asdict
 from importlib import metadata
 from typing import TYPE_CHECKING, Any, Literal
 
-from midradius.study.result import Position, Result
+from midradius.study.needs import shown
+from midradius.study.result import Position, Result, Verdict
 from midradius.thermo.phases import PHASE_NAMES
 
 if TYPE_CHECKING:
@@ -98,6 +99,7 @@ def document(result: Result) -> dict[str, Any]:
         "heat_balance_relative": result.heat_balance_relative,
         "time_error_K": result.time_error_K,
         "grid_error_K": result.grid_error_K,
+        "needs": [asdict(verdict) for verdict in result.verdicts],
         "positions": [_position(p) for p in result.positions],
         "stages": [asdict(stage) for stage in result.stages],
         "tempers": [asdict(temper) for temper in result.tempers],
@@ -129,6 +131,7 @@ def terminal(result: Result, console: "Console") -> None:
     from rich.text import Text
 
     console.print(_text(result.title or "untitled case", "bold"))
+    _needs(result, console)
     console.print(_pairs(_head(result)))
     for heading, table in (
         ("Route", _route(result)),
@@ -144,6 +147,40 @@ def terminal(result: Result, console: "Console") -> None:
     _bullets(console, "Models used outside the range of their source", outside)
     _bullets(console, "Assumed", result.assumptions)
     _bullets(console, "Caution", cautions(result))
+
+
+_OUTCOME_STYLES = {"holds": "bold green", "fails": "bold red", "too close to call": "bold yellow"}
+
+
+def _needs(result: Result, console: "Console") -> None:
+    """The verdicts on what the drawing asks for, before everything else."""
+    if not result.verdicts:
+        return
+    table = _table(
+        ["requirement", "computed", "margin", "+- numbers", "+- model", ""], [], left={0, 5}
+    )
+    for v in result.verdicts:
+        sure = (v.margin, v.numerical_uncertainty, v.model_uncertainty)
+        cells = [shown(v.value, v.unit), *(shown(x, v.unit, bare=True) for x in sure)]
+        outcome = _text(v.outcome, _OUTCOME_STYLES[v.outcome])
+        table.add_row(_text(v.need), *(_text(cell) for cell in cells), outcome)
+    console.print(_text("\nRequirements", "bold"))
+    console.print(table)
+    console.print(_pairs([("-", line) for line in _remarks(result.verdicts)]))
+    console.print()
+
+
+def _remarks(verdicts: Sequence[Verdict]) -> list[str]:
+    """What a reader of the verdicts must know: the close ones, remedies, and the bases."""
+    close = sum(v.outcome == "too close to call" for v in verdicts)
+    lines = [f"{v.need}: {v.note}" for v in verdicts if v.note and v.outcome != "holds"]
+    if close:
+        lines.insert(0, f"{close} of {len(verdicts)} too close to call: not shown to be met")
+    of: dict[str, dict[str, None]] = {}
+    for v in verdicts:
+        of.setdefault(v.model_basis, {})[v.quantity] = None
+    lines += [f"model error of {', '.join(known)}: {basis}" for basis, known in of.items()]
+    return lines
 
 
 def _head(result: Result) -> list[tuple[str, str]]:

@@ -7,17 +7,19 @@ conversion outside its range, a temperature never crossed) is an empty cell.
 
 import csv
 from collections.abc import Iterable, Sequence
+from dataclasses import fields
 from pathlib import Path
 
 import numpy as np
 
-from midradius.study.result import Result
+from midradius.study.result import Result, Verdict
 from midradius.thermo.conversion import hv_to_hb, hv_to_hrc, hv_to_uts
 from midradius.thermo.phases import PHASE_NAMES
 
 HISTORIES = "histories.csv"
 PROFILE = "profile.csv"
 POSITIONS = "positions.csv"
+NEEDS = "needs.csv"
 
 _HARDNESS = [
     *("hardness_HV", "hardness_HRC", "hardness_HB"),
@@ -27,12 +29,14 @@ _AFTER_HARDNESS = ["time_800_500_s", "cooling_rate_700degC_K_per_s", "austenite_
 
 
 def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
-    """Write the three tables into an existing folder and return their paths."""
-    return (
-        _write(folder / HISTORIES, _histories(result)),
-        _write(folder / PROFILE, _profile(result)),
-        _write(folder / POSITIONS, _positions(result)),
-    )
+    """Write the tables into an existing folder and return their paths.
+
+    ``needs.csv`` is written only where the case asks for something.
+    """
+    tables = {HISTORIES: _histories, PROFILE: _profile, POSITIONS: _positions}
+    if result.verdicts:
+        tables[NEEDS] = _needs
+    return tuple(_write(folder / name, rows(result)) for name, rows in tables.items())
 
 
 def _histories(result: Result) -> Iterable[Sequence[object]]:
@@ -84,6 +88,14 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
             *(p.time_800_500_s, p.rate_700_K_per_s, p.austenite_carbon_pct),
             *(p.hardness_time_error_hv, p.hardness_grid_error_hv),
         ]
+
+
+def _needs(result: Result) -> Iterable[Sequence[object]]:
+    # Units differ by row: the one table whose unit stands in a column.
+    names = [field.name for field in fields(Verdict)]
+    yield names
+    for verdict in result.verdicts:
+        yield [getattr(verdict, name) for name in names]
 
 
 def _write(path: Path, rows: Iterable[Sequence[object]]) -> Path:
