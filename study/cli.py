@@ -15,6 +15,8 @@ import click
 from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED, NOT_MET
 from midradius.study.cli_answer import answered as _answered
 from midradius.study.cli_answer import printable as _printable
+from midradius.study.cli_diagram import diagram
+from midradius.study.cli_endquench import endquench
 from midradius.study.cli_lever import lever
 from midradius.study.cli_sources import described, sources, used_lines
 from midradius.study.cli_steels import steels
@@ -88,6 +90,8 @@ def cli() -> None:
     """
 
 
+cli.add_command(diagram)
+cli.add_command(endquench)
 cli.add_command(lever)
 cli.add_command(sources)
 cli.add_command(steels)
