@@ -39,7 +39,7 @@ def isothermal_picture(
     first = min((float(t.min()) for t in ends), default=1.0)
     last = max((float(t.max()) for t in ends), default=1e4)
     figure, axes = _sheet(metal, "isothermal transformation", height=7.0)
-    axes.set_xlim(10.0 ** np.floor(np.log10(0.5 * first)), 10.0 ** np.ceil(np.log10(last)))
+    axes.set_xlim(10.0 ** np.floor(np.log10(0.2 * first)), 10.0 ** np.ceil(np.log10(last)))
     degc = diagram.temp - ZERO_DEGC
     for name in DIFFUSIONAL:
         for k in (2, 1, 0):
@@ -61,7 +61,7 @@ def isothermal_picture(
                 ha="right",
             )
     axes.set_ylim(0.0, metal.top - ZERO_DEGC + 45.0)
-    own = f"; section: time below {next(iter(metal.critical))}" if curves else ""
+    own = f"; section: time below {metal.top - ZERO_DEGC:.0f} °C" if curves else ""
     axes.set_xlabel(f"time at temperature [s]{own}", fontsize=SIZE)
     _finish(figure, axes, metal, curves)
     return figure
@@ -74,8 +74,8 @@ def cooling_picture(metal: Soaked, diagram: Cooling, curves: SectionCurves | Non
     shown = shown_rates(diagram)
     span = np.geomspace(1.0, fall, 200)
     axes.set_xlim(
-        10.0 ** np.floor(np.log10(30.0 / shown[0])),
-        10.0 ** np.ceil(np.log10(1.2 * fall / shown[-1])),
+        10.0 ** np.floor(np.log10(20.0 / shown[0])),
+        10.0 ** np.ceil(np.log10(1.4 * fall / shown[-1])),
     )
     for rate in shown:
         axes.plot(span / rate, metal.top - ZERO_DEGC - span, color=GUIDE, lw=0.7, zorder=1.5)
@@ -91,8 +91,10 @@ def cooling_picture(metal: Soaked, diagram: Cooling, curves: SectionCurves | Non
     _foot(axes, diagram, shown, fall)
     axes.set_ylim(-175.0, metal.top - ZERO_DEGC + 45.0)
     axes.set_yticks([t for t in range(0, 1200, 100) if t < metal.top - ZERO_DEGC + 45.0])
-    start = next(iter(metal.critical))
-    axes.set_xlabel(f"time below {start} [s]; thin lines: constant cooling rate", fontsize=SIZE)
+    top = metal.top - ZERO_DEGC
+    axes.set_xlabel(
+        f"time below {top:.0f} °C [s]; thin lines: constant cooling rate", fontsize=SIZE
+    )
     _finish(figure, axes, metal, curves)
     return figure
 
@@ -176,7 +178,7 @@ def _name_start(axes: "Axes", x: Array, y: Array, product: str) -> None:
         fontsize=SIZE,
         color=BLACK,
         path_effects=[withStroke(linewidth=3.0, foreground="white")],
-        zorder=3.2,
+        zorder=3.6,
     )
 
 

@@ -150,12 +150,13 @@ def picture(test: EndQuench) -> "Figure":
     soft = z[~np.isfinite(test.hardness_hrc)]
     if soft.size:
         upper.text(
-            0.01,
-            0.02,
+            0.99,
+            0.03,
             f"below 20 HRC from {soft.min():.1f} mm on: Vickers in the table",
             transform=upper.transAxes,
             fontsize=SMALL,
             color=GUIDE,
+            ha="right",
         )
     _sixteenths(upper)
     present = [name for name in PHASE_NAMES if test.column(name).max() > _LEAST_SHARE]
