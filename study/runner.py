@@ -1,7 +1,7 @@
 """Run a case: solve, solve again coarser and finer in time, say how far to trust it."""
 
 from collections.abc import Callable, Mapping
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from functools import partial
 
 import numpy as np
@@ -58,6 +58,7 @@ FACTORS = (TIME_FACTOR, GRID_FACTOR)
 MOST_NODES = {1: 2049, 2: 12_000}
 # Above it bainite could still form on the way to room temperature [estimate].
 ENDS_HOT = 200.0 + ZERO_DEGC
+N_ERROR_TIMES = 200  # moments at which the errors are measured, stored or not
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
 Tell = Callable[[float, float], None]
@@ -147,7 +148,8 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         scout = march(
             coarse, places=at_coarse, times=np.zeros(1), tolerance=4.0 * tolerance
         ).history
-        times = _field_times(case, scout)
+        asked = _field_times(case, scout)
+        times = np.union1d(asked, _spread(scout, N_ERROR_TIMES))
         end = float(scout.step_times[-1])
         main = march(
             fine,
@@ -171,6 +173,8 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         cells = finer
     sharp = march(coarse, places=at_coarse, times=times, tolerance=TIGHTER * tolerance)
     time_error = TIME_FACTOR * float(np.abs(sharp.history.field - rough.history.field).max())
+    kept = np.isin(times, asked)
+    main = replace(main, history=replace(main.history, times=asked, field=main.history.field[kept]))
     return _result(
         case, setup, material, main, rough, sharp, at_fine, at_coarse, time_error, grid_error
     )
@@ -199,11 +203,15 @@ def _places(case: Case, cut: Cut) -> dict[str, Place]:
 
 
 def _field_times(case: Case, scout: History) -> Array:
-    """The case's times, or an even spread in the logarithm within every stage."""
-    end = float(scout.step_times[-1])
+    """The case's times, or a spread over all stages."""
     if case.outputs.field_times:
         return np.array(sorted(case.outputs.field_times))
-    count = case.outputs.n_field
+    return _spread(scout, case.outputs.n_field)
+
+
+def _spread(scout: History, count: int) -> Array:
+    """Times [s] from start to end, even in the logarithm within every stage."""
+    end = float(scout.step_times[-1])
     total = sum(stage.end - stage.start for stage in scout.stages)
     times = [0.0]
     for stage in scout.stages:
@@ -271,7 +279,9 @@ def _result(
                 medium=stage.label,
                 start_s=went.start,
                 end_s=went.end,
-                ended_by="time" if went.ended_by == "time" else f"{stage.until_place} temperature",
+                ended_by="time"
+                if went.ended_by == "time"
+                else f"{stage.until_place} below {(stage.until_temp or 0.0) - ZERO_DEGC:.4g} degC",
                 heat_to_bath_J=factor * went.heat_given,
             )
             for stage, went in zip(setup.stages, history.stages, strict=True)
