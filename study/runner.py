@@ -11,6 +11,7 @@ from midradius.fem.drawing import draw
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.route import CoolingStage, History, cool
 from midradius.fem.section import Cut, Place
+from midradius.study import uncertainty
 from midradius.study.case import Case
 from midradius.study.needs import judge
 from midradius.study.result import (
@@ -396,6 +397,7 @@ def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
     found: list[Source] = [source_of(case.steel.steel)]
     used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
+    used += [uncertainty] if case.needs else []
     for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]
     return tuple(dict.fromkeys([*found, *setup.sources]))

@@ -102,6 +102,7 @@ def test_the_verdict_of_a_run_is_arithmetic_on_its_position(
     assert verdict["value"] == pytest.approx(core["hardness_hrc"], rel=1e-12)
     assert verdict["margin"] == pytest.approx(core["hardness_hrc"] - 40.0, rel=1e-12)
     assert verdict["model_measured"] is True
+    assert "uncertainty.csv" in [source["work"] for source in said["sources"]]
     # the numerical error is that of the position, on the scale of the need
     error_hv = core["hardness_time_error_hv"] + core["hardness_grid_error_hv"]
     assert 0.0 < verdict["numerical_uncertainty"] < 0.2 * error_hv
