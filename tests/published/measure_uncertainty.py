@@ -5,8 +5,9 @@ line in the changelog. Readings: every row of ``bars.csv`` (the value itself) an
 ``end_quench_bands.csv`` (the middle of the band, which the aim composition need not
 meet: the scatter of the heats is in the figure). Rockwell C where value and result
 have one; in percent of the result's HV for every hardness; likewise tensile strength.
-Tempered: every row of ``tempered_bars.csv``. Where a row's source states none, the time
-is two hours, the bar that of a tensile piece (25 mm) and the route that of ``bars.csv``.
+Yield strength: every row of ``normalised_yield.csv``. Tempered: every row of
+``tempered_bars.csv``. Where a row's source states none, the time is two hours, the bar
+that of a tensile piece (25 mm) and the route that of ``bars.csv``.
 """
 
 import csv
@@ -40,7 +41,8 @@ BARS = "handbook bars"
 END_QUENCH = "end-quench bands"
 TEMPERED_BARS = "tempered bars"
 HOW = {
-    BARS: "whole job against readings of tests/published/bars.csv (rounds of 13 to 100 mm)",
+    BARS: "whole job against readings of tests/published/bars.csv and normalised_yield.csv"
+    " (rounds of 13 to 100 mm)",
     END_QUENCH: "whole job at the aim composition against the middle of each band of"
     " tests/published/end_quench_bands.csv",
     TEMPERED_BARS: "whole job with its temper against readings of tests/published/"
@@ -81,6 +83,14 @@ def errors() -> dict[Key, list[float]]:
         of_middle = _percent(hv, float(hrc_to_hv(middle)))
         found[kind, "hardness", "%", END_QUENCH].append(of_middle)
         found[kind, "hardness", "HRC", END_QUENCH].append(_rockwell(hv) - middle)
+    for row in endquench.rows("normalised_yield"):
+        kind = uncertainty.steel_class(grade(row["steel"]).composition)
+        result = test_bars.cooled(
+            row["steel"], float(row["soak_degC"]), "air", float(row["diameter_mm"])
+        )
+        strong = result.positions[test_bars.PLACES.index("mid-radius")].yield_mpa
+        assert strong is not None
+        found[kind, "yield", "%", BARS].append(_percent(strong, float(row["value"])))
     for row in endquench.rows("tempered_bars"):
         kind = uncertainty.steel_class(grade(row["steel"]).composition)
         place = _tempered(row).positions[0]
