@@ -5,6 +5,12 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
+
+# The ordinary run must give the same answer twice; search for new examples with
+# pytest --hypothesis-profile=default.
+settings.register_profile("same", derandomize=True, deadline=None)
+settings.load_profile("same")
 
 PUBLISHED = Path(__file__).parent / "published"
 

@@ -150,9 +150,8 @@ def wilson(share: float, points: float, level: float) -> tuple[float, float]:
     wide = 1.0 + z**2 / points
     middle = (share + z**2 / (2.0 * points)) / wide
     half = z / wide * math.sqrt(share * (1.0 - share) / points + (z / (2.0 * points)) ** 2)
-    # exact at the ends, where rounding would leave a speck
-    low = 0.0 if share == 0.0 else middle - half
-    return low, 1.0 if share == 1.0 else middle + half
+    # the exact bounds lie in 0 to 1; near the ends rounding would leave a speck outside
+    return max(middle - half, 0.0), min(middle + half, 1.0)
 
 
 def _inside(mean: float, half: float) -> tuple[float, float, list[RangeNote]]:

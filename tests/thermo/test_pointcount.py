@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from numpy.testing import assert_allclose
 from scipy import stats
@@ -119,6 +119,7 @@ def test_nineteen_of_twenty_intervals_hold_the_truth() -> None:
     assert_allclose(held / 4000, 0.95, rtol=0.0, atol=0.012)
 
 
+@example(shares=[3.5381223187420985e-120] * 2, level=0.75)
 @given(
     shares=st.lists(st.floats(0.0, 1.0), min_size=2, max_size=40),
     level=st.floats(0.5, 0.99),
