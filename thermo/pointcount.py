@@ -150,8 +150,9 @@ def wilson(share: float, points: float, level: float) -> tuple[float, float]:
     wide = 1.0 + z**2 / points
     middle = (share + z**2 / (2.0 * points)) / wide
     half = z / wide * math.sqrt(share * (1.0 - share) / points + (z / (2.0 * points)) ** 2)
-    # the exact bounds lie in 0 to 1; near the ends rounding would leave a speck outside
-    return max(middle - half, 0.0), min(middle + half, 1.0)
+    # exactly, 0 <= low <= share <= high <= 1; near the ends rounding leaves a speck outside
+    low, high = max(middle - half, 0.0), min(middle + half, 1.0)
+    return min(low, share), max(high, share)
 
 
 def _inside(mean: float, half: float) -> tuple[float, float, list[RangeNote]]:
