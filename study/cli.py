@@ -141,7 +141,9 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_source
         for line in ["\nSources", *used_lines(used(result.sources))] if with_sources else []:
             click.echo(line)
         console.print(f"\nWritten to {_printable(target)}", markup=False)
-    if any(verdict.outcome == "fails" for verdict in result.verdicts):
+    from midradius.study.needs import any_fails
+
+    if any_fails(result.verdicts):
         sys.exit(NOT_MET)
 
 
