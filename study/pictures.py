@@ -85,13 +85,26 @@ def write_pictures(result: Result, folder: Path) -> tuple[Path, ...]:
         (SECTION, section(result)),
     )
     for name, figure in drawn:
-        figure.savefig(
-            folder / name,
-            dpi=DPI,
-            metadata={"Software": "midradius"},
-            pil_kwargs={"compress_level": PACKING},
-        )
+        _save(figure, folder / name)
     return tuple(folder / name for name, _ in drawn)
+
+
+def _save(figure: "Figure", path: Path) -> None:
+    """Draw once and write; saving a figure lays it out and draws it twice."""
+    from matplotlib.image import imsave
+
+    figure.set_dpi(DPI)
+    canvas: Any = figure.canvas  # an Agg canvas, of which the library gives no types
+    canvas.draw()
+    imsave(
+        path,
+        canvas.buffer_rgba(),
+        format="png",
+        origin="upper",
+        dpi=DPI,
+        metadata={"Software": "midradius"},
+        pil_kwargs={"compress_level": PACKING},
+    )
 
 
 def cooling(result: Result) -> "Figure":
