@@ -9,14 +9,18 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from difflib import get_close_matches
 from pathlib import Path
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 from midradius.thermo.errors import InputFault
 from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Steel
 from midradius.thermo.units import parse
 
+from .calibrationfile import HeatCalibration
 from .steelfile import FileSteel
+
+if TYPE_CHECKING:
+    from midradius.thermo.calibration import Shifts
 
 Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
 StageKind = Literal["soak", "transfer", "quench", "hold", "temper"]
@@ -64,18 +68,28 @@ class Stage:
     faces: Mapping[str, MediumUse] = field(default_factory=dict)
 
 
+def _no_shifts() -> "Shifts":
+    # here, since the fit needs numpy and a case does not
+    from midradius.thermo.calibration import NONE
+
+    return NONE
+
+
 @dataclass(frozen=True)
 class SteelInput:
     """The steel, and its prior austenite grain [ASTM number] unless the soak gives it.
 
     ``file`` is where a certificate was read; ``notes`` say where it leaves the limits
-    of the grade that was ordered.
+    of the grade that was ordered. ``shifts`` are those of ``calibration`` where it is
+    given: what distinguishes this heat from its grade.
     """
 
     steel: Steel
     grain_astm: float | None = None
     file: FileSteel | None = None
     notes: tuple[RangeNote, ...] = ()
+    shifts: "Shifts" = field(default_factory=_no_shifts)
+    calibration: HeatCalibration | None = None
 
 
 @dataclass(frozen=True)

@@ -2,6 +2,7 @@
 
 import math
 import re
+from dataclasses import replace
 from pathlib import Path
 from typing import cast
 
@@ -12,6 +13,7 @@ from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS, Composition, Steel, ch
 from midradius.thermo.units import show
 
 from . import casekeys as keys
+from .calibrationfile import read_calibration, refuse_other_steel
 from .case import Form, Grid, SectionInput, SteelInput
 from .casemedium import medium_use
 from .casetable import Table, one_of
@@ -22,8 +24,33 @@ _STRANGE = "No model here knows this element: leave it out."
 
 
 def steel_input(table: Table) -> SteelInput | None:
-    """``[steel]``: a grade of the table, a composition, or a steel of a file."""
+    """``[steel]``: a grade of the table, a composition, or a steel of a file; calibrated."""
     table.only(keys.STEEL)
+    steel = _steel(table)
+    return _calibrated(table, steel) if table.has("calibration") else steel
+
+
+def _calibrated(table: Table, steel: SteelInput | None) -> SteelInput | None:
+    """The steel with the shifts of ``calibration``; one of another steel is a fault."""
+    file = table.text("calibration", 1000)
+    if file is None:
+        return steel
+    try:
+        found = read_calibration(table.notes.folder / file)
+        if steel is None:
+            return None
+        refuse_other_steel(found, steel.steel)
+    except InputFault as fault:
+        if fault.quantity in ("file", "calibration"):
+            table.fault("calibration", fault.allowed, fault.remedy)
+        else:
+            sentence = f"{file}: {fault.quantity} = {fault.value}, but must be {fault.allowed}"
+            table.refuse("calibration", sentence, fault.remedy)
+        return None
+    return replace(steel, shifts=found.shifts, calibration=found)
+
+
+def _steel(table: Table) -> SteelInput | None:
     grain = _grain(table)
     example = 'grade = "42CrMo4" or composition = { C = 0.42, Mn = 0.75 }'
     given = [key for key in keys.STEEL_FROM if table.has(key)]

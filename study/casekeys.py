@@ -17,7 +17,7 @@ LATER: Mapping[str, str] = {
     "load": "The heat of a whole load is not computed by this version: take the table out.",
     "tank": "A tank and its cooler are not computed by this version: take the table out.",
 }
-STEEL = ("grade", "composition", "file", "heat", "name", "austenite_grain")
+STEEL = ("grade", "composition", "file", "heat", "name", "austenite_grain", "calibration")
 STEEL_FROM = ("grade", "composition", "file")
 DIMENSIONS: Mapping[Form, tuple[str, ...]] = {
     "slab": ("thickness",),

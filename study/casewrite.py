@@ -55,6 +55,8 @@ def _steel(steel: SteelInput, folder: Path) -> list[str]:
     lines = _of_file(steel.file, folder) if steel.file else [_grade(steel)]
     if steel.grain_astm is not None:
         lines.append(f'austenite_grain = "ASTM {_number(steel.grain_astm)}"')
+    if steel.calibration is not None:
+        lines.append(f"calibration = {_quoted(_beside(steel.calibration.path, folder))}")
     return lines
 
 

@@ -15,6 +15,7 @@ import click
 from midradius.study.cli_answer import BAD_INPUT, DONE, INTERRUPTED, NOT_MET
 from midradius.study.cli_answer import answered as _answered
 from midradius.study.cli_answer import printable as _printable
+from midradius.study.cli_calibrate import calibrate
 from midradius.study.cli_diagram import diagram
 from midradius.study.cli_endquench import endquench
 from midradius.study.cli_lever import lever
@@ -90,6 +91,7 @@ def cli() -> None:
     """
 
 
+cli.add_command(calibrate)
 cli.add_command(diagram)
 cli.add_command(endquench)
 cli.add_command(lever)

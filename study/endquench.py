@@ -44,6 +44,7 @@ from midradius.thermo import hardenability, regressions
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenitizing import SOAK_TIME, austenitizing
 from midradius.thermo.bands import Band, band
+from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.phases import PHASE_NAMES
 from midradius.thermo.steel import Composition, Steel
 
@@ -208,8 +209,14 @@ def equivalent_distance(result: Result, test: EndQuench | None = None) -> Array:
     """
     if test is None:
         steel = Steel(result.steel, Composition(**result.composition_pct), "the result", "given")
-        test = endquench(SteelInput(steel, GRAIN_ASTM))
+        test = endquench(SteelInput(steel, GRAIN_ASTM, shifts=_shifts_of(result)))
     return distance_of(result.time_800_500_s, test)
+
+
+def _shifts_of(result: Result) -> Shifts:
+    """The shifts that a result was computed with."""
+    steel = result.inputs.get("steel")
+    return Shifts(**steel["shifts"]) if isinstance(steel, dict) and "shifts" in steel else NONE
 
 
 def distance_of(time_800_500: Array, test: EndQuench) -> Array:

@@ -27,6 +27,7 @@ from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
 from midradius.thermo import (
+    calibration,
     conversion,
     diffusional,
     embrittlement,
@@ -137,7 +138,9 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
     soak = case.route[0]
     assert soak.at is not None and soak.time is not None, "the first stage is a soak"
     left = soaking.soak(case.steel.steel, soak.at, soak.time, grain_astm=case.steel.grain_astm)
-    material = _Material(case, left, steel_tables(case.steel.steel, left), soak.at)
+    material = _Material(
+        case, left, steel_tables(case.steel.steel, left, case.steel.shifts), soak.at
+    )
     dim = len(setup.section.spans)
     tolerance = TOLERANCE_PER_ACCURACY[dim] * case.grid.accuracy
     cells = case.grid.cells or forms.cells_for(setup.section, case.grid.accuracy)
@@ -295,7 +298,8 @@ def _result(
             - ZERO_DEGC,
             "Ae1": eq.ae1 - ZERO_DEGC,
             "Bs": diffusional.bainite_start(left.composition) - ZERO_DEGC,
-            "Ms": float(martensite.start(left.composition, left.carbon_pct)) - ZERO_DEGC,
+            "Ms": float(martensite.start(left.composition, left.carbon_pct))
+            + (case.steel.shifts.martensite_start - ZERO_DEGC),
         },
         soak=_soak_text(case, left),
         heat_given_J_per_kg=history.heat_given / mass,
@@ -310,7 +314,8 @@ def _result(
         ),
         notes=_notes(case, setup, left, main),
         sources=sources_of(case, setup),
-        assumptions=setup.assumptions,
+        assumptions=setup.assumptions
+        + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=setup.cautions + main.worth.cautions,
         inputs=_inputs(case),
         case_text=case.text,
@@ -397,6 +402,7 @@ def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
     found: list[Source] = [source_of(case.steel.steel)]
     used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
+    used += [calibration] if case.steel.calibration else []
     used += [uncertainty] if case.needs else []
     for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]

@@ -71,6 +71,7 @@ def _steel() -> Schema:
                 "pattern": r"^\s*[Aa][Ss][Tt][Mm]\s*-?[0-9]{1,2}(?:\.[0-9]{1,3})?\s*$",
                 "examples": ["ASTM 7"],
             },
+            "calibration": _text("File of `midradius calibrate --save`, of this heat.", 1000),
         },
         (),
     )

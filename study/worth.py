@@ -64,6 +64,8 @@ def worth(case: Case, austenite: Austenite, history: History) -> Worth:
         ae1=ae1,
         grain_intercept=austenite.grain_mean_intercept,
     )
+    as_quenched = as_quenched + case.steel.shifts.hardness
+    by_phase = by_phase + case.steel.shifts.hardness
     tempers = tempers_of(case)
     left = _tempered(history.phases, by_phase, as_quenched, case, tempers)
     return Worth(

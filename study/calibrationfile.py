@@ -1,0 +1,213 @@
+"""The calibration of one heat as a TOML file: written once, read back by a case.
+
+The file says which steel it is for; a case with another steel is refused. A standard
+error that is not given belongs to a shift that the measurement could not tell.
+"""
+
+import math
+import tomllib
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from midradius.thermo.errors import InputFault
+from midradius.thermo.steel import ELEMENTS, Composition, Steel
+
+if TYPE_CHECKING:
+    from midradius.thermo.calibration import Shifts
+
+LARGEST = 100_000  # bytes
+FORMAT = 1
+OWN_COMPOSITION = "own composition"  # of a case: a composition without a name
+# Key of the file, attribute of `Shifts`, least and most: the bounds of the fit
+KEYS: Mapping[str, tuple[str, float, float]] = {
+    "ferrite_pearlite_time_factor": ("diffusional_time", 1.0 / 6.0, 6.0),
+    "bainite_time_factor": ("bainite_time", 1.0 / 6.0, 6.0),
+    "martensite_start_K": ("martensite_start", -50.0, 50.0),
+    "hardness_HV": ("hardness", -60.0, 60.0),
+}
+TEXTS = ("steel", "measured", "measured_sha256", "program")
+_ROUNDING = 1e-9  # of a bound that was written with all its digits
+_REMEDY = "`midradius calibrate STEEL --measured curve.csv --save heat.toml` writes one."
+
+
+@dataclass(frozen=True)
+class HeatCalibration:
+    """What a calibration file says.
+
+    ``error`` has the order of :data:`KEYS`: relative for the factors, K, HV; None for a
+    shift that was held. ``measured`` is the name of the curve's file.
+    """
+
+    path: Path
+    steel: str
+    composition: Composition
+    shifts: "Shifts"
+    error: tuple[float | None, ...]
+    measured: str
+    measured_sha256: str
+    program: str
+
+    @property
+    def text(self) -> str:
+        """What a result says of it."""
+        said = []
+        for (attribute, _, _), error, (what, unit) in zip(
+            KEYS.values(), self.error, WORDS, strict=True
+        ):
+            if error is not None:
+                said.append(shown(what, unit, getattr(self.shifts, attribute), error))
+        return (
+            f"calibration {self.path.name} ({', '.join(said)}; standard errors): it belongs to "
+            f"the one heat of {self.steel} that {self.measured} was measured on"
+        )
+
+
+WORDS = (
+    ("ferrite and pearlite time", "x"),
+    ("bainite time", "x"),
+    ("martensite start", "K"),
+    ("hardness", "HV"),
+)
+
+
+def shown(what: str, unit: str, value: float, error: float) -> str:
+    """``bainite time x 1.32 +- 8 %``, ``hardness +12 +- 3 HV``."""
+    if unit == "x":
+        return f"{what} x {value:.2f} +- {100.0 * error:.0f} %"
+    return f"{what} {value:+.1f} +- {error:.1f} {unit}"
+
+
+def refuse_other_steel(calibration: HeatCalibration, steel: Steel) -> None:
+    """A calibration serves the steel it was measured on.
+
+    Raises
+    ------
+    InputFault
+        Another composition, or another name where both have one.
+    """
+    named = OWN_COMPOSITION not in (calibration.steel, steel.name)
+    ours, theirs = (item.as_dict() for item in (steel.composition, calibration.composition))
+    apart = [
+        f"{element} {ours[element]:g} instead of {theirs[element]:g} %"
+        for element in ELEMENTS
+        if not math.isclose(ours[element], theirs[element], rel_tol=0.0, abs_tol=_ROUNDING)
+    ]
+    if named and calibration.steel != steel.name:
+        apart.insert(0, f"{steel.name} instead of {calibration.steel}")
+    if apart:
+        raise InputFault(
+            "calibration",
+            f'"{calibration.path.name}" of {calibration.steel}',
+            f"that of the steel of the case ({', '.join(apart[:4])})",
+            "Calibrate this steel with a curve of its own heat, or leave the calibration out.",
+        )
+
+
+def read_calibration(path: Path) -> HeatCalibration:
+    """The calibration of a file.
+
+    Raises
+    ------
+    InputFault
+        No such file, or one that does not hold a calibration; the first thing wrong.
+    """
+    from midradius.thermo.calibration import Shifts
+
+    data = _toml(path)
+    head = _table(data, "calibration")
+    if head.get("format") != FORMAT:
+        raise _fault("calibration.format", head.get("format"), f"{FORMAT}", _REMEDY)
+    texts = {key: head.get(key) for key in TEXTS}
+    for key, text in texts.items():
+        if not isinstance(text, str) or not (text.isprintable() and 1 <= len(text) <= 255):
+            raise _fault(f"calibration.{key}", text, "a text of one line")
+    amounts = _table(head, "composition", "calibration.")
+    for element, amount in amounts.items():
+        if element not in ELEMENTS:
+            raise _fault("calibration.composition", element, "elements in mass percent")
+        _number(f"calibration.composition.{element}", amount, 0.0, 100.0)
+    if "C" not in amounts:
+        raise _fault("calibration.composition.C", None, "given")
+    shifts = _table(data, "shifts")
+    errors = _table(data, "standard_errors")
+    for name, table in (("shifts", shifts), ("standard_errors", errors)):
+        for key in table:
+            if key not in KEYS:
+                raise _fault(name, key, f"one of {', '.join(KEYS)}")
+    values, widths = {}, []
+    for key, (attribute, low, high) in KEYS.items():
+        values[attribute] = _number(f"shifts.{key}", shifts.get(key), low, high)
+        widths.append(
+            _number(f"standard_errors.{key}", errors[key], 0.0, high) if key in errors else None
+        )
+    return HeatCalibration(
+        path=path,
+        composition=Composition(**{key: float(str(amount)) for key, amount in amounts.items()}),
+        shifts=Shifts(**values),
+        error=tuple(widths),
+        **{key: str(text) for key, text in texts.items()},
+    )
+
+
+def dumps(calibration: HeatCalibration, remarks: tuple[str, ...] = ()) -> str:
+    """The TOML text of a calibration, every figure exact; ``remarks`` become comments."""
+    amounts = calibration.composition.as_dict().items()
+    written = ", ".join(f"{element} = {amount!r}" for element, amount in amounts if amount)
+    lines = ["# Calibration of one heat. It says nothing of another heat of the grade."]
+    lines += [f"# {line}" for line in remarks]
+    lines += ["", "[calibration]", f"format = {FORMAT}"]
+    lines += [f"{key} = {_quoted(getattr(calibration, key))}" for key in TEXTS]
+    lines += [f"composition = {{ {written} }}", "", "[shifts]"]
+    for key, (attribute, _, _) in KEYS.items():
+        lines.append(f"{key} = {float(getattr(calibration.shifts, attribute))!r}")
+    lines += ["", "# Relative for the factors; one that is missing was held.", "[standard_errors]"]
+    for key, error in zip(KEYS, calibration.error, strict=True):
+        if error is not None:
+            lines.append(f"{key} = {float(error)!r}")
+    return "\n".join(lines) + "\n"
+
+
+def _toml(path: Path) -> Mapping[str, object]:
+    what = "a TOML file that `midradius calibrate --save` wrote"
+    if path.exists() and not path.is_file():
+        raise _fault("file", path.name, what, "This is no ordinary file.")
+    try:
+        with path.open("rb") as file:
+            data = file.read(LARGEST + 1)
+        if len(data) > LARGEST:
+            raise _fault("file", path.name, what, "It is larger than 100 kB.")
+        return tomllib.loads(data.decode("utf-8-sig"))
+    except FileNotFoundError:
+        raise _fault("file", path.name, what, f"There is no such file. {_REMEDY}") from None
+    except OSError as error:
+        raise _fault("file", path.name, what, f"{error.strerror or error}.") from None
+    except (ValueError, RecursionError) as error:
+        raise _fault("file", path.name, what, f"Not TOML: {error}.") from None
+
+
+def _table(data: Mapping[str, object], name: str, place: str = "") -> Mapping[str, object]:
+    found = data.get(name)
+    if not isinstance(found, dict):
+        raise _fault(place + name, found, "a table", _REMEDY)
+    return found
+
+
+def _number(name: str, value: object, low: float, high: float) -> float:
+    if isinstance(value, int | float) and not isinstance(value, bool):
+        margin = _ROUNDING * max(abs(low), abs(high))
+        if low - margin <= value <= high + margin:
+            return float(value)
+    raise _fault(name, value, f"a number, {low:.4g} to {high:.4g}")
+
+
+def _fault(name: str, value: object, allowed: str, remedy: str = "") -> InputFault:
+    text = "missing" if value is None else str(value)[:60]
+    said = "".join(c if c.isprintable() else "?" for c in text)
+    return InputFault(name, said, allowed, remedy)
+
+
+def _quoted(text: str) -> str:
+    escaped = text.replace("\\", "\\\\").replace('"', '\\"')
+    return '"' + "".join(c if c.isprintable() else "?" for c in escaped) + '"'
