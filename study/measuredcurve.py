@@ -28,8 +28,7 @@ _REMEDY = f"Begin with {_HEAD}, or distance_sixteenths_in for J positions."
 class MeasuredCurve:
     """Distance from the quenched end [mm] and hardness, (n_measured,) each, rising.
 
-    ``name`` and ``sha256`` are those of the file; ``lines`` the lines the points stand on;
-    ``blank`` counts the rows without a hardness.
+    ``name`` and ``sha256`` are those of the file; ``blank`` counts the rows without a hardness.
     """
 
     distance_mm: Array
