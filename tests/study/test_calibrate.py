@@ -255,7 +255,7 @@ def test_a_calibration_changes_the_hardness_and_the_result_names_it(
 ) -> None:
     case = read(calibrated)
     plain, shifted = run(loads(small)), run(case)
-    # alone, the offset of hardness is added to every node, tempered or not
+    # alone, the offset of hardness is added to every node as quenched
     only = replace(case, steel=replace(case.steel, shifts=replace(NONE, hardness=12.0)))
     offset = run(only)
     assert_allclose(offset.hardness_hv, plain.hardness_hv + 12.0, rtol=0.0, atol=1e-9)
