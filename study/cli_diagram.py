@@ -91,7 +91,9 @@ def diagram(
             temp = curves.soak_temp if curves else austenitizing(named.steel).temp
         if time is None:
             time = curves.soak_time if curves else SOAK_TIME
-        metal = solver.soaked(named.steel, temp=temp, time=time, grain_astm=grain_astm)
+        metal = solver.soaked(
+            named.steel, temp=temp, time=time, grain_astm=grain_astm, shifts=named.shifts
+        )
         found = solver.isothermal(metal) if kind == "isothermal" else solver.cooling(metal)
         target = folder
         if target is None and not as_json:

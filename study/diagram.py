@@ -29,6 +29,7 @@ from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import fractions, initial_state, steel_tables
 from midradius.thermo.austenite import Austenite, soak
+from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.errors import InputFault
 from midradius.thermo.kinetics import Tables, advance_node
 from midradius.thermo.phases import PHASE_NAMES
@@ -99,8 +100,17 @@ class Cooling:
     critical: Mapping[str, float]
 
 
-def soaked(steel: Steel, *, temp: float, time: float, grain_astm: float | None) -> Soaked:
+def soaked(
+    steel: Steel,
+    *,
+    temp: float,
+    time: float,
+    grain_astm: float | None,
+    shifts: Shifts = NONE,
+) -> Soaked:
     """A steel ready for its diagrams; ``temp`` [K], ``time`` [s] and grain of its soak.
+
+    ``shifts`` are those of a calibrated heat.
 
     Raises
     ------
@@ -115,9 +125,9 @@ def soaked(steel: Steel, *, temp: float, time: float, grain_astm: float | None) 
         name: float(line),
         "Ae1": float(eq.ae1),
         "Bs": diffusional.bainite_start(left.composition),
-        "Ms": float(martensite.start(left.composition, left.carbon_pct)),
+        "Ms": float(martensite.start(left.composition, left.carbon_pct)) + shifts.martensite_start,
     }
-    tables = steel_tables(steel, left)
+    tables = steel_tables(steel, left, shifts)
     top = min(temp, max(critical.values()))
     notes = [
         *range_notes(steel.composition),

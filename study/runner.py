@@ -1,7 +1,7 @@
 """Run a case: solve, solve again coarser and finer in time, say how far to trust it."""
 
 from collections.abc import Callable, Mapping
-from dataclasses import asdict, dataclass, replace
+from dataclasses import dataclass, replace
 from functools import partial
 
 import numpy as np
@@ -11,7 +11,7 @@ from midradius.fem.drawing import draw
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.route import CoolingStage, History, cool
 from midradius.fem.section import Cut, Place
-from midradius.study import uncertainty
+from midradius.study.basis import inputs_of, notes_of, sources_of
 from midradius.study.case import Case
 from midradius.study.needs import judge
 from midradius.study.result import (
@@ -23,28 +23,14 @@ from midradius.study.result import (
     TemperRecord,
 )
 from midradius.study.setup import Setup, coordinates_of, prepare
-from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
-from midradius.thermo import (
-    calibration,
-    conversion,
-    diffusional,
-    embrittlement,
-    equilibrium,
-    hardness,
-    martensite,
-    properties,
-    steel,
-    strength,
-    tempering,
-)
+from midradius.thermo import conversion, diffusional, equilibrium, martensite, properties
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import initial_state, steel_tables
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.kinetics import Tables
 from midradius.thermo.phases import PHASE_NAMES
-from midradius.thermo.source import RangeNote, Source
 
 # By dimension: error of one step against the asked accuracy of the run, and the
 # grid error against it above which the run is repeated on twice the cells. In two
@@ -58,8 +44,6 @@ TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
 GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
 FACTORS = (TIME_FACTOR, GRID_FACTOR)
 MOST_NODES = {1: 2049, 2: 12_000}
-# Above it bainite could still form on the way to room temperature [estimate].
-ENDS_HOT = 200.0 + ZERO_DEGC
 N_ERROR_TIMES = 200  # moments at which the errors are measured, stored or not
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
@@ -176,7 +160,12 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
             break
         cells = finer
     sharp = march(coarse, places=at_coarse, times=times, tolerance=TIGHTER * tolerance)
-    time_error = TIME_FACTOR * float(np.abs(sharp.history.field - rough.history.field).max())
+    # In one dimension the finer grid is cheap enough to tell its own time error.
+    loose, tight = (rough, sharp)
+    if dim == 1:
+        loose = main
+        tight = march(fine, places=at_fine, times=times, tolerance=TIGHTER * tolerance)
+    time_error = TIME_FACTOR * float(np.abs(tight.history.field - loose.history.field).max())
     kept = np.isin(times, asked)
     main = replace(main, history=replace(main.history, times=asked, field=main.history.field[kept]))
     return _result(
@@ -312,12 +301,12 @@ def _result(
         verdicts=judge(
             case, left, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS
         ),
-        notes=_notes(case, setup, left, main),
+        notes=notes_of(case, setup, left, main.history, main.worth),
         sources=sources_of(case, setup),
         assumptions=setup.assumptions
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=setup.cautions + main.worth.cautions,
-        inputs=_inputs(case),
+        inputs=inputs_of(case),
         case_text=case.text,
     )
 
@@ -368,49 +357,3 @@ def _soak_text(case: Case, left: Austenite) -> str:
     if left.cementite > 0.0:
         text += f", {100.0 * left.cementite:.1f} % cementite left"
     return text
-
-
-def _notes(case: Case, setup: Setup, left: Austenite, main: _Attempt) -> tuple[RangeNote, ...]:
-    composition, history = case.steel.steel.composition, main.history
-    found = [
-        *case.steel.notes,
-        *steel.range_notes(composition),
-        *equilibrium.range_notes(composition),
-        *left.notes,
-        *diffusional.range_notes(composition, left.carbon_pct, left.grain_astm),
-        *martensite.range_notes(left.composition),
-        *hardness.range_notes(composition, history.phases, history.rate_700),
-        *main.worth.notes,
-        *properties.range_notes(history.field, composition.C),
-        *setup.notes,
-    ]
-    hottest = float(history.temp.max())
-    if hottest > ENDS_HOT:
-        found.append(
-            RangeNote(
-                "phases at room temperature",
-                "hottest node at the end of the route",
-                f"{hottest - ZERO_DEGC:.0f} degC",
-                f"below {ENDS_HOT - ZERO_DEGC:.0f} degC (add a stage that cools further)",
-            )
-        )
-    return tuple(dict.fromkeys(found))
-
-
-def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
-    """The works that a run of the case rests on."""
-    found: list[Source] = [source_of(case.steel.steel)]
-    used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
-    used += [strength, tempering, embrittlement] if case.tempers else [strength]
-    used += [calibration] if case.steel.calibration else []
-    used += [uncertainty] if case.needs else []
-    for module in used:
-        found += getattr(module, "SOURCES", ()) or [module.SOURCE]
-    return tuple(dict.fromkeys([*found, *setup.sources]))
-
-
-def _inputs(case: Case) -> dict[str, object]:
-    resolved = asdict(case)
-    resolved.pop("text")
-    resolved["path"] = case.path.name if case.path else None
-    return resolved

@@ -80,7 +80,7 @@ def of_case(case: Case) -> tuple[Used, ...]:
     InputFault
         As the run itself, for what it can say before it solves.
     """
-    from midradius.study.runner import sources_of
+    from midradius.study.basis import sources_of
     from midradius.study.setup import prepare
 
     return used(sources_of(case, prepare(case)))
