@@ -106,7 +106,8 @@ def _soak(table: Table, steel: SteelInput | None) -> Stage | None:
         table.missing("at", allowed)
     if not table.has("time"):
         table.missing("time", "a duration", 'Write for example time = "2 h".')
-    if at is not None and not low < at <= high:
+    too_cold = at is not None and (at <= low if steel else at < low)
+    if at is not None and (too_cold or at > high):
         table.fault("at", allowed, remedy if at <= low else "")
         return None
     if at is None or time is None:
