@@ -208,8 +208,8 @@ class Run:
         )
         control = Control(
             end=float(clock[march.TIME] + duration),
-            tolerance=tolerance,
-            bend=10.0 * tolerance,
+            tolerance=float(tolerance),  # a whole number would compile everything anew
+            bend=10.0 * float(tolerance),
             longest=float(longest),
             limit_node=np.empty(0, dtype=np.int64) if until is None else until.node,
             limit_share=np.empty(0) if until is None else until.share,

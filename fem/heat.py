@@ -146,6 +146,7 @@ def heat_rate(
     else:
         k = _cell(skin.source_moment, now)
         share = (now - skin.source_moment[k]) / (skin.source_moment[k + 1] - skin.source_moment[k])
+        share = min(share, 1.0)  # the ends hold, as they do for an ambient
         for i in range(len(temp)):
             source = skin.source[k, i] + share * (skin.source[k + 1, i] - skin.source[k, i])
             rate[i] = body.volume[i] * source

@@ -308,6 +308,15 @@ def _cycle(grid: Aggregates, load: Array, out: Array) -> None:
 
 
 @kernel
+def _product(one: Array, other: Array) -> float:
+    """Scalar product; the library's own wakes threads that wait for each other."""
+    total: float = 0.0
+    for i in range(len(one)):
+        total += one[i] * other[i]
+    return total
+
+
+@kernel
 def _gradients(
     grid: Aggregates, excess: Array, weight: Array, rhs: Array, out: Array, accuracy: float
 ) -> int:
@@ -322,7 +331,7 @@ def _gradients(
     _cycle(grid, rest, fixed)
     for i in range(n):
         step[i] = fixed[i]
-    gain = np.dot(rest, fixed)
+    gain = _product(rest, fixed)
     if gain <= 0.0:
         return 0
     held = 0.0
@@ -336,7 +345,7 @@ def _gradients(
             flow = weight[e] * (step[i] - step[j])
             image[i] += flow
             image[j] -= flow
-        length = gain / np.dot(step, image)
+        length = gain / _product(step, image)
         most = 0.0
         for i in range(n):
             move = length * step[i]
@@ -344,7 +353,7 @@ def _gradients(
             rest[i] -= length * image[i]
             most = max(most, abs(move))
         _cycle(grid, rest, fixed)
-        fresh = np.dot(rest, fixed)
+        fresh = _product(rest, fixed)
         # A smooth error moves little in one iteration; its energy shows it.
         if fresh <= 0.0 or (most < accuracy and fresh < held * accuracy * accuracy):
             return iteration + 1

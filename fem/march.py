@@ -54,7 +54,7 @@ def _mark(marks: Array, start: float, step: float, first: float, middle: float, 
     b = end - first - c
     for k in range(3):
         level = MARKS_K[k]
-        if marks[k] >= 0.0 or end > level or first <= level:
+        if marks[k] >= 0.0 or end > level or first < level or end >= first:
             continue
         gap = level - first
         root = b * b + 4.0 * c * gap

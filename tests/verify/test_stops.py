@@ -67,6 +67,15 @@ def test_a_stage_stops_within_a_hundredth_of_a_kelvin_of_its_limit(
     assert_allclose(run.time, lump_time(limit), rtol=0.0, atol=error)
 
 
+def test_a_node_that_starts_on_a_mark_is_marked_when_it_leaves_it() -> None:
+    marks = np.full(march.N_MARK, -1.0)
+    level = march.MARKS_K[0]
+    march._mark(marks, 0.0, 1.0, level, level, level)  # it stands still: nothing yet
+    assert marks[0] == -1.0
+    march._mark(marks, 7.0, 1.0, level, level - 0.5, level - 1.0)
+    assert_allclose(marks[0], 7.0, rtol=0.0, atol=1e-12)
+
+
 def test_a_stage_stops_where_two_nodes_share_the_limit() -> None:
     body = line(axis(0.0, 0.05, 64, fine="high", first=5e-4, low=None, high="face"), "slab")
     stuff = constant(k=30.0, density=DENSITY, cp=CP)
