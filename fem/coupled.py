@@ -11,7 +11,7 @@ from midradius.fem.linear import Scheme, scheme
 from midradius.fem.volumes import ControlVolumes
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import SolverFault
-from midradius.thermo.kinetics import COLDEST, Tables, enthalpy_node
+from midradius.thermo.kinetics import COLDEST, N_SCALE, Tables, enthalpy_node
 
 HISTORY_ROWS = 512  # accepted steps between two looks at the outside world
 NEVER_MARKED = -1.0
@@ -75,7 +75,7 @@ class Run:
     field_times
         When to keep the whole field [s], ascending.
     scale
-        Factors on the rates of ferrite, pearlite and bainite, (n_node, 3).
+        Factors on the rates of ferrite, pearlite, bainite and cementite, (n_node, N_SCALE).
     """
 
     def __init__(
@@ -113,7 +113,7 @@ class Run:
             older=np.array(temp, dtype=np.float64),
             book=np.zeros(n),
             state=np.array(state, dtype=np.float64),
-            scale=np.ones((n, 3)) if scale is None else np.array(scale, dtype=np.float64),
+            scale=np.ones((n, N_SCALE)) if scale is None else np.array(scale, dtype=np.float64),
             carbon=np.full(n, carbon_pct),
             zone_heat=np.zeros(max(len(body.zones), 1)),
             marks=np.full((n, march.N_MARK), NEVER_MARKED),
@@ -196,7 +196,7 @@ class Run:
         clock = self.progress.clock
         if until is not None and (self.progress.temp[until.node] * until.share).sum() <= until.temp:
             return "limit"
-        grid = self.tables.first + self.tables.step * np.arange(len(self.tables.value))
+        grid = self.tables.first + self.tables.step * np.arange(self.tables.value.shape[1])
         n_node = self._volumes.n_node
         skin = Skin(
             htc=np.array([np.interp(grid, around.film_temp, row) for row in around.film_htc]),

@@ -193,7 +193,7 @@ def _austenite_before(metal: Soaked) -> float:
 def _held(metal: Soaked, hold: float, time: Array) -> tuple[Array, Array]:
     """What each diffusional product has grown to at each time, (n_time, 4), and the state."""
     state = _start(metal)
-    scale = np.ones(3)
+    scale = np.ones(kin.N_SCALE)
     before = state[0, :4].copy()
     advance_node(state[0], metal.soak_temp, hold, 0.0, scale, metal.tables)
     grown = np.empty((len(time), 4))
@@ -207,7 +207,7 @@ def _cooled(metal: Soaked, rate: float) -> tuple[Array, Array, Array]:
     """Temperatures, what each product has grown to at them, (n_temp, 5), and the state."""
     temp = np.linspace(metal.top, ROOM, int((metal.top - ROOM) / COOL_K) + 1)
     state = _start(metal)
-    scale = np.ones(3)
+    scale = np.ones(kin.N_SCALE)
     before = state[0, :5].copy()
     advance_node(state[0], metal.soak_temp, metal.top, 0.0, scale, metal.tables)
     grown = np.zeros((len(temp), 5))

@@ -4,7 +4,7 @@ The enthalpies are linearised in carbon about the carbon of the austenite; the
 mixture of ferrite and cementite is exactly linear.
 """
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from functools import cache
 
 import numpy as np
@@ -94,17 +94,27 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
         | (value[:, kin.LIMIT_CEMENTITE] > 0.0)
     )
     return Tables(
-        value=value,
+        value=value[None],
         first=COLDEST_K,
         step=GRID_K,
         clock=fraction,
         back=back,
         whole=whole,
-        start=np.array(martensite.start_coefficients(austenite.composition))
+        start=np.array([martensite.start_coefficients(austenite.composition)])
         + np.array([shifts.martensite_start, 0.0, 0.0]),
-        rate=np.array(martensite.rate_coefficients(austenite.composition)),
+        rate=np.array([martensite.rate_coefficients(austenite.composition)]),
         top=float(temp[active].max() + GRID_K),
         transforms=True,
+    )
+
+
+def stacked(kinds: Sequence[Tables]) -> Tables:
+    """One table set of several austenites of a steel; a state's KIND counts from 0."""
+    return kinds[0]._replace(
+        value=np.concatenate([kind.value for kind in kinds]),
+        start=np.concatenate([kind.start for kind in kinds]),
+        rate=np.concatenate([kind.rate for kind in kinds]),
+        top=max(kind.top for kind in kinds),
     )
 
 
@@ -144,14 +154,14 @@ def inert_tables(
     value[:, kin.K_AUSTENITE] = conductivity(temp)
     fraction, back, whole = _clock_tables()
     return Tables(
-        value=value,
+        value=value[None],
         first=first,
         step=step,
         clock=fraction,
         back=back,
         whole=whole,
-        start=np.array([NEVER_K, 0.0, 0.0]),
-        rate=np.array([0.0, 0.0, 0.0]),
+        start=np.array([[NEVER_K, 0.0, 0.0]]),
+        rate=np.zeros((1, 3)),
         top=NEVER_K,
         transforms=False,
     )

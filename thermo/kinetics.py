@@ -34,9 +34,11 @@ from midradius.thermo.compiled import kernel
 
 # Columns of a node's state. Fractions are by mass; carbon is an inventory in
 # mass % of the whole, so the austenite holds STATE_CARBON_AUSTENITE / austenite.
+# KIND says which of the austenites of the tables the node became in its soak.
 FERRITE, CEMENTITE, PEARLITE, BAINITE, MARTENSITE = range(5)
-CARBON_AUSTENITE, CARBON_MARTENSITE, COLDEST, PEARLITE_HEAT = range(5, 9)
-N_STATE = 9
+CARBON_AUSTENITE, CARBON_MARTENSITE, COLDEST, PEARLITE_HEAT, KIND = range(5, 10)
+N_STATE = 10
+N_SCALE = 4  # factors of a node on the rates of ferrite, pearlite, bainite and cementite
 
 # Columns of the table.
 (
@@ -67,10 +69,11 @@ LONGEST_STRIDE = 5.0  # K of temperature that one pass over the products may cov
 class Tables(NamedTuple):
     """One steel as the kernel sees it.
 
-    ``value`` (n_temp, n_column) on the even grid ``first + i * step`` [K];
+    ``value`` (n_kind, n_temp, n_column) on the even grid ``first + i * step`` [K],
+    one kind for each austenite that the soak left in the section;
     ``clock`` (n_clock,) the fraction at even values of S from 0 to ``whole``;
     ``back`` (n_back,) S at even values of the square root of the fraction;
-    martensite start [K] and rate [1/K] as ``a - b (1 - exp(-c C))``.
+    martensite ``start`` [K] and ``rate`` [1/K] as ``a - b (1 - exp(-c C))``, (n_kind, 3).
     """
 
     value: Array
@@ -155,7 +158,8 @@ def advance(
     span
         Duration [s].
     scales
-        Factors on the rates of ferrite, pearlite and bainite, shape (n_node, 3).
+        Factors on the rates of ferrite, pearlite, bainite and cementite,
+        shape (n_node, N_SCALE).
     tables
         The steel.
     backward
@@ -173,7 +177,8 @@ def advance(
     if austenite <= NOTHING_LEFT or not tables.transforms:
         states[node, COLDEST] = min(states[node, COLDEST], to_temp)
         return 0.0
-    value = tables.value
+    kind = int(states[node, KIND])
+    value, start_of, rate_of = tables.value[kind], tables.start[kind], tables.rate[kind]
     last = value.shape[0] - 2
     stride = to_temp - from_temp
     n_pass = 1 + int(abs(stride) / LONGEST_STRIDE)
@@ -225,7 +230,8 @@ def advance(
                 limit = min(_at(value, row, share, LIMIT_CEMENTITE), present + austenite)
                 if limit > present:
                     rate = _at(value, row, share, RATE_CEMENTITE)
-                    filled = 1.0 - (1.0 - (present / limit) ** 2) * np.exp(-rate * part)
+                    ticks = rate * scales[node, 3] * part
+                    filled = 1.0 - (1.0 - (present / limit) ** 2) * np.exp(-ticks)
                     more = limit * np.sqrt(filled) - present
                     if more > 0.0:
                         states[node, CEMENTITE] += more
@@ -237,9 +243,9 @@ def advance(
         reached = from_temp + (lap + 1.0) / n_pass * stride
         if reached < states[node, COLDEST]:
             carbon = states[node, CARBON_AUSTENITE] / austenite
-            start = tables.start[0] - tables.start[1] * (1.0 - np.exp(-tables.start[2] * carbon))
+            start = start_of[0] - start_of[1] * (1.0 - np.exp(-start_of[2] * carbon))
             if reached < start:
-                speed = tables.rate[0] - tables.rate[1] * (1.0 - np.exp(-tables.rate[2] * carbon))
+                speed = rate_of[0] - rate_of[1] * (1.0 - np.exp(-rate_of[2] * carbon))
                 under = min(start, states[node, COLDEST]) - reached
                 more = austenite * -np.expm1(-speed * under)
                 states[node, MARTENSITE] += more
@@ -257,9 +263,9 @@ def advance(
 def advance_node(
     state: Array, from_temp: float, to_temp: float, span: float, scale: Array, tables: Tables
 ) -> float:
-    """`advance` for a single state, shape (N_STATE,), with its own ``scale`` (3,)."""
+    """`advance` for a single state, shape (N_STATE,), with its own ``scale`` (N_SCALE,)."""
     one = state.reshape(1, N_STATE)
-    return advance(one, 0, from_temp, to_temp, span, scale.reshape(1, 3), tables, False)
+    return advance(one, 0, from_temp, to_temp, span, scale.reshape(1, N_SCALE), tables, False)
 
 
 @kernel
@@ -275,7 +281,7 @@ def enthalpy_node(
     carbon_a = state[CARBON_AUSTENITE]
     carbon_m = state[CARBON_MARTENSITE]
     carbon_rest = initial_carbon - carbon_a - carbon_m
-    value = tables.value
+    value = tables.value[int(state[KIND])]
     grid = (temp - tables.first) / tables.step
     row = min(max(int(grid), 0), value.shape[0] - 2)
     share = grid - row

@@ -156,7 +156,7 @@ def right_hand_side_with_steel(  # type: ignore[no-untyped-def]
     mass = body.volume * DENSITY
     n = len(mass)
     tail, head = body.edge[:, 0], body.edge[:, 1]
-    value, first, step = tables.value, tables.first, tables.step
+    value, first, step = tables.value[0], tables.first, tables.step
     seed = 1e-5
 
     def slope(_time: float, y: Array) -> Array:
@@ -189,9 +189,9 @@ def right_hand_side_with_steel(  # type: ignore[no-untyped-def]
         h_a = at[:, kin.H_AUSTENITE] + carbon * at[:, kin.H_AUSTENITE_C]
         h_f = at[:, kin.H_FERRITE] + carbon * at[:, kin.H_FERRITE_C]
         h_m = at[:, kin.H_MARTENSITE] + carbon * at[:, kin.H_MARTENSITE_C]
-        a, bb, c = tables.start
+        a, bb, c = tables.start[0]
         start = a - bb * (1.0 - np.exp(-c * carbon))
-        a, bb, c = tables.rate
+        a, bb, c = tables.rate[0]
         speed = np.where(temp < start, (a - bb * (1.0 - np.exp(-c * carbon))) * austenite, 0.0)
         k = (
             austenite * at[:, kin.K_AUSTENITE] + rest * at[:, kin.K_FERRITE]

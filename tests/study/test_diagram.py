@@ -46,7 +46,7 @@ def cooled(name: str = "4140") -> Cooling:
 def test_bainite_alone_takes_the_time_of_its_rate_equation() -> None:
     # where nothing else forms: t = S(X) / rate, S by quadrature
     steel, diagram = metal(), held()
-    column = steel.tables.value[:, kin.RATE_BAINITE]
+    column = steel.tables.value[0, :, kin.RATE_BAINITE]
     at = int(np.argmax(diagram.reached[4]))
     assert diagram.reached[4, at] > 0.999
     rate = np.interp(

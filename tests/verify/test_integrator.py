@@ -26,8 +26,8 @@ BODY = line(axis(0.0, RADIUS, 20, fine="high", first=8e-4, low=None, high="side"
 def independent() -> Array:
     """Temperatures [K] at all times and nodes."""
     tables = STEEL.tables
-    grid = tables.first + tables.step * np.arange(len(tables.value))
-    heat, conductivity = tables.value[:, kin.H_AUSTENITE], tables.value[:, kin.K_AUSTENITE]
+    grid = tables.first + tables.step * np.arange(tables.value.shape[1])
+    heat, conductivity = tables.value[0, :, kin.H_AUSTENITE], tables.value[0, :, kin.K_AUSTENITE]
     mass = BODY.volume * STEEL.density
     (surface,), (area,) = BODY.face_node, BODY.face_area
 
