@@ -36,6 +36,7 @@ from midradius.thermo.errors import InputFault
 
 UNIT_ENDINGS = (
     "_K_per_s",
+    "_code",
     "_degC",
     "_fraction",
     "_HV",
@@ -43,6 +44,7 @@ UNIT_ENDINGS = (
     "_mm",
     "_pct",
     "_s",
+    "_um",
 )
 INDEX = "fields.pvd"
 FINAL = "final.vtu"

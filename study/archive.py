@@ -17,9 +17,11 @@ from midradius.fem.record import Quantity, provenance, write_record
 from midradius.fem.volumes import EXTENT
 from midradius.study.result import Result
 from midradius.study.summary import jsonable
+from midradius.thermo import network
 from midradius.thermo.phases import PHASE_NAMES
 
 RECORD = "record.h5"
+CODES = "cementite network: " + ", ".join(f"{k} {name}" for k, name in enumerate(network.NAMES))
 _EXTENT: Mapping[str, str] = EXTENT
 
 
@@ -38,7 +40,13 @@ def write_fields(result: Result, folder: Path) -> Path:
         "cooling_rate_700degC_K_per_s": result.rate_700_K_per_s[node],
         "austenite_carbon_pct": result.austenite_carbon_pct[node],
         "pearlite_formed_at_degC": result.pearlite_formed_at_degC[node],
+        "ferrite_grain_um": result.ferrite_grain_um[node],
+        "pearlite_spacing_um": result.pearlite_spacing_um[node],
+        "impact_transition_degC": result.impact_transition_degC[node],
     }
+    if np.isfinite(result.cementite_film_um).any():
+        at_end["cementite_film_um"] = result.cementite_film_um[node]
+        at_end["cementite_network_code"] = result.cementite_network[node].astype(np.float64)
     return write_series(
         folder,
         points_mm=result.view.points_mm,
@@ -92,6 +100,19 @@ def _numbers(result: Result) -> dict[str, Quantity]:
         "fields/pearlite_formed_at": many(
             r.pearlite_formed_at_degC, "degC", "mean temperature at which pearlite formed"
         ),
+        "fields/ferrite_grain": many(r.ferrite_grain_um, "um", "ferrite grain diameter as cooled"),
+        "fields/pearlite_spacing": many(
+            r.pearlite_spacing_um, "um", "interlamellar spacing of pearlite as cooled"
+        ),
+        "fields/cementite_film": many(
+            r.cementite_film_um, "um", "cementite on grain faces, nan unless hypereutectoid"
+        ),
+        "fields/cementite_network": many(r.cementite_network, "1", CODES),
+        "fields/impact_transition": many(
+            r.impact_transition_degC,
+            "degC",
+            "27 J transition of ferrite with pearlite, nan outside",
+        ),
         "histories/time": many(r.history_times_s, "s", "times of the histories"),
         "histories/temperature": many(r.history_temp_degC, "degC", "temperature (time, position)"),
         "profile/depth": many(r.profile.depth_mm, "mm", f"depth, {r.profile.label}"),
@@ -123,6 +144,10 @@ _POSITION_COLUMNS = (
     ("time_800_500_s", "s", "time from 800 to 500 degC"),
     ("rate_700_K_per_s", "K/s", "cooling rate at 700 degC"),
     ("austenite_carbon_pct", "mass percent", "carbon in the austenite left"),
+    ("ferrite_grain_um", "um", "ferrite grain diameter as cooled"),
+    ("pearlite_spacing_um", "um", "interlamellar spacing of pearlite as cooled"),
+    ("cementite_film_um", "um", "cementite on grain faces, nan unless hypereutectoid"),
+    ("impact_transition_degC", "degC", "27 J transition of ferrite with pearlite"),
     ("hardness_time_error_hv", "HV", "estimated hardness error of the time steps"),
     ("hardness_grid_error_hv", "HV", "estimated hardness error of the grid"),
 )
@@ -142,6 +167,7 @@ def _texts(result: Result) -> dict[str, str]:
         "positions_json": _json(
             [{"name": p.name, "coordinates_mm": p.coordinates_mm} for p in result.positions]
         ),
+        "position_network_json": _json([p.cementite_network for p in result.positions]),
         "position_phases_json": _json([dict(p.phases) for p in result.positions]),
         "stages_json": _json([asdict(stage) for stage in result.stages]),
         "tempers_json": _json([asdict(temper) for temper in result.tempers]),

@@ -18,10 +18,12 @@ from midradius.thermo import (
     equilibrium,
     hardness,
     martensite,
+    network,
     properties,
     steel,
     strength,
     tempering,
+    toughness,
 )
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.source import RangeNote, Source
@@ -65,6 +67,10 @@ def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
     found: list[Source] = [source_of(case.steel.steel)]
     used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
+    composition = case.steel.steel.composition
+    rich = equilibrium.equilibrium(composition).eutectoid_carbon_pct < composition.C
+    used += [network] if rich else []
+    used += [toughness] if toughness.applies(composition) else []
     used += [calibration] if case.steel.calibration else []
     used += [uncertainty] if case.needs else []
     for module in used:

@@ -32,7 +32,7 @@ from midradius.study.worth import Worth
 from midradius.thermo import conversion
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
-from midradius.thermo.phases import CEMENTITE, MARTENSITE, PHASE_NAMES
+from midradius.thermo.phases import MARTENSITE, PHASE_NAMES
 
 MPA_PER_KSI = 6.894757293168361
 HOLDS: Outcome = "holds"
@@ -182,7 +182,7 @@ def _of_field(run: _Run, need: Need) -> Verdict:
     limits = _Limits(need.at_least, need.at_most)
 
     def field(solution: Solution) -> Array:
-        return _field(run, need, solution)
+        return _field(need, solution)
 
     def read(solution: Solution, places: Mapping[str, Place]) -> float:
         return _value(need, solution, places, field(solution), limits)
@@ -202,15 +202,12 @@ def _of_field(run: _Run, need: Need) -> Verdict:
     return _with_remedy(run, need, verdict, answer, limits)
 
 
-def _field(run: _Run, need: Need, solution: Solution) -> Array:
+def _field(need: Need, solution: Solution) -> Array:
     worth = solution.worth
     if need.quantity == "yield":
         return worth.yield_mpa / (MPA_PER_KSI if need.unit == "ksi" else 1.0)
     if need.quantity == keys.FILM:
-        # Faces of 2/l per volume, l the mean intercept; what the soak left is spheroids.
-        # By mass, which is by volume within 2 %.
-        on_faces = np.maximum(worth.phases[CEMENTITE] - run.austenite.cementite, 0.0)
-        return np.asarray(1e6 * on_faces * run.austenite.grain_mean_intercept / 2.0)
+        return 1e6 * worth.scales.cementite_film
     return np.asarray(100.0 * worth.phases[PHASE_NAMES.index(need.quantity)])
 
 

@@ -34,7 +34,9 @@ class Position:
     ``hardness_hrc`` and ``hardness_hb`` are None where the conversion does not
     hold; times and rates are None where the place never crossed the range. Without a
     temper ``hardness_as_quenched_hv`` equals ``hardness_hv``; ``yield_mpa`` is None where
-    its hardened part is outside 147 to 656 HV.
+    its hardened part is outside 147 to 656 HV. Lengths are those as cooled, None where there
+    is too little of the constituent; film and network of `thermo.network`, None for a steel
+    that is not hypereutectoid; ``impact_transition_degC`` is None outside its relation.
     ``depth_mm`` counts from the nearest cooled surface.
     """
 
@@ -51,6 +53,11 @@ class Position:
     time_800_500_s: float | None
     rate_700_K_per_s: float | None
     austenite_carbon_pct: float
+    ferrite_grain_um: float | None
+    pearlite_spacing_um: float | None
+    cementite_film_um: float | None
+    cementite_network: str | None
+    impact_transition_degC: float | None
     hardness_time_error_hv: float
     hardness_grid_error_hv: float
 
@@ -118,7 +125,9 @@ class Result:
 
     Shapes: ``times_s`` (n_time,), ``temp_degC`` (n_time, n_node), ``phases``
     (n_phase, n_node) after all tempers, other fields (n_node,), ``history_times_s`` (n_step,),
-    ``history_temp_degC`` (n_step, n_position).
+    ``history_temp_degC`` (n_step, n_position). ``cementite_film_um`` is nan and
+    ``cementite_network``, a code of `thermo.network.NAMES`, is 0 for a steel that is not
+    hypereutectoid.
     """
 
     title: str
@@ -139,6 +148,11 @@ class Result:
     rate_700_K_per_s: Array
     austenite_carbon_pct: Array
     pearlite_formed_at_degC: Array
+    ferrite_grain_um: Array
+    pearlite_spacing_um: Array
+    cementite_film_um: Array
+    cementite_network: IntArray
+    impact_transition_degC: Array
     history_times_s: Array
     history_temp_degC: Array
     positions: tuple[Position, ...]

@@ -25,7 +25,7 @@ from midradius.study.result import (
 from midradius.study.setup import Setup, coordinates_of, prepare
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
-from midradius.thermo import conversion, diffusional, equilibrium, martensite, properties
+from midradius.thermo import conversion, diffusional, equilibrium, martensite, network, properties
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import initial_state, steel_tables
 from midradius.thermo.austenite import Austenite
@@ -262,6 +262,11 @@ def _result(
         rate_700_K_per_s=history.rate_700,
         austenite_carbon_pct=history.carbon_austenite_pct,
         pearlite_formed_at_degC=history.pearlite_temp - ZERO_DEGC,
+        ferrite_grain_um=1e6 * main.worth.scales.ferrite_grain,
+        pearlite_spacing_um=1e6 * main.worth.scales.pearlite_spacing,
+        cementite_film_um=_film_um(main.worth),
+        cementite_network=main.worth.scales.network,
+        impact_transition_degC=main.worth.scales.impact_transition - ZERO_DEGC,
         history_times_s=history.step_times,
         history_temp_degC=history.watch_temp - ZERO_DEGC,
         positions=positions,
@@ -320,7 +325,8 @@ def _position(
     hv = here(main.worth.hardness_hv, at)
     hv_rough = here(rough.worth.hardness_hv, at_coarse)
     hv_sharp = here(sharp.worth.hardness_hv, at_coarse)
-    history = main.history
+    history, sizes = main.history, main.worth.scales
+    film = here(_film_um(main.worth), at)
     phases = {phase: here(main.worth.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
     return Position(
         name=name,
@@ -336,9 +342,21 @@ def _position(
         time_800_500_s=_known(here(history.time_800_500, at)),
         rate_700_K_per_s=_known(here(history.rate_700, at)),
         austenite_carbon_pct=here(history.carbon_austenite_pct, at),
+        ferrite_grain_um=_known(1e6 * here(sizes.ferrite_grain, at)),
+        pearlite_spacing_um=_known(1e6 * here(sizes.pearlite_spacing, at)),
+        cementite_film_um=_known(film),
+        cementite_network=(
+            network.NAMES[int(network.network(np.array(1e-6 * film)))] if film == film else None
+        ),
+        impact_transition_degC=_known(here(sizes.impact_transition, at) - ZERO_DEGC),
         hardness_time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
         hardness_grid_error_hv=GRID_FACTOR * abs(hv - hv_rough),
     )
+
+
+def _film_um(value: Worth) -> Array:
+    film = 1e6 * value.scales.cementite_film
+    return film if value.scales.hypereutectoid else np.full_like(film, np.nan)
 
 
 def _known(value: float) -> float | None:

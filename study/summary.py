@@ -11,6 +11,7 @@ from dataclasses import asdict
 from importlib import metadata
 from typing import TYPE_CHECKING, Any, Literal
 
+from midradius.study.lengthtable import lengths, remark
 from midradius.study.needs import shown
 from midradius.study.result import Position, Result, Verdict
 from midradius.thermo.phases import PHASE_NAMES
@@ -133,11 +134,13 @@ def terminal(result: Result, console: "Console") -> None:
     console.print(_text(result.title or "untitled case", "bold"))
     _needs(result, console)
     console.print(_pairs(_head(result)))
+    heads, sizes = lengths(result)
     for heading, table in (
         ("Route", _route(result)),
         *([("As quenched", _as_quenched(result))] if result.tempers else []),
         ("Result, tempered" if result.tempers else "Result", _properties(result)),
         ("Microstructure, % by mass", _phases(result)),
+        *([("Lengths as cooled", _table(["position", *heads], sizes, left={0}))] if heads else []),
     ):
         console.print(Text(f"\n{heading}", "bold"))
         console.print(table)
@@ -277,6 +280,8 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
     if count:
         estimates = f"{estimated} estimate{'s' * (estimated != 1)}"
         rows.append(("sources", f"{count} models; {remembered} from memory, {estimates}"))
+    if remark(result):
+        rows.append(("flag", remark(result)))
     if not result.notes:
         rows.append(("ranges", "every model was used inside the range of its source"))
     return rows

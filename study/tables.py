@@ -26,6 +26,8 @@ _HARDNESS = [
     *("tensile_strength_MPa", "yield_strength_MPa", "hardness_as_quenched_HV"),
 ]
 _AFTER_HARDNESS = ["time_800_500_s", "cooling_rate_700degC_K_per_s", "austenite_carbon_pct"]
+_SCALES = ["ferrite_grain_um", "pearlite_spacing_um", "cementite_film_um", "cementite_network"]
+_TRANSITION = "impact_transition_degC"
 
 
 def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
@@ -60,12 +62,18 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         result.time_800_500_s[node],
         result.rate_700_K_per_s[node],
         result.austenite_carbon_pct[node],
+        result.ferrite_grain_um[node],
+        result.pearlite_spacing_um[node],
+        result.cementite_film_um[node],
+        result.impact_transition_degC[node],
     ]
     yield [
         "depth_mm",
         *(f"{name}_fraction" for name in PHASE_NAMES),
         *_HARDNESS,
         *_AFTER_HARDNESS,
+        *_SCALES[:3],
+        _TRANSITION,
     ]
     for row in np.column_stack(columns):
         yield [float(value) for value in row]
@@ -77,6 +85,8 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
         *_HARDNESS,
         *(f"{name}_fraction" for name in PHASE_NAMES),
         *_AFTER_HARDNESS,
+        *_SCALES,
+        _TRANSITION,
         *("hardness_time_error_HV", "hardness_grid_error_HV"),
     ]
     for p in result.positions:
@@ -86,6 +96,8 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
             *(p.tensile_mpa, p.yield_mpa, p.hardness_as_quenched_hv),
             *(p.phases.get(name, 0.0) for name in PHASE_NAMES),
             *(p.time_800_500_s, p.rate_700_K_per_s, p.austenite_carbon_pct),
+            *(p.ferrite_grain_um, p.pearlite_spacing_um, p.cementite_film_um),
+            *(p.cementite_network, p.impact_transition_degC),
             *(p.hardness_time_error_hv, p.hardness_grid_error_hv),
         ]
 

@@ -7,6 +7,7 @@ import numpy as np
 
 from midradius.fem.route import History
 from midradius.study.case import Case
+from midradius.study.scale import Scales, scales
 from midradius.thermo import embrittlement, equilibrium, hardness, strength, tempering
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
@@ -25,12 +26,14 @@ from midradius.thermo.tempering import Temper, Tempered
 @dataclass(frozen=True)
 class Worth:
     """Of every node: fractions (n_phase, n_node), hardness before and after the tempers
-    [HV] and yield strength [MPa], (n_node,) each; what the models say beside it."""
+    [HV] and yield strength [MPa], (n_node,) each; its lengths as cooled; what the models
+    say beside it."""
 
     phases: Array
     as_quenched_hv: Array
     hardness_hv: Array
     yield_mpa: Array
+    scales: Scales
     notes: tuple[RangeNote, ...]
     cautions: tuple[str, ...]
 
@@ -68,12 +71,24 @@ def worth(case: Case, austenite: Austenite, history: History) -> Worth:
     by_phase = by_phase + case.steel.shifts.hardness
     tempers = tempers_of(case)
     left = _tempered(history.phases, by_phase, as_quenched, case, tempers)
+    sizes = scales(
+        composition,
+        history.phases,
+        rate_700=history.rate_700,
+        pearlite_temp=history.pearlite_temp,
+        grain_intercept=austenite.grain_mean_intercept,
+        carbide_left=austenite.cementite,
+    )
     return Worth(
         phases=left.fractions,
         as_quenched_hv=as_quenched,
         hardness_hv=left.hardness_hv,
         yield_mpa=_yield_mpa(case, austenite, history, left, ae1),
-        notes=tempering.range_notes(composition, history.phases, by_phase, tempers),
+        scales=sizes,
+        notes=(
+            *tempering.range_notes(composition, history.phases, by_phase, tempers),
+            *sizes.notes,
+        ),
         cautions=embrittlement.cautions(composition, tempers, ae1=ae1) if tempers else (),
     )
 

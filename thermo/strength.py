@@ -82,7 +82,9 @@ def interlamellar_spacing(pearlite_temp: Array | float, ae1: float) -> Array:
         return np.asarray(np.maximum(SPACING_UNDERCOOLING / undercooling, FINEST_SPACING))
 
 
-def ferrite_grain(composition: Composition, rate_700: Array, grain_intercept: float) -> Array:
+def ferrite_grain(
+    composition: Composition, rate_700: Array, grain_intercept: Array | float
+) -> Array:
     """Ferrite grain diameter [m].
 
     Parameters

@@ -31,6 +31,9 @@ def test_the_last_file_of_the_series_carries_every_final_field(
         "cooling_rate_700degC_K_per_s",
         "austenite_carbon_pct",
         "pearlite_formed_at_degC",
+        "ferrite_grain_um",
+        "pearlite_spacing_um",
+        "impact_transition_degC",
     }
     total = sum(point_data[f"{name}_fraction"] for name in PHASE_NAMES)
     assert_allclose(total, 1.0, rtol=0, atol=1e-12)

@@ -35,6 +35,9 @@ AT_END = [
     "cooling_rate_700degC_K_per_s",
     "austenite_carbon_pct",
     "pearlite_formed_at_degC",
+    "ferrite_grain_um",
+    "pearlite_spacing_um",
+    "impact_transition_degC",
 ]
 
 # What a person sees of each form [mm]: lowest and highest x and y of the drawing.
@@ -263,6 +266,10 @@ def test_arrays_have_the_documented_shapes(solved: Result) -> None:
         "rate_700_K_per_s": (n_node,),
         "austenite_carbon_pct": (n_node,),
         "pearlite_formed_at_degC": (n_node,),
+        "ferrite_grain_um": (n_node,),
+        "pearlite_spacing_um": (n_node,),
+        "cementite_film_um": (n_node,),
+        "impact_transition_degC": (n_node,),
         "history_times_s": (n_step,),
         "history_temp_degC": (n_step, n_position),
     }

@@ -17,6 +17,7 @@ from midradius.study import uncertainty
 from midradius.study.case import Case, Need, Outputs, SectionInput, Stage, SteelInput, position
 from midradius.study.needs import any_fails, crossing, judge, nearest_met
 from midradius.study.result import Verdict
+from midradius.study.scale import scales
 from midradius.study.setup import coordinates_of
 from midradius.study.uncertainty import ALLOY, AS_COOLED, widest
 from midradius.study.worth import Worth
@@ -44,7 +45,15 @@ def solution(cells: int, shift_hv: float = 0.0) -> Invented:
     phases[FERRITE] = 0.9 * (1.0 - phases[MARTENSITE])
     phases[CEMENTITE] = 0.1 * (1.0 - phases[MARTENSITE])
     hardness = 500.0 - 4e3 * depth + shift_hv
-    return Invented(cut, Worth(phases, hardness, hardness, 2.0 * hardness, (), ()))
+    sizes = scales(
+        STEEL.composition,
+        phases,
+        rate_700=np.ones(len(depth)),
+        pearlite_temp=np.full(len(depth), np.nan),
+        grain_intercept=soak(STEEL, 1123.15, 3600.0).grain_mean_intercept,
+        carbide_left=0.0,
+    )
+    return Invented(cut, Worth(phases, hardness, hardness, 2.0 * hardness, sizes, (), ()))
 
 
 def case_of(need: Need, *, tempered: bool = False, grain: float | None = None) -> Case:

@@ -97,7 +97,19 @@ def test_conversions_outside_their_range_are_empty(tmp_path: Path, slow_result: 
 
 
 def test_every_heading_but_the_name_ends_with_a_unit(folder: Path) -> None:
-    units = ("_s", "_degC", "_mm", "_fraction", "_HV", "_HRC", "_HB", "_MPa", "_pct")
+    units = (
+        "_s",
+        "_degC",
+        "_mm",
+        "_um",
+        "_network",
+        "_fraction",
+        "_HV",
+        "_HRC",
+        "_HB",
+        "_MPa",
+        "_pct",
+    )
     for path in folder.iterdir():
         headings = path.read_text(encoding="utf-8").splitlines()[0].split(",")
         assert all(h == "position" or h.endswith(units) for h in headings)
