@@ -12,24 +12,14 @@ import numpy as np
 from midradius.fem import march
 from midradius.fem.coupled import Run, Surroundings, Until, Watch
 from midradius.fem.media import ZERO_DEGC
+from midradius.fem.remains import Remains, remains
 from midradius.fem.section import Cut, Place
 from midradius.fem.surface import Film
 from midradius.thermo.arrays import Array
-from midradius.thermo.assemble import fractions
 from midradius.thermo.errors import InputFault
-from midradius.thermo.kinetics import (
-    CARBON_AUSTENITE,
-    CARBON_MARTENSITE,
-    PEARLITE,
-    PEARLITE_HEAT,
-    Tables,
-    advance_node,
-)
-from midradius.thermo.phases import AUSTENITE, MARTENSITE
+from midradius.thermo.kinetics import Tables
 
-PART_OF_AUSTENITE = 1e-6  # less austenite than this has no carbon content to speak of
 LONGEST_STAGE = 30.0 * 24.0 * 3600.0  # s, for a stage that ends by temperature only
-ROOM_TEMP = 293.15  # K
 HOTTER_BY = 2.0  # K by which a bath may exceed the part before it counts as heating
 
 
@@ -65,19 +55,16 @@ class StageEnd:
 
 
 @dataclass(frozen=True)
-class History:
+class History(Remains):
     """What a march leaves.
 
     ``field`` (n_time, n_node) [K] at ``times`` (n_time,); ``step_times``
     (n_step,), ``watch_temp`` (n_step, n_watch) [K] and ``watch_phases``
-    (n_step, n_phase, n_watch); at the end ``temp`` (n_node,), ``phases``
-    (n_phase, n_node), ``carbon_austenite_pct``, ``carbon_martensite_pct``,
-    ``pearlite_temp`` [K], ``time_800_500`` [s], ``rate_700`` [K/s], (n_node,) each
-    and nan where there is none. Heat in J per the section's extent.
+    (n_step, n_phase, n_watch); at the end ``temp`` and ``coldest`` (n_node,) [K] and what
+    :class:`Remains` names. Heat in J per the section's extent.
 
-    Phases are those at room temperature: after the last stage the austenite that
-    is left follows the martensite curve to :data:`ROOM_TEMP`, in no time and with
-    its heat left out of the account. Temperatures, times and heat end with the route.
+    Phases are those at room temperature, the heat of the way there left out of the
+    account. Temperatures, times and heat end with the route.
     """
 
     times: Array
@@ -87,12 +74,6 @@ class History:
     watch_phases: Array
     temp: Array
     coldest: Array
-    phases: Array
-    carbon_austenite_pct: Array
-    carbon_martensite_pct: Array
-    pearlite_temp: Array
-    time_800_500: Array
-    rate_700: Array
     stages: tuple[StageEnd, ...]
     heat_before: float
     heat_after: float
@@ -237,15 +218,7 @@ def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
     field = p.field.copy()
     field[np.isnan(field).any(axis=1)] = p.temp
     heat_after, coldest = run.heat(), run.coldest
-    for i in range(len(p.temp)):
-        advance_node(p.state[i], p.temp[i], ROOM_TEMP, 0.0, p.scale[i], run.tables)
-    carbon, pearlite = p.state[:, CARBON_AUSTENITE], p.state[:, PEARLITE]
-    phases = fractions(p.state)
-    austenite, martensite = phases[AUSTENITE], phases[MARTENSITE]
-    some, hard = austenite > PART_OF_AUSTENITE, martensite > PART_OF_AUSTENITE
-    marked = p.marks >= 0.0
-    both = marked[:, 0] & marked[:, 2]
-    formed = pearlite > PART_OF_AUSTENITE
+    left = remains(p.state, p.temp, p.scale, p.marks, run.tables)
     return History(
         times=np.array(times),
         field=field,
@@ -260,16 +233,7 @@ def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
         ).transpose(0, 2, 1),
         temp=p.temp.copy(),
         coldest=coldest,
-        phases=phases,
-        carbon_austenite_pct=np.where(some, carbon / np.where(some, austenite, 1.0), np.nan),
-        carbon_martensite_pct=np.where(
-            hard, p.state[:, CARBON_MARTENSITE] / np.where(hard, martensite, 1.0), np.nan
-        ),
-        pearlite_temp=np.where(
-            formed, p.state[:, PEARLITE_HEAT] / np.where(formed, pearlite, 1.0), np.nan
-        ),
-        time_800_500=np.where(both, p.marks[:, 2] - p.marks[:, 0], np.nan),
-        rate_700=np.where(marked[:, 1], p.marks[:, 3], np.nan),
+        **vars(left),
         stages=stages,
         heat_before=run.heat_at_start,
         heat_after=heat_after,
