@@ -24,7 +24,16 @@ if TYPE_CHECKING:
 
 Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
 StageKind = Literal["soak", "transfer", "quench", "hold", "temper"]
-PositionKind = Literal["surface", "core", "mid-radius", "quarter thickness", "depth", "coordinates"]
+PositionKind = Literal[
+    "surface",
+    "core",
+    "mid-radius",
+    "quarter thickness",
+    "depth",
+    "coordinates",
+    "node",
+    "place of the file",
+]
 
 
 @dataclass(frozen=True)
@@ -131,12 +140,14 @@ class PositionInput:
     ``depth`` [m] counts from the cooled surface; ``coordinates`` [m] are (x,)
     from the near face of a slab, (r,) of a round, tube or ball, (x, y) from the
     left bottom corner of a bar, (r, z) from the bottom or near end otherwise.
+    ``node`` counts from 0; it and a place of the file belong to temperatures from elsewhere.
     """
 
     name: str
     kind: PositionKind
     depth: float | None = None
     coordinates: tuple[float, ...] | None = None
+    node: int | None = None
 
 
 @dataclass(frozen=True)
@@ -200,16 +211,14 @@ def with_unit(value: float, unit: str) -> str:
     return f"{unit} {number}" if unit == "ASTM" else f"{number} {unit}"
 
 
-@dataclass(frozen=True)
-class Case:
-    """A whole case. Two cases are equal when they ask for the same computation."""
+@dataclass(frozen=True, kw_only=True)
+class Asked:
+    """What every case asks for, wherever its temperatures come from."""
 
     title: str
     steel: SteelInput
-    section: SectionInput
     route: tuple[Stage, ...]
     outputs: Outputs
-    grid: Grid = Grid()
     needs: tuple[Need, ...] = ()
     text: str = field(default="", compare=False, repr=False)
     path: Path | None = field(default=None, compare=False)
@@ -245,6 +254,14 @@ class Case:
             if place.name == name:
                 return place
         return position(name)
+
+
+@dataclass(frozen=True, kw_only=True)
+class Case(Asked):
+    """A whole case. Two cases are equal when they ask for the same computation."""
+
+    section: SectionInput
+    grid: Grid = Grid()
 
 
 ZONES: Mapping[str, tuple[str, ...]] = {

@@ -9,17 +9,19 @@ import tomllib
 from pathlib import Path
 
 from . import casekeys as keys
-from .case import Case
+from .case import Case, SteelInput
 from .caseblocks import grid, section_input, steel_input
 from .casefaults import CaseFaults, Fault, Notebook
 from .caselines import locate
 from .caseneed import needs
 from .caseoutput import outputs
-from .caseroute import route
+from .caseroute import route, soak_and_tempers
 from .casetable import Table, is_line
 from .casewrite import dumps
+from .seriescase import SeriesCase, temperatures
+from .seriesplaces import needs_at, places
 
-__all__ = ["CaseFaults", "Fault", "dumps", "loads", "read"]
+__all__ = ["CaseFaults", "Fault", "dumps", "loads", "loads_any", "read", "read_any"]
 
 LARGEST = 1_000_000  # bytes; a case is some kilobytes
 _PLACE = re.compile(r"\s*\(at (?:line (\d+), column (\d+)|end of document)\)")
@@ -50,14 +52,37 @@ def read(path: Path | str) -> Case:
     return loads(_text(path), path)
 
 
+def read_any(path: Path | str) -> Case | SeriesCase:
+    """The case of a file, with a section or with temperatures from elsewhere.
+
+    Raises
+    ------
+    CaseFaults
+        As `read`.
+    """
+    path = Path(path)
+    return loads_any(_text(path), path)
+
+
 def loads(text: str, path: Path | None = None) -> Case:
     """The case of a text; ``path`` is where it stands, for messages and film curves.
 
     Raises
     ------
     CaseFaults
-        With every fault of the text.
+        With every fault of the text; with one where it has no section of its own.
     """
+    found = loads_any(text, path)
+    if isinstance(found, Case):
+        return found
+    line = locate(text).get(("temperatures",))
+    sentence = "temperatures from elsewhere have no section, which is needed here"
+    remedy = "Describe the part by [section] and stages that cool it."
+    raise CaseFaults((Fault(line, "", sentence, "", remedy, _printable(path or Path("case"))),))
+
+
+def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
+    """As `loads`, or a case whose temperatures come from a file."""
     name = _printable(path) if path else "case"
     try:
         data = tomllib.loads(text)
@@ -73,13 +98,17 @@ def loads(text: str, path: Path | None = None) -> Case:
         if top.has(later):
             top.refuse(later, f"{later} is part of the format, but not yet answered", why)
     top.only(keys.TOP, silent=tuple(keys.LATER))
-    for block in ("steel", "section"):
-        if not top.has(block):
-            top.missing(block, f"given as a table [{block}]")
     title = top.text("title", keys.LONGEST_TITLE)
+    title = title or (path.stem if path and is_line(path.stem) else "untitled")
+    if not top.has("steel"):
+        top.missing("steel", "given as a table [steel]")
     steel_table = top.table("steel", "[steel]")
-    section_table = top.table("section", "[section]")
     steel = steel_input(steel_table) if steel_table else None
+    if top.has("temperatures"):
+        return _series(top, title, steel, text, path)
+    if not top.has("section"):
+        top.missing("section", "given as a table [section]")
+    section_table = top.table("section", "[section]")
     section = section_input(section_table) if section_table else None
     wanted = outputs(top.table("output", "[output]"), section)
     stages = route(top, steel, section, wanted)
@@ -89,12 +118,39 @@ def loads(text: str, path: Path | None = None) -> Case:
     if steel is None or section is None:  # cannot be: each None has its note
         raise AssertionError("a block is missing without a fault")
     return Case(
-        title=title or (path.stem if path and is_line(path.stem) else "untitled"),
+        title=title,
         steel=steel,
         section=section,
         route=stages,
         outputs=wanted,
         grid=cells,
+        needs=asked,
+        text=text,
+        path=path,
+    )
+
+
+def _series(
+    top: Table, title: str, steel: SteelInput | None, text: str, path: Path | None
+) -> SeriesCase:
+    for block, why in (("section", "Keep one of the two."), ("grid", "Nothing is solved on it.")):
+        if top.has(block):
+            sentence = f"{block} does not go with temperatures, which come with their own nodes"
+            top.refuse(block, sentence, why)
+    table = top.table("temperatures", "[temperatures]")
+    given = temperatures(table) if table else None
+    wanted = places(top, given)
+    stages = soak_and_tempers(top, steel)
+    asked = needs_at(top, wanted, given)
+    top.notes.close()
+    if steel is None or given is None:  # cannot be: each None has its note
+        raise AssertionError("a block is missing without a fault")
+    return SeriesCase(
+        title=title,
+        steel=steel,
+        temperatures=given,
+        route=stages,
+        outputs=wanted,
         needs=asked,
         text=text,
         path=path,

@@ -12,7 +12,7 @@ from .case import Form, StageKind
 
 ZERO_DEGC = 273.15
 
-TOP = ("title", "steel", "section", "route", "need", "output", "grid")
+TOP = ("title", "steel", "section", "temperatures", "route", "need", "output", "grid")
 LATER: Mapping[str, str] = {
     "load": "The heat of a whole load is not computed by this version: take the table out.",
     "tank": "A tank and its cooler are not computed by this version: take the table out.",

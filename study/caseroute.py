@@ -246,3 +246,35 @@ def _reachable(table: Table, until: Until, use: MediumUse, soak: float | None) -
     elif soak is not None and until.temp >= soak:
         remedy = "The stage would end before it begins."
         table.fault("until", f"below the soak, {show(soak, 'temperature')}", remedy)
+
+
+def soak_and_tempers(top: Table, steel: SteelInput | None) -> tuple[Stage, ...]:
+    """``[[route]]`` where the temperatures of the cooling are given: a soak, then tempers."""
+    if not top.has("route") or top.raw("route") == []:
+        top.missing("route", "a soak: it says what austenite there is", _SOAK_HINT)
+        return ()
+    stages: list[Stage] = []
+    items = top.items("route", "[[route]] before each stage")
+    if len(items) > keys.STAGES_MOST:
+        top.refuse("route", f"route has {len(items)} stages, at most {keys.STAGES_MOST} are read")
+        return ()
+    for place, (key, value) in enumerate(items):
+        if not isinstance(value, dict):
+            top.notes.add(key, value, "a table, written as [[route]]")
+            continue
+        table = Table(value, key, top.notes)
+        kind = cast(StageKind | None, table.choice("stage", keys.STAGES))
+        if not table.has("stage"):
+            table.missing("stage", '"soak" first, then "temper"')
+        if kind in keys.COOLS:
+            remedy = "Take the stage out, or describe the part by [section] instead."
+            allowed = '"soak" or "temper": [temperatures] says how the part cools'
+            table.fault("stage", allowed, remedy)
+        elif kind == "soak" and place > 0:
+            table.fault("stage", '"temper" after the soak', "One soak leaves the austenite.")
+        elif kind == "temper" and place == 0:
+            table.fault("stage", 'a "soak" first', f"It says what austenite there is: {_SOAK}.")
+        elif kind:
+            stage = _soak(table, steel) if kind == "soak" else _temper(table, steel)
+            stages += [stage] if stage else []
+    return tuple(stages)
