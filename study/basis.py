@@ -3,10 +3,9 @@
 from dataclasses import asdict
 
 from midradius.fem.media import ZERO_DEGC
-from midradius.fem.route import History
+from midradius.fem.remains import Remains
 from midradius.study import uncertainty
-from midradius.study.case import Case
-from midradius.study.setup import Setup
+from midradius.study.case import Asked
 from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth
 from midradius.thermo import austenite as soaking
@@ -25,6 +24,7 @@ from midradius.thermo import (
     tempering,
     toughness,
 )
+from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.source import RangeNote, Source
 
@@ -33,9 +33,20 @@ ENDS_HOT = 200.0 + ZERO_DEGC
 
 
 def notes_of(
-    case: Case, setup: Setup, left: Austenite, history: History, value: Worth
+    case: Asked,
+    more: tuple[RangeNote, ...],
+    left: Austenite,
+    history: Remains,
+    value: Worth,
+    *,
+    seen: Array,
+    last: Array,
 ) -> tuple[RangeNote, ...]:
-    """Every model that the run used outside the range of its source."""
+    """Every model that the run used outside the range of its source.
+
+    ``seen`` are temperatures [K] of any shape that include the extremes, ``last`` those
+    of every node at the end; ``more`` are notes of the setup.
+    """
     composition = case.steel.steel.composition
     found = [
         *case.steel.notes,
@@ -46,10 +57,10 @@ def notes_of(
         *martensite.range_notes(left.composition),
         *hardness.range_notes(composition, history.phases, history.rate_700),
         *value.notes,
-        *properties.range_notes(history.field, composition.C),
-        *setup.notes,
+        *properties.range_notes(seen, composition.C),
+        *more,
     ]
-    hottest = float(history.temp.max())
+    hottest = float(last.max())
     if hottest > ENDS_HOT:
         found.append(
             RangeNote(
@@ -62,7 +73,7 @@ def notes_of(
     return tuple(dict.fromkeys(found))
 
 
-def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
+def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     """The works that a run of the case rests on."""
     found: list[Source] = [source_of(case.steel.steel)]
     used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
@@ -75,10 +86,10 @@ def sources_of(case: Case, setup: Setup) -> tuple[Source, ...]:
     used += [uncertainty] if case.needs else []
     for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]
-    return tuple(dict.fromkeys([*found, *setup.sources]))
+    return tuple(dict.fromkeys([*found, *more]))
 
 
-def inputs_of(case: Case) -> dict[str, object]:
+def inputs_of(case: Asked) -> dict[str, object]:
     """The case as it was understood, for the record."""
     resolved = asdict(case)
     resolved.pop("text")

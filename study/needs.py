@@ -25,7 +25,7 @@ from midradius.fem import section as forms
 from midradius.fem.section import Cut, Place
 from midradius.study import casekeys as keys
 from midradius.study import uncertainty
-from midradius.study.case import EVERYWHERE, Case, Need
+from midradius.study.case import EVERYWHERE, Asked, Case, Need
 from midradius.study.result import Outcome, Verdict
 from midradius.study.uncertainty import AS_COOLED, TEMPERED, Spread
 from midradius.study.worth import Worth
@@ -60,28 +60,29 @@ _SCALES: Mapping[str, _Scale] = {
 
 
 class Solution(Protocol):
-    """One solution of the section, with what its structure is worth."""
+    """One solution, with what its structure is worth; no cut where temperatures were given."""
 
     @property
-    def cut(self) -> Cut: ...
+    def cut(self) -> Cut | None: ...
     @property
     def worth(self) -> Worth: ...
 
 
 Placed = tuple[Solution, Mapping[str, Place]]
+Error = Callable[[float, float, float], float]  # of the answer, the rough and the sharp value
 
 
 @dataclass(frozen=True)
 class _Run:
     """The arguments of `judge`."""
 
-    case: Case
+    case: Asked
     austenite: Austenite
     answer: Placed
     rough: Placed
     sharp: Placed
-    time_factor: float
-    grid_factor: float
+    error: Error
+    called: Callable[[int], str] = str
 
     @property
     def condition(self) -> str:
@@ -92,7 +93,7 @@ class _Run:
     def numerical(self, read: Callable[[Solution, Mapping[str, Place]], float]) -> float:
         """Error by time steps and grid of what ``read`` finds in a solution."""
         answer, rough, sharp = (read(*each) for each in (self.answer, self.rough, self.sharp))
-        return self.time_factor * abs(sharp - rough) + self.grid_factor * abs(answer - rough)
+        return self.error(answer, rough, sharp)
 
 
 @dataclass(frozen=True)
@@ -128,7 +129,31 @@ def judge(
         From ``sharp - rough`` to the error of the time steps and from ``answer -
         rough`` to that of the grid.
     """
-    run = _Run(case, austenite, answer, rough, sharp, *factors)
+    by_time, by_grid = factors
+
+    def error(value: float, rough: float, sharp: float) -> float:
+        return by_time * abs(sharp - rough) + by_grid * abs(value - rough)
+
+    run = _Run(case, austenite, answer, rough, sharp, error)
+    return tuple(_judged(run, need) for need in case.needs)
+
+
+def judge_given(
+    case: Asked,
+    austenite: Austenite,
+    lines: Placed,
+    halved: Placed,
+    cubic: Placed,
+    *,
+    error: Error,
+    called: Callable[[int], str],
+) -> tuple[Verdict, ...]:
+    """`judge` where the temperatures were given.
+
+    ``error`` tells that of the samples from the values along straight lines, along every
+    second sample and along the cubic; ``called`` is a node in words.
+    """
+    run = _Run(case, austenite, lines, halved, cubic, error, called)
     return tuple(_judged(run, need) for need in case.needs)
 
 
@@ -228,13 +253,17 @@ def _where(run: _Run, need: Need, field: Array, limits: _Limits) -> str:
         return ""
     cut = run.answer[0].cut
     worst = int(np.argmin(limits.margin(field)))
+    if cut is None:
+        return f"worst at {run.called(worst)}"
     depth = forms.depth_of(cut.section, tuple(cut.body.points[worst]))
     return f"worst {1e3 * depth:.1f} mm below the surface"
 
 
 def _depth(run: _Run, need: Need) -> Verdict:
     """Hardened depth: from the surface to where the profile first leaves the limit."""
+    cut = run.answer[0].cut
     assert need.to is not None, "a hardened depth counts to something"
+    assert cut is not None, "and is refused where temperatures were given"
     composition, metre = run.case.steel.steel.composition, keys.LENGTHS[need.unit]
     of_martensite = need.to_unit == keys.OF_MARTENSITE
     if of_martensite:
@@ -247,7 +276,7 @@ def _depth(run: _Run, need: Need) -> Verdict:
     def to(solution: Solution, level: float) -> float:
         worth = solution.worth
         field = worth.phases[MARTENSITE] if of_martensite else worth.hardness_hv
-        depth, node, _ = forms.profile(solution.cut)
+        depth, node, _ = forms.profile(solution.cut or cut)
         return crossing(depth, field[node], level) / metre
 
     answer = run.answer[0]
@@ -259,7 +288,7 @@ def _depth(run: _Run, need: Need) -> Verdict:
         basis=f"{wide.basis}; taken along the profile",
         measured=wide.measured,
     )
-    depth, _, label = forms.profile(answer.cut)
+    depth, _, label = forms.profile(cut)
     note = "hardened through" if value >= depth[-1] / metre else ""
     limits = _Limits(need.at_least, need.at_most)
     verdict = _verdict(need, need.unit, limits, value, error, spread, note)
@@ -341,7 +370,10 @@ def _with_remedy(run: _Run, need: Need, verdict: Verdict, field: Array, limits: 
     if verdict.outcome != FAILS:
         return verdict
     cut = run.answer[0].cut
-    if need.position == EVERYWHERE:
+    if cut is None:
+        count = int((limits.margin(field) >= 0.0).sum())
+        text = f"met at {count} of {len(field)} nodes"
+    elif need.position == EVERYWHERE:
         met = limits.margin(field) >= 0.0
         share = float(cut.body.volume[met].sum() / cut.body.volume.sum())
         text = f"met in {100.0 * share:.0f} % of the section"

@@ -306,8 +306,10 @@ def _result(
         verdicts=judge(
             case, left, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS
         ),
-        notes=notes_of(case, setup, left, main.history, main.worth),
-        sources=sources_of(case, setup),
+        notes=notes_of(
+            case, setup.notes, left, history, main.worth, seen=history.field, last=history.temp
+        ),
+        sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=setup.cautions + main.worth.cautions,

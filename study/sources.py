@@ -83,7 +83,7 @@ def of_case(case: Case) -> tuple[Used, ...]:
     from midradius.study.basis import sources_of
     from midradius.study.setup import prepare
 
-    return used(sources_of(case, prepare(case)))
+    return used(sources_of(case, prepare(case).sources))
 
 
 def _modules(floor: str) -> list[str]:

@@ -5,8 +5,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from midradius.fem.route import History
-from midradius.study.case import Case
+from midradius.fem.remains import Remains
+from midradius.study.case import Asked
 from midradius.study.scale import Scales, scales
 from midradius.thermo import embrittlement, equilibrium, hardness, strength, tempering
 from midradius.thermo.arrays import Array
@@ -38,12 +38,12 @@ class Worth:
     cautions: tuple[str, ...]
 
 
-def tempers_of(case: Case) -> tuple[Temper, ...]:
+def tempers_of(case: Asked) -> tuple[Temper, ...]:
     """The tempers of a case, in its order."""
     return tuple(Temper(stage.at or 0.0, stage.time or 0.0) for stage in case.tempers)
 
 
-def worth(case: Case, austenite: Austenite, history: History) -> Worth:
+def worth(case: Asked, austenite: Austenite, history: Remains) -> Worth:
     """Hardness as quenched, then through the tempers, then the strength of what is left.
 
     Raises
@@ -94,7 +94,7 @@ def worth(case: Case, austenite: Austenite, history: History) -> Worth:
 
 
 def _tempered(
-    phases: Array, by_phase: Array, as_quenched: Array, case: Case, tempers: Sequence[Temper]
+    phases: Array, by_phase: Array, as_quenched: Array, case: Asked, tempers: Sequence[Temper]
 ) -> Tempered:
     if not tempers:
         return Tempered(phases, by_phase, as_quenched)
@@ -103,7 +103,7 @@ def _tempered(
 
 
 def _yield_mpa(
-    case: Case, austenite: Austenite, history: History, left: Tempered, ae1: float
+    case: Asked, austenite: Austenite, history: Remains, left: Tempered, ae1: float
 ) -> Array:
     composition = case.steel.steel.composition
     some = np.where(left.fractions > hardness.PRESENT, left.fractions, 0.0)
