@@ -25,6 +25,7 @@ from midradius.fem.march import MARKS_K
 from midradius.thermo.arrays import Array
 from midradius.thermo.compiled import kernel
 from midradius.thermo.kinetics import (
+    KIND,
     RATE_CEMENTITE,
     RATE_FERRITE,
     Tables,
@@ -38,17 +39,19 @@ MOST_PARTS = 2000  # between two samples: a hold of hours at the nose
 
 
 @kernel
-def _parts(temp0: float, temp1: float, span: float, tables: Tables, scale: Array) -> int:
+def _parts(
+    temp0: float, temp1: float, span: float, tables: Tables, kind: int, scale: Array
+) -> int:
     """Into how many parts the way between two samples is cut."""
     n = 1.0 + abs(temp1 - temp0) / STRIDE
-    value = tables.value
+    value = tables.value[kind]
     quickest = 0.0
     for k in range(5):
         temp = temp0 + 0.25 * k * (temp1 - temp0)
         row = min(max(int((temp - tables.first) / tables.step), 0), value.shape[0] - 1)
         for which in range(3):
             quickest = max(quickest, value[row, RATE_FERRITE + which] * scale[which])
-        quickest = max(quickest, value[row, RATE_CEMENTITE])
+        quickest = max(quickest, value[row, RATE_CEMENTITE] * scale[3])
     return int(min(max(n, 1.0 + quickest * span / TICKS), float(MOST_PARTS)))
 
 
@@ -71,7 +74,7 @@ def carry(
     Parameters
     ----------
     states, marks, scales
-        (n_node, N_STATE), (n_node, 4), (n_node, 3), as in :mod:`midradius.fem.remains`.
+        (n_node, N_STATE), (n_node, 4), (n_node, N_SCALE), as in :mod:`midradius.fem.remains`.
     tables
         The steel.
     start, span
@@ -81,7 +84,7 @@ def carry(
     """
     for i in range(len(temp0)):
         first, last = temp0[i], temp1[i]
-        n = _parts(first, last, span, tables, scales[i])
+        n = _parts(first, last, span, tables, int(states[i, KIND]), scales[i])
         austenite = 1.0
         for k in range(5):
             austenite -= states[i, k]

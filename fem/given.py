@@ -35,7 +35,7 @@ from midradius.fem.march import N_MARK
 from midradius.fem.remains import Remains, remains
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
-from midradius.thermo.kinetics import COLDEST, Tables
+from midradius.thermo.kinetics import CARBON_AUSTENITE, COLDEST, KIND, N_SCALE, Tables
 from midradius.thermo.source import Source
 
 SOURCES = (
@@ -245,10 +245,8 @@ def _way(n_node: int, state: Array, first: Array, tables: Tables) -> _Way:
 
 
 def _martensite_start(state: Array, tables: Tables) -> float:
-    from midradius.thermo.kinetics import CARBON_AUSTENITE
-
     carbon = state[CARBON_AUSTENITE] / max(1.0 - state[:5].sum(), 1e-9)
-    a, b, c = tables.start
+    a, b, c = tables.start[int(state[KIND])]
     return float(a - b * (1.0 - np.exp(-c * carbon)))
 
 

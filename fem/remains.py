@@ -62,7 +62,7 @@ def remains(states: Array, temp: Array, scales: Array, marks: Array, tables: Tab
     temp
         At the end of the path [K], (n_node,).
     scales
-        Factors on the rates, (n_node, 3).
+        Factors on the rates, (n_node, N_SCALE).
     marks
         Times [s] at which each node first cooled through 800, 700 and 500 degC and the
         rate [K/s] at the second, negative where it did not, (n_node, 4).
