@@ -39,9 +39,7 @@ MOST_PARTS = 2000  # between two samples: a hold of hours at the nose
 
 
 @kernel
-def _parts(
-    temp0: float, temp1: float, span: float, tables: Tables, kind: int, scale: Array
-) -> int:
+def _parts(temp0: float, temp1: float, span: float, tables: Tables, kind: int, scale: Array) -> int:
     """Into how many parts the way between two samples is cut."""
     n = 1.0 + abs(temp1 - temp0) / STRIDE
     value = tables.value[kind]

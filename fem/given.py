@@ -233,15 +233,25 @@ def follow(
         if tell is not None:
             tell(float(at[k]), float(at[-1]))
     coldest = lines.states[:, COLDEST].copy()
-    done = [way.end(old) for way in ways]
-    return Followed(*done, at, watched, first, old, coldest, widest, fall)
+    return Followed(
+        lines=lines.end(old),
+        halved=halved.end(old),
+        cubic=cubic.end(old),
+        times=at,
+        watched=watched,
+        first=first,
+        last=old,
+        coldest=coldest,
+        widest=widest,
+        fall=fall,
+    )
 
 
 def _way(n_node: int, state: Array, first: Array, tables: Tables) -> _Way:
     states = np.tile(state, (n_node, 1))
     states[:, COLDEST] = first
     marks = np.full((n_node, N_MARK), NEVER_MARKED)
-    return _Way(states, marks, np.ones((n_node, 3)), tables)
+    return _Way(states, marks, np.ones((n_node, N_SCALE)), tables)
 
 
 def _martensite_start(state: Array, tables: Tables) -> float:

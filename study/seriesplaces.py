@@ -57,7 +57,9 @@ def _place(
         return None
     if given is not None and given.columns and value not in given.columns:
         known = tuple(given.columns)
-        table.notes.add(key, value, f"a place of the columns: {one_of(known)}", nearest(value, known))
+        table.notes.add(
+            key, value, f"a place of the columns: {one_of(known)}", nearest(value, known)
+        )
         return None
     return PositionInput(value, "place of the file")
 
