@@ -26,12 +26,14 @@ fine-grain steel below about 950 degC. Dissolved carbon 800 to 950 degC, 20 to
 
 import math
 from dataclasses import dataclass, replace
-from typing import Literal
+from typing import Literal, NamedTuple
 
 import numpy as np
 
+from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.equilibrium import (
     CEMENTITE_CARBON_PCT,
+    Equilibrium,
     equilibrium,
     lever_cementite,
     lever_ferrite,
@@ -49,12 +51,24 @@ SOURCES = (
 ZERO_DEGC = 273.15
 GAS_CONSTANT = 8.314
 HOTTEST_DEGC = 1300.0
+GROWTH_POWER = 0.211  # of the time at temperature
 Regime = Literal["full", "intercritical", "below Acm", "undissolved carbide"]
+REGIMES: tuple[Regime, ...] = ("full", "intercritical", "below Acm", "undissolved carbide")
 
 # (soak [degC], carbon in solution [mass %]) after 20 to 60 min
 DISSOLVED = ((800.0, 0.50), (845.0, 0.62), (880.0, 0.75), (950.0, 0.95))
 SLOW_CHROMIUM_PCT = 0.5
 CHROMIUM_RATIO = 8.1 / 1.45
+
+
+class Dissolution(NamedTuple):
+    """Soaks at several temperatures, (n,) each: carbon in solution [mass %], ferrite and
+    cementite left [mass fraction], place of the regime in `REGIMES`."""
+
+    carbon_pct: Array
+    ferrite: Array
+    cementite: Array
+    regime: IntArray
 
 
 @dataclass(frozen=True)
@@ -96,29 +110,13 @@ def soak(steel: Steel, temp: float, time: float, grain_astm: float | None = None
     """
     eq = equilibrium(steel.composition)
     _check(steel, temp, time, grain_astm, eq.ae1)
-    carbon, notes = steel.composition.C, []
-    ferrite = cementite = 0.0
-    regime: Regime = "full"
-    if carbon <= eq.eutectoid_carbon_pct:
-        if temp < eq.ae3:
-            ferrite = float(lever_ferrite(eq, carbon, temp))
-            carbon = float(eq.austenite_vs_ferrite(temp))
-            regime = "intercritical"
-    else:
-        if temp < eq.acm:
-            cementite = float(lever_cementite(eq, carbon, temp))
-            carbon = float(eq.austenite_vs_cementite(temp))
-            regime = "below Acm"
-        if steel.composition.Cr >= SLOW_CHROMIUM_PCT:
-            practical = _dissolved(temp)
-            if practical < carbon:
-                carbon = practical
-                cementite = (steel.composition.C - carbon) / (CEMENTITE_CARBON_PCT - carbon)
-                regime = "below Acm" if temp < eq.acm else "undissolved carbide"
-            notes += _dissolution_notes(temp, time)
+    left = dissolution(eq, np.array([temp]))
+    carbon, ferrite, cementite = (float(part[0]) for part in left[:3])
+    regime = REGIMES[int(left.regime[0])]
+    notes = dissolution_notes(eq, temp, time)
     if grain_astm is None:
         intercept = grown_intercept(steel.composition, temp, time)
-        notes += _growth_notes(temp)
+        notes += growth_notes(temp)
     else:
         intercept = intercept_of(grain_astm)
     return Austenite(
@@ -133,6 +131,30 @@ def soak(steel: Steel, temp: float, time: float, grain_astm: float | None = None
     )
 
 
+def dissolution(eq: Equilibrium, temp: Array) -> Dissolution:
+    """What soaks at ``temp`` (n,) [K], above Ae1 each, leave of a steel; see `Dissolution`."""
+    total = eq.composition.C
+    carbon, none = np.full(temp.shape, total), np.zeros(temp.shape)
+    regime = np.zeros(temp.shape, dtype=np.int64)
+    if total <= eq.eutectoid_carbon_pct:
+        below = temp < eq.ae3
+        ferrite = np.where(below, lever_ferrite(eq, total, temp), 0.0)
+        carbon = np.where(below, eq.austenite_vs_ferrite(temp), total)
+        return Dissolution(carbon, ferrite, none, np.where(below, 1, regime))
+    below = temp < eq.acm
+    cementite = np.where(below, lever_cementite(eq, total, temp), 0.0)
+    carbon = np.where(below, eq.austenite_vs_cementite(temp), total)
+    regime = np.where(below, 2, regime)
+    if eq.composition.Cr >= SLOW_CHROMIUM_PCT:
+        practical = _dissolved(temp)
+        less = practical < carbon
+        carbon = np.where(less, practical, carbon)
+        held = (total - carbon) / (CEMENTITE_CARBON_PCT - carbon)
+        cementite = np.where(less, held, cementite)
+        regime = np.where(less & ~below, 3, regime)
+    return Dissolution(carbon, none, cementite, regime)
+
+
 def intercept_of(grain_astm: float) -> float:
     """Mean lineal intercept [m] of an ASTM grain number."""
     return float(1e-3 * 10.0 ** (-(grain_astm + 3.2877) / 6.6439))
@@ -145,19 +167,24 @@ def astm_of(intercept: float) -> float:
 
 def grown_intercept(composition: Composition, temp: float, time: float) -> float:
     """Mean intercept [m] of austenite grown at ``temp`` [K] for ``time`` [s]."""
-    c = composition
-    activation = 89098.0 + 3581.0 * c.C + 1211.0 * c.Ni + 1443.0 * c.Cr + 4031.0 * c.Mo
-    micrometre = 76671.0 * math.exp(-activation / (GAS_CONSTANT * temp)) * time**0.211
+    activation = growth_activation(composition)
+    micrometre = 76671.0 * math.exp(-activation / (GAS_CONSTANT * temp)) * time**GROWTH_POWER
     return float(1e-6 * micrometre)
 
 
-def _dissolved(temp: float) -> float:
+def growth_activation(composition: Composition) -> float:
+    """Activation energy of grain growth [J/mol]."""
+    c = composition
+    return 89098.0 + 3581.0 * c.C + 1211.0 * c.Ni + 1443.0 * c.Cr + 4031.0 * c.Mo
+
+
+def _dissolved(temp: Array) -> Array:
     """Carbon in solution [mass %] of chromium steel, straight lines through ``DISSOLVED``."""
     degc = temp - ZERO_DEGC
     points, carbons = np.array(DISSOLVED).T
-    i = min(max(int(np.searchsorted(points, degc)) - 1, 0), len(points) - 2)
+    i = np.clip(np.searchsorted(points, degc) - 1, 0, len(points) - 2)
     slope = (carbons[i + 1] - carbons[i]) / (points[i + 1] - points[i])
-    return float(carbons[i] + slope * (degc - points[i]))
+    return np.asarray(carbons[i] + slope * (degc - points[i]))
 
 
 def _left_in_austenite(composition: Composition, carbon: float, cementite: float) -> Composition:
@@ -190,14 +217,19 @@ def _check(steel: Steel, temp: float, time: float, grain_astm: float | None, ae1
         )
 
 
-def _growth_notes(temp: float) -> list[RangeNote]:
+def growth_notes(temp: float) -> list[RangeNote]:
+    """Where a soak leaves the range of the growth law."""
     degc = temp - ZERO_DEGC
     if 850.0 <= degc <= 1200.0:
         return []
     return [RangeNote("austenite grain growth", "soak", f"{degc:.0f} degC", "850 to 1200 degC")]
 
 
-def _dissolution_notes(temp: float, time: float) -> list[RangeNote]:
+def dissolution_notes(eq: Equilibrium, temp: float, time: float) -> list[RangeNote]:
+    """Where a soak leaves the range of the carbon in solution of chromium steel."""
+    hypo = eq.eutectoid_carbon_pct >= eq.composition.C
+    if hypo or eq.composition.Cr < SLOW_CHROMIUM_PCT:
+        return []
     model = "dissolved carbon of chromium steel (estimate)"
     degc, minutes = temp - ZERO_DEGC, time / 60.0
     notes = []

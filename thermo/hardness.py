@@ -87,7 +87,7 @@ def vickers(
     rate_700: Array,
     pearlite_temp: Array,
     ae1: float,
-    grain_intercept: float,
+    grain_intercept: Array | float,
 ) -> tuple[Array, Array]:
     """Hardness of the mixture and of each constituent.
 
@@ -111,7 +111,7 @@ def vickers(
     ae1
         Equilibrium Ae1 [K].
     grain_intercept
-        Mean intercept of the austenite grain [m].
+        Mean intercept of the austenite grain [m], one or (n_node,).
 
     Returns
     -------
@@ -231,7 +231,7 @@ def _ferrite_pearlite(
     rate: Array,
     pearlite_temp: Array,
     ae1: float,
-    grain_intercept: float,
+    grain_intercept: Array | float,
 ) -> tuple[Array, tuple[Array, Array]]:
     """Share of ferrite in ferrite + pearlite, and the two lengths that scale them [m]."""
     ferrite = np.where(fractions[FERRITE] > PRESENT, fractions[FERRITE], 0.0)

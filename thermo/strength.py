@@ -94,7 +94,7 @@ def ferrite_grain(
     rate_700
         Cooling rate at 700 degC [K/s], positive, any shape.
     grain_intercept
-        Mean intercept of the austenite grain [m].
+        Mean intercept of the austenite grain [m], one or (n_node,).
     """
     equivalent = min(composition.C + composition.Mn / 6.0, EQUIVALENT_CAP_PCT)
     austenite_um = 1e6 * INTERCEPT_TO_DIAMETER * grain_intercept

@@ -17,6 +17,7 @@ import math
 import re
 import unicodedata
 from decimal import Context, Decimal
+from fractions import Fraction
 from typing import Literal, get_args
 
 from .errors import InputFault
@@ -32,6 +33,7 @@ Kind = Literal[
     "velocity",
     "pressure",
     "power",
+    "heating rate",
 ]
 KINDS: tuple[Kind, ...] = get_args(Kind)
 
@@ -105,6 +107,7 @@ UNITS: dict[Kind, dict[str, _Unit]] = {
         "MW": ("1000000", "0"),
         "hp": ("745.6998715822702", "0"),
     },
+    "heating rate": {"K/h": ("1/3600", "0"), "K/min": ("1/60", "0"), "K/s": ("1", "0")},
 }
 _EXAMPLE: dict[Kind, str] = {
     "length": "300 mm",
@@ -117,6 +120,7 @@ _EXAMPLE: dict[Kind, str] = {
     "velocity": "0.5 m/s",
     "pressure": "10 bar",
     "power": "250 kW",
+    "heating rate": "100 K/h",
 }
 # Ways of writing that people use and that are not in the list: what to write.
 _MEANT: dict[Kind, dict[str, str]] = {
@@ -202,10 +206,11 @@ def show(value: float, kind: Kind) -> str:
         "length": ("mm",) if value < 10.0 else ("m",),
         "temperature": ("degC",),
         "duration": _usual_durations(value),
+        "heating rate": ("K/h",),
     }
     for unit in candidates.get(kind, ()):
         factor, offset = UNITS[kind][unit]
-        number = f"{value / float(factor) - float(offset):.9g}"
+        number = f"{value / float(Fraction(factor)) - float(offset):.9g}"
         if "e" not in number and parse(f"{number} {unit}", kind) == value:
             return f"{number} {unit}"
     number = repr(float(value)).removesuffix(".0")
