@@ -74,6 +74,8 @@ class Run:
         Places followed at every step.
     field_times
         When to keep the whole field [s], ascending.
+    rows
+        Accepted steps between two calls of ``tell``.
     scale
         Factors on the rates of ferrite, pearlite, bainite and cementite, (n_node, N_SCALE).
     """
@@ -90,6 +92,7 @@ class Run:
         watch: Watch,
         field_times: Array,
         scale: Array | None = None,
+        rows: int = HISTORY_ROWS,
     ) -> None:
         n = body.n_node
         self._volumes = body
@@ -121,7 +124,7 @@ class Run:
             field=np.full((len(field_times), n), np.nan),
             watch_node=watch.node,
             watch_share=watch.share,
-            history=np.zeros((HISTORY_ROWS, len(watch.node) + 1, 6)),
+            history=np.zeros((rows, len(watch.node) + 1, 6)),
         )
         self.progress.book[:] = self._body.mass * self.enthalpy()
         self.heat_at_start = float(self.progress.book.sum())
@@ -220,7 +223,13 @@ class Run:
         while True:
             clock[march.HISTORY_ROW] = 0
             status = march.march(
-                self._scheme, self._body, skin, self.tables, control, self.progress, HISTORY_ROWS
+                self._scheme,
+                self._body,
+                skin,
+                self.tables,
+                control,
+                self.progress,
+                len(self.progress.history),
             )
             self._history.append(self.progress.history[: int(clock[march.HISTORY_ROW])].copy())
             if tell is not None:

@@ -36,6 +36,7 @@ from midradius.thermo.errors import InputFault
 
 UNIT_ENDINGS = (
     "_K_per_s",
+    "_astm",
     "_code",
     "_degC",
     "_fraction",

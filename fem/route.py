@@ -1,7 +1,8 @@
 """A section through all stages of its route, and what that leaves.
 
-The part starts at one temperature, that of the soak; each stage then has films
-by zone and an end by time, by a place reaching a temperature, or both.
+The part starts at one temperature, that of the soak, or at the field that a furnace
+has left; each stage then has films by zone and an end by time, by a place reaching a
+temperature, or both.
 """
 
 from collections.abc import Callable, Mapping
@@ -99,7 +100,7 @@ def cool(
     stages: tuple[CoolingStage, ...],
     *,
     density: float,
-    start_temp: float,
+    start_temp: Array | float,
     state: Array,
     carbon_pct: float,
     places: Mapping[str, Place],
@@ -107,6 +108,8 @@ def cool(
     field_times: Array,
     tolerance: float,
     tell: Callable[[float], None] | None = None,
+    scale: Array | None = None,
+    first_number: int = 1,
 ) -> History:
     """March a cut section through its stages.
 
@@ -119,7 +122,7 @@ def cool(
     stages
         After the soak.
     density, start_temp, carbon_pct
-        [kg/m3], [K], [mass %].
+        [kg/m3]; [K], one or (n_node,); [mass %].
     state
         Starting state of every node, (n_node, N_STATE).
     places
@@ -133,6 +136,10 @@ def cool(
         Local temperature error per step [K].
     tell
         Called with the simulated time [s] now and then.
+    scale
+        Factors on the rates, as `Run` takes them.
+    first_number
+        Place of the first stage in the route, for messages.
 
     Raises
     ------
@@ -155,9 +162,10 @@ def cool(
             np.array([places[name].share for name in watched]),
         ),
         field_times=field_times,
+        scale=scale,
     )
     ends = []
-    for number, stage in enumerate(stages, start=1):
+    for number, stage in enumerate(stages, start=first_number):
         _refuse_heating(stage, number, run.progress.temp)
         begun, before = run.time, run.progress.zone_heat.sum()
         until = None
