@@ -44,6 +44,15 @@ def write_fields(result: Result, folder: Path) -> Path:
         "pearlite_spacing_um": result.pearlite_spacing_um[node],
         "impact_transition_degC": result.impact_transition_degC[node],
     }
+    soaked = result.soaked
+    at_end |= {
+        "soak_reached_degC": soaked.hottest_degC[node],
+        "carbon_in_solution_pct": soaked.carbon_in_solution_pct[node],
+        "undissolved_ferrite_fraction": soaked.ferrite[node],
+        "undissolved_cementite_fraction": soaked.cementite[node],
+        "austenite_grain_astm": soaked.grain_astm[node],
+        "austenite_grain_um": soaked.grain_um[node],
+    }
     if np.isfinite(result.cementite_film_um).any():
         at_end["cementite_film_um"] = result.cementite_film_um[node]
         at_end["cementite_network_code"] = result.cementite_network[node].astype(np.float64)
@@ -113,6 +122,19 @@ def _numbers(result: Result) -> dict[str, Quantity]:
             "degC",
             "27 J transition of ferrite with pearlite, nan outside",
         ),
+        "soak/reached": many(r.soaked.hottest_degC, "degC", "highest temperature of the soak"),
+        "soak/carbon_in_solution": many(
+            r.soaked.carbon_in_solution_pct, "mass percent", "carbon of the austenite"
+        ),
+        "soak/ferrite": many(r.soaked.ferrite, "1", "ferrite that the soak left"),
+        "soak/cementite": many(r.soaked.cementite, "1", "cementite that the soak left"),
+        "soak/grain_number": many(
+            r.soaked.grain_astm, "ASTM E112", "prior austenite grain, nan where none formed"
+        ),
+        "soak/grain_intercept": many(r.soaked.grain_um, "um", "mean intercept of that grain"),
+        "soak/austenitised": many(
+            r.soaked.austenitised.astype(np.int64), "1", "whether a node became austenite"
+        ),
         "histories/time": many(r.history_times_s, "s", "times of the histories"),
         "histories/temperature": many(r.history_temp_degC, "degC", "temperature (time, position)"),
         "profile/depth": many(r.profile.depth_mm, "mm", f"depth, {r.profile.label}"),
@@ -124,6 +146,19 @@ def _numbers(result: Result) -> dict[str, Quantity]:
         "counts/steps": one(r.n_step, "1", "number of time steps"),
         "counts/nodes": one(r.n_node, "1", "number of solved nodes"),
     }
+    if r.heating is not None:
+        data |= {
+            "heating/time": many(r.heating.times_s, "s", "since the part came into the furnace"),
+            "heating/temperature": many(
+                r.heating.temp_degC, "degC", "temperature in the furnace (time, position)"
+            ),
+            "balance/heat_taken": one(
+                r.heating.heat_taken_J_per_kg, "J/kg", "heat taken up in the furnace"
+            ),
+            "balance/heating_closure": one(
+                r.heating.heat_balance_relative, "1", "relative closure of the heating's balance"
+            ),
+        }
     for name, temp in r.critical_degC.items():
         data[f"critical/{_plain(name)}"] = one(temp, "degC", f"critical temperature {name}")
     for key, units, long_name in _POSITION_COLUMNS:
@@ -148,6 +183,12 @@ _POSITION_COLUMNS = (
     ("pearlite_spacing_um", "um", "interlamellar spacing of pearlite as cooled"),
     ("cementite_film_um", "um", "cementite on grain faces, nan unless hypereutectoid"),
     ("impact_transition_degC", "degC", "27 J transition of ferrite with pearlite"),
+    ("soak_degC", "degC", "highest temperature of the soak"),
+    ("carbon_in_solution_pct", "mass percent", "carbon of the austenite after the soak"),
+    ("undissolved_ferrite", "1", "ferrite that the soak left"),
+    ("undissolved_cementite", "1", "cementite that the soak left"),
+    ("austenite_grain_astm", "ASTM E112", "prior austenite grain, nan where none formed"),
+    ("austenite_grain_um", "um", "mean intercept of that grain"),
     ("hardness_time_error_hv", "HV", "estimated hardness error of the time steps"),
     ("hardness_grid_error_hv", "HV", "estimated hardness error of the grid"),
 )
@@ -170,6 +211,9 @@ def _texts(result: Result) -> dict[str, str]:
         "position_network_json": _json([p.cementite_network for p in result.positions]),
         "position_phases_json": _json([dict(p.phases) for p in result.positions]),
         "stages_json": _json([asdict(stage) for stage in result.stages]),
+        "heating_stages_json": _json(
+            [asdict(stage) for stage in result.heating.stages] if result.heating else []
+        ),
         "tempers_json": _json([asdict(temper) for temper in result.tempers]),
         "needs_json": _json([asdict(verdict) for verdict in result.verdicts]),
         "notes_json": _json([asdict(note) for note in result.notes]),

@@ -2,6 +2,8 @@
 
 from dataclasses import asdict
 
+import numpy as np
+
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.remains import Remains
 from midradius.study import uncertainty
@@ -16,17 +18,20 @@ from midradius.thermo import (
     embrittlement,
     equilibrium,
     hardness,
+    heatup,
     martensite,
     network,
     properties,
+    soaked,
     steel,
     strength,
     tempering,
     toughness,
 )
 from midradius.thermo.arrays import Array
-from midradius.thermo.austenite import Austenite
+from midradius.thermo.soaked import Soaked
 from midradius.thermo.source import RangeNote, Source
+from midradius.thermo.steel import Composition
 
 # Above it bainite could still form on the way to room temperature [estimate].
 ENDS_HOT = 200.0 + ZERO_DEGC
@@ -35,7 +40,6 @@ ENDS_HOT = 200.0 + ZERO_DEGC
 def notes_of(
     case: Asked,
     more: tuple[RangeNote, ...],
-    left: Austenite,
     history: Remains,
     value: Worth,
     *,
@@ -48,13 +52,15 @@ def notes_of(
     of every node at the end; ``more`` are notes of the setup.
     """
     composition = case.steel.steel.composition
+    left = value.soaked
+    # the poorest and the richest austenite stand for all between
+    ends = (int(np.argmin(left.carbon_pct)), int(np.argmax(left.carbon_pct)))
     found = [
         *case.steel.notes,
         *steel.range_notes(composition),
         *equilibrium.range_notes(composition),
         *left.notes,
-        *diffusional.range_notes(composition, left.carbon_pct, left.grain_astm),
-        *martensite.range_notes(left.composition),
+        *(note for each in ends for note in _of_austenite(composition, left, each)),
         *hardness.range_notes(composition, history.phases, history.rate_700),
         *value.notes,
         *properties.range_notes(seen, composition.C),
@@ -73,6 +79,16 @@ def notes_of(
     return tuple(dict.fromkeys(found))
 
 
+def _of_austenite(composition: Composition, left: Soaked, node: int) -> list[RangeNote]:
+    if not left.austenitised[node]:
+        return []
+    carbon, grain = float(left.carbon_pct[node]), float(left.grain_astm[node])
+    return [
+        *diffusional.range_notes(composition, carbon, grain),
+        *martensite.range_notes(left.kinds[int(left.kind[node])].composition),
+    ]
+
+
 def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     """The works that a run of the case rests on."""
     found: list[Source] = [source_of(case.steel.steel)]
@@ -82,6 +98,7 @@ def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     rich = equilibrium.equilibrium(composition).eutectoid_carbon_pct < composition.C
     used += [network] if rich else []
     used += [toughness] if toughness.applies(composition) else []
+    used += [soaked, heatup] if case.heating else []
     used += [calibration] if case.steel.calibration else []
     used += [uncertainty] if case.needs else []
     for module in used:

@@ -26,15 +26,14 @@ import numpy as np
 
 from midradius.fem import section as forms
 from midradius.fem.route import cool
+from midradius.study.begin import begin
 from midradius.study.case import Case, Outputs, PositionInput, SteelInput
 from midradius.study.endquench import ACCURACY, CELLS, DIAMETER, FLAT, piece
 from midradius.study.measuredcurve import MeasuredCurve
 from midradius.study.setup import coordinates_of, prepare
 from midradius.study.worth import worth
-from midradius.thermo import austenite as soaking
 from midradius.thermo import properties
 from midradius.thermo.arrays import Array, BoolArray
-from midradius.thermo.assemble import initial_state, steel_tables
 from midradius.thermo.austenitizing import SOAK_TIME, austenitizing
 from midradius.thermo.calibration import NAMES, NONE, Calibration, Shifts, calibrate
 from midradius.thermo.conversion import hrc_to_hv, hv_to_hrc
@@ -160,26 +159,26 @@ def _hardness_hv(case: Case, shifts: Shifts) -> Array:
     """Hardness [HV] at the positions of a test piece, (n_position,), of one march."""
     case = replace(case, steel=replace(case.steel, shifts=shifts))
     setup = prepare(case)
-    soak, steel = case.route[0], case.steel.steel
-    assert soak.at is not None and soak.time is not None, "the piece is soaked"
-    left = soaking.soak(steel, soak.at, soak.time, grain_astm=case.steel.grain_astm)
     cut = forms.cut(setup.section, CELLS, strongest_film=setup.strongest_film)
     places = [forms.place(cut, coordinates_of(cut.section, p)) for p in case.outputs.positions]
-    carbon = steel.composition.C
+    begun = begin(
+        case, setup.furnace, cut, places={"0": places[0]}, watched=("0",), tolerance=STEP_TOLERANCE
+    )
     history = cool(
         cut,
-        steel_tables(steel, left, shifts),
+        begun.tables,
         setup.stages,
         density=properties.DENSITY,
-        start_temp=soak.at,
-        state=initial_state(left, carbon, soak.at, cut.body.n_node),
-        carbon_pct=carbon,
+        start_temp=begun.temp,
+        state=begun.state,
+        carbon_pct=case.steel.steel.composition.C,
         places={"0": places[0]},
         watched=("0",),
         field_times=np.zeros(1),
         tolerance=STEP_TOLERANCE,
+        scale=begun.scale,
     )
-    hv = worth(case, left, history).hardness_hv
+    hv = worth(case, begun.soaked, history).hardness_hv
     return np.array([float((hv[place.node] * place.share).sum()) for place in places])
 
 

@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from midradius.thermo.calibration import Shifts
 
 Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
-StageKind = Literal["soak", "transfer", "quench", "hold", "temper"]
+StageKind = Literal["heat", "soak", "transfer", "quench", "hold", "temper"]
 PositionKind = Literal[
     "surface",
     "core",
@@ -55,18 +55,19 @@ class Until:
 
     position: str
     temp: float
-    sense: Literal["below"] = "below"
+    sense: Literal["below", "above"] = "below"
 
 
 @dataclass(frozen=True)
 class Stage:
     """One stage of the route.
 
-    ``at`` [K] belongs to the soak and to tempers, ``time`` [s] to any stage; that of a
-    temper counts from when the part is hot throughout. A stage with both
-    ``time`` and ``until`` ends at whichever comes first. ``faces`` names the
-    zones that see something else than ``medium``; it wins over the bore medium
-    of the section.
+    ``at`` [K] belongs to the soak, to tempers and, as that of the furnace, to heating;
+    ``start`` [K] of the part and ``ramp`` [K/s] of the furnace belong to heating alone.
+    ``time`` [s] belongs to any stage; that of a temper counts from when the part
+    is hot throughout. A stage with both ``time`` and ``until`` ends at whichever
+    comes first. ``faces`` names the zones that see something else than ``medium``;
+    it wins over the bore medium of the section.
     """
 
     kind: StageKind
@@ -75,6 +76,8 @@ class Stage:
     medium: MediumUse | None = None
     until: Until | None = None
     faces: Mapping[str, MediumUse] = field(default_factory=dict)
+    start: float | None = None
+    ramp: float | None = None
 
 
 def _no_shifts() -> "Shifts":
@@ -224,9 +227,19 @@ class Asked:
     path: Path | None = field(default=None, compare=False)
 
     @property
+    def soak(self) -> Stage:
+        """The soak."""
+        return next(stage for stage in self.route if stage.kind == "soak")
+
+    @property
+    def heating(self) -> tuple[Stage, ...]:
+        """The stages that heat the part, before the soak; none where it is hot throughout."""
+        return tuple(stage for stage in self.route if stage.kind == "heat")
+
+    @property
     def cooling(self) -> tuple[Stage, ...]:
         """The stages between the soak and the tempers."""
-        return tuple(stage for stage in self.route if stage.kind not in ("soak", "temper"))
+        return tuple(stage for stage in self.route if stage.kind not in ("heat", "soak", "temper"))
 
     @property
     def tempers(self) -> tuple[Stage, ...]:

@@ -37,8 +37,9 @@ OPTIONAL: Mapping[Form, tuple[str, ...]] = {
 }
 EMISSIVITY_RANGE = (0.05, 1.0)
 ALL_DIMENSIONS = ("thickness", "diameter", "length", "outside", "bore", "width", "height")
-STAGES: tuple[StageKind, ...] = ("soak", "transfer", "quench", "hold", "temper")
+STAGES: tuple[StageKind, ...] = ("heat", "soak", "transfer", "quench", "hold", "temper")
 COOLS: tuple[StageKind, ...] = ("transfer", "quench", "hold")
+HEAT = ("stage", "medium", "furnace", "from", "ramp", "time", "until")
 SOAK = ("stage", "at", "time")
 TEMPER = ("stage", "at", "time")
 COOLING = ("stage", "medium", "bath", "film", "time", "until", "faces")
@@ -59,6 +60,8 @@ FIELD_TIME_RANGE = (0.0, 30.0 * 86_400.0)
 # The thermal properties hold from 250 to 1500 K; a whole number of degC inside.
 TEMP_RANGE = (253.15, 1493.15)
 SOAK_RANGE = (600.0 + ZERO_DEGC, TEMP_RANGE[1])
+FURNACE_RANGE = (100.0 + ZERO_DEGC, 1200.0 + ZERO_DEGC)
+RAMP_RANGE = (1.0 / 3600.0, 10.0)
 TEMPER_COLDEST, TEMPER_HOTTEST = 50.0 + ZERO_DEGC, 727.0 + ZERO_DEGC  # or Ae1 of the steel
 GRAIN_RANGE = (-1.0, 14.0)
 FIELDS_RANGE = (2, 1000)

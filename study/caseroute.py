@@ -9,6 +9,7 @@ from midradius.thermo.errors import InputFault
 from midradius.thermo.tempering import refuse_secondary_hardening
 from midradius.thermo.units import parse, show
 
+from . import caseheat
 from . import casekeys as keys
 from .case import MediumUse, Outputs, SectionInput, Stage, StageKind, SteelInput, Until, position
 from .caselines import KeyPath
@@ -33,6 +34,7 @@ def route(
         return ()
     stages: list[Stage] = []
     soak: float | None = None
+    heated: Stage | None = None
     seen: set[StageKind] = set()
     items = top.items("route", "[[route]] before each stage")
     if len(items) > keys.STAGES_MOST:
@@ -44,26 +46,31 @@ def route(
             continue
         table = Table(value, key, top.notes)
         kind = _kind(table, place, seen)
+        again = kind in seen
         if kind:
             seen.add(kind)
         if kind == "temper":
             stage = _temper(table, steel)
+        elif kind == "heat":
+            stage = caseheat.heat(table, section, outputs, again=again)
+            heated = stage or heated
         elif kind == "soak":
             stage = _soak(table, steel)
             soak = stage.at if stage else None
+            if stage and heated and (found := caseheat.soak_fault(stage, heated)):
+                table.fault("at", *found)
         elif kind:
             stage = _cooling(table, kind, section, outputs, soak)
         else:
             stage = None
         if stage:
             stages.append(stage)
-    if len(items) == 1 and not top.notes.has(items[0][0]):
-        top.notes.add(
-            items[0][0],
-            items[0][1],
-            "followed by a stage that cools",
-            'Add a [[route]] with stage = "quench".',
-        )
+    key, value = items[-1]
+    if seen <= {"heat", "soak"} and not top.notes.has(key):
+        remedy = 'Add a [[route]] with stage = "quench".'
+        if "soak" not in seen:
+            remedy = f"A soak, and then a stage that cools: {_SOAK}."
+        top.notes.add(key, value, "followed by a stage that cools", remedy)
     return tuple(stages)
 
 
@@ -73,14 +80,18 @@ _SOAK_HINT = f"Write [[route]] and below it {_SOAK.replace(', ', '; ')}."
 def _kind(table: Table, place: int, seen: set[StageKind]) -> StageKind | None:
     if not table.has("stage"):
         table.missing("stage", one_of(keys.STAGES))
-        table.only(tuple(dict.fromkeys(keys.SOAK + keys.COOLING)))
+        table.only(tuple(dict.fromkeys(keys.HEAT + keys.SOAK + keys.COOLING)))
         return None
     kind = cast(StageKind | None, table.choice("stage", keys.STAGES))
-    if kind and place == 0 and kind != "soak":
-        table.fault("stage", 'a "soak" first', f"The soak says what austenite there is: {_SOAK}.")
-    if kind == "soak" and place > 0:
+    if kind and place == 0 and kind not in ("heat", "soak"):
+        remedy = f"The soak says what austenite there is: {_SOAK}."
+        table.fault("stage", 'a "soak" first, or a "heat" before it', remedy)
+    late = seen - {"heat"} if kind == "soak" else seen & {"soak", *keys.COOLS, "temper"}
+    if kind in ("heat", "soak") and late:
         remedy = "Heating up again between stages is not computed; describe the last soak only."
         table.fault("stage", '"transfer", "quench" or "hold" after the first stage', remedy)
+    if kind in keys.COOLS and seen == {"heat"}:
+        table.fault("stage", 'a "soak" after the last "heat"', f"Write {_SOAK}.")
     if kind == "temper" and place > 0 and seen.isdisjoint(keys.COOLS):
         remedy = "A temper softens what a quench has hardened: put it last."
         table.fault("stage", f"{one_of(keys.COOLS)} before the first temper", remedy)

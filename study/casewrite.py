@@ -82,7 +82,13 @@ def _grade(steel: SteelInput) -> str:
 
 def _stage(stage: Stage, folder: Path) -> list[str]:
     lines = [f'stage = "{stage.kind}"']
-    if stage.at is not None:
+    if stage.kind == "heat":
+        lines.append(f'furnace = "{show(stage.at or 0.0, "temperature")}"')
+        if stage.start is not None:
+            lines.append(f'from = "{show(stage.start, "temperature")}"')
+        if stage.ramp is not None:
+            lines.append(f'ramp = "{show(stage.ramp, "heating rate")}"')
+    elif stage.at is not None:
         lines.append(f'at = "{show(stage.at, "temperature")}"')
     if stage.medium:
         lines += [f"{key} = {value}" for key, value in _medium(stage.medium, folder)]
@@ -90,7 +96,7 @@ def _stage(stage: Stage, folder: Path) -> list[str]:
         lines.append(f'time = "{show(stage.time, "duration")}"')
     if stage.until:
         temp = show(stage.until.temp, "temperature")
-        lines.append(f"until = {_quoted(f'{stage.until.position} below {temp}')}")
+        lines.append(f"until = {_quoted(f'{stage.until.position} {stage.until.sense} {temp}')}")
     if stage.faces:
         faces = [f"{_key(zone)} = {_inline(use, folder)}" for zone, use in stage.faces.items()]
         lines.append(f"faces = {{ {', '.join(faces)} }}")

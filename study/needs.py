@@ -31,7 +31,6 @@ from midradius.study.uncertainty import AS_COOLED, TEMPERED, Spread
 from midradius.study.worth import Worth
 from midradius.thermo import conversion
 from midradius.thermo.arrays import Array
-from midradius.thermo.austenite import Austenite
 from midradius.thermo.phases import MARTENSITE, PHASE_NAMES
 
 MPA_PER_KSI = 6.894757293168361
@@ -77,7 +76,6 @@ class _Run:
     """The arguments of `judge`."""
 
     case: Asked
-    austenite: Austenite
     answer: Placed
     rough: Placed
     sharp: Placed
@@ -110,7 +108,6 @@ class _Limits:
 
 def judge(
     case: Case,
-    austenite: Austenite,
     answer: Placed,
     rough: Placed,
     sharp: Placed,
@@ -120,8 +117,8 @@ def judge(
 
     Parameters
     ----------
-    case, austenite
-        What was asked, and what the soak left.
+    case
+        What was asked.
     answer, rough, sharp
         The run's own solution; one on the coarser grid; one on the coarser grid with
         the tighter tolerance; each with the places of the case on its grid.
@@ -134,13 +131,12 @@ def judge(
     def error(value: float, rough: float, sharp: float) -> float:
         return by_time * abs(sharp - rough) + by_grid * abs(value - rough)
 
-    run = _Run(case, austenite, answer, rough, sharp, error)
+    run = _Run(case, answer, rough, sharp, error)
     return tuple(_judged(run, need) for need in case.needs)
 
 
 def judge_given(
     case: Asked,
-    austenite: Austenite,
     lines: Placed,
     halved: Placed,
     cubic: Placed,
@@ -153,7 +149,7 @@ def judge_given(
     ``error`` tells that of the samples from the values along straight lines, along every
     second sample and along the cubic; ``called`` is a node in words.
     """
-    run = _Run(case, austenite, lines, halved, cubic, error, called)
+    run = _Run(case, lines, halved, cubic, error, called)
     return tuple(_judged(run, need) for need in case.needs)
 
 
@@ -165,11 +161,6 @@ def any_fails(verdicts: Sequence[Verdict]) -> bool:
 def _judged(run: _Run, need: Need) -> Verdict:
     if need.quantity == keys.DEPTH:
         return _depth(run, need)
-    if need.quantity == keys.GRAIN:
-        given = run.case.steel.grain_astm is not None
-        spread = uncertainty.grain(given=given)
-        limits = _Limits(need.at_least, need.at_most)
-        return _verdict(need, need.unit, limits, run.austenite.grain_astm, 0.0, spread, "")
     if need.quantity in ("hardness", "tensile"):
         return _of_hardness(run, need)
     return _of_field(run, need)
@@ -214,7 +205,9 @@ def _of_field(run: _Run, need: Need) -> Verdict:
 
     value, error = read(*run.answer), run.numerical(read)
     composition = run.case.steel.steel.composition
-    if need.quantity == "yield":
+    if need.quantity == keys.GRAIN:
+        spread = uncertainty.grain(given=run.case.steel.grain_astm is not None)
+    elif need.quantity == "yield":
         spread = uncertainty.yield_strength(composition, value, condition=run.condition)
     elif need.quantity == keys.FILM:
         spread = uncertainty.cementite_film(value)
@@ -222,6 +215,8 @@ def _of_field(run: _Run, need: Need) -> Verdict:
         part = uncertainty.fraction(0.01 * value, hardened=need.quantity == "martensite")
         spread = Spread(100.0 * part.below, 100.0 * part.above, part.basis, part.measured)
     answer = field(run.answer[0])
+    if np.ptp(answer) == 0.0:  # alike throughout: no place is better or worse
+        return _verdict(need, need.unit, limits, value, error, spread, "")
     note = _where(run, need, answer, limits)
     verdict = _verdict(need, need.unit, limits, value, error, spread, note)
     return _with_remedy(run, need, verdict, answer, limits)
@@ -231,6 +226,8 @@ def _field(need: Need, solution: Solution) -> Array:
     worth = solution.worth
     if need.quantity == "yield":
         return worth.yield_mpa / (MPA_PER_KSI if need.unit == "ksi" else 1.0)
+    if need.quantity == keys.GRAIN:
+        return worth.soaked.grain_astm
     if need.quantity == keys.FILM:
         return 1e6 * worth.scales.cementite_film
     return np.asarray(100.0 * worth.phases[PHASE_NAMES.index(need.quantity)])
@@ -242,7 +239,8 @@ def _value(
     """A field at the place of a need; everywhere: at the worst node."""
     if need.position != EVERYWHERE:
         at = places[need.position]
-        return float((field[at.node] * at.share).sum())
+        used = at.share != 0.0  # a neighbour that does not count may have no value
+        return float((field[at.node[used]] * at.share[used]).sum())
     if np.isnan(field).any():
         return float("nan")
     return float(field[np.argmin(limits.margin(field))])

@@ -8,7 +8,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Literal
 
-from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.source import RangeNote, Source
 
 
@@ -37,6 +37,8 @@ class Position:
     its hardened part is outside 147 to 656 HV. Lengths are those as cooled, None where there
     is too little of the constituent; film and network of `thermo.network`, None for a steel
     that is not hypereutectoid; ``impact_transition_degC`` is None outside its relation.
+    ``soak_degC`` is the hottest it was, the four after it what the soak left; the grain is
+    None where nothing became austenite.
     ``depth_mm`` counts from the nearest cooled surface.
     """
 
@@ -58,6 +60,12 @@ class Position:
     cementite_film_um: float | None
     cementite_network: str | None
     impact_transition_degC: float | None
+    soak_degC: float
+    carbon_in_solution_pct: float
+    undissolved_ferrite: float
+    undissolved_cementite: float
+    austenite_grain_astm: float | None
+    austenite_grain_um: float | None
     hardness_time_error_hv: float
     hardness_grid_error_hv: float
 
@@ -89,6 +97,33 @@ class TemperRecord:
 
     at_degC: float
     time_s: float
+
+
+@dataclass(frozen=True)
+class SoakFields:
+    """What the soak left at every node, (n_node,) each: the highest temperature, carbon in
+    solution, undissolved fractions, austenite grain (number and mean intercept), which is
+    nan where ``austenitised`` says that nothing became austenite."""
+
+    hottest_degC: Array
+    carbon_in_solution_pct: Array
+    ferrite: Array
+    cementite: Array
+    grain_astm: Array
+    grain_um: Array
+    austenitised: BoolArray
+
+
+@dataclass(frozen=True)
+class HeatingRecord:
+    """How the part came to its soak: stages that count from when it enters the furnace,
+    heat given off negative; ``times_s`` (n_step,), ``temp_degC`` (n_step, n_position)."""
+
+    stages: tuple[StageRecord, ...]
+    times_s: Array
+    temp_degC: Array
+    heat_taken_J_per_kg: float
+    heat_balance_relative: float
 
 
 Outcome = Literal["holds", "fails", "too close to call"]
@@ -153,6 +188,7 @@ class Result:
     cementite_film_um: Array
     cementite_network: IntArray
     impact_transition_degC: Array
+    soaked: SoakFields
     history_times_s: Array
     history_temp_degC: Array
     positions: tuple[Position, ...]
@@ -168,6 +204,7 @@ class Result:
     grid_error_K: float
     n_step: int
     n_node: int
+    heating: HeatingRecord | None = None
     verdicts: tuple[Verdict, ...] = ()
     notes: tuple[RangeNote, ...] = ()
     sources: tuple[Source, ...] = ()

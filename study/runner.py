@@ -9,9 +9,10 @@ import numpy as np
 from midradius.fem import section as forms
 from midradius.fem.drawing import draw
 from midradius.fem.media import ZERO_DEGC
-from midradius.fem.route import CoolingStage, History, cool
+from midradius.fem.route import History, cool
 from midradius.fem.section import Cut, Place
 from midradius.study.basis import inputs_of, notes_of, sources_of
+from midradius.study.begin import Begun, begin
 from midradius.study.case import Case
 from midradius.study.needs import judge
 from midradius.study.result import (
@@ -19,17 +20,20 @@ from midradius.study.result import (
     Profile,
     Result,
     SectionView,
-    StageRecord,
     TemperRecord,
 )
 from midradius.study.setup import Setup, coordinates_of, prepare
+from midradius.study.soaktext import (
+    heating_record,
+    hottest_kind,
+    soak_fields,
+    soak_text,
+    soak_warnings,
+    stage_record,
+)
 from midradius.study.worth import Worth, tempers_of, worth
-from midradius.thermo import austenite as soaking
 from midradius.thermo import conversion, diffusional, equilibrium, martensite, network, properties
 from midradius.thermo.arrays import Array
-from midradius.thermo.assemble import initial_state, steel_tables
-from midradius.thermo.austenite import Austenite
-from midradius.thermo.kinetics import Tables
 from midradius.thermo.phases import PHASE_NAMES
 
 # By dimension: error of one step against the asked accuracy of the run, and the
@@ -52,48 +56,42 @@ Tell = Callable[[float, float], None]
 
 @dataclass(frozen=True)
 class _Attempt:
-    """One march and what its structure is worth."""
+    """One march from the furnace on, and what its structure is worth."""
 
     cut: Cut
+    begun: Begun
     history: History
     worth: Worth
 
 
-@dataclass(frozen=True)
-class _Material:
-    """The steel of a case, ready to march."""
-
-    case: Case
-    austenite: Austenite
-    tables: Tables
-    start_temp: float
-
-    def march(
-        self,
-        cut: Cut,
-        stages: tuple[CoolingStage, ...],
-        places: Mapping[str, Place],
-        watched: tuple[str, ...],
-        times: Array,
-        tolerance: float,
-        tell: Callable[[float], None] | None = None,
-    ) -> _Attempt:
-        carbon = self.case.steel.steel.composition.C
-        history = cool(
-            cut,
-            self.tables,
-            stages,
-            density=properties.DENSITY,
-            start_temp=self.start_temp,
-            state=initial_state(self.austenite, carbon, self.start_temp, cut.body.n_node),
-            carbon_pct=carbon,
-            places=places,
-            watched=watched,
-            field_times=times,
-            tolerance=tolerance,
-            tell=tell,
-        )
-        return _Attempt(cut, history, worth(self.case, self.austenite, history))
+def _march(
+    cut: Cut,
+    case: Case,
+    setup: Setup,
+    places: Mapping[str, Place],
+    times: Array,
+    tolerance: float,
+    tell: Callable[[float], None] | None = None,
+) -> _Attempt:
+    watched = tuple(case.watched)
+    begun = begin(case, setup.furnace, cut, places=places, watched=watched, tolerance=tolerance)
+    history = cool(
+        cut,
+        begun.tables,
+        setup.stages,
+        density=properties.DENSITY,
+        start_temp=begun.temp,
+        state=begun.state,
+        carbon_pct=case.steel.steel.composition.C,
+        places=places,
+        watched=watched,
+        field_times=times,
+        tolerance=tolerance,
+        tell=tell,
+        scale=begun.scale,
+        first_number=len(case.heating) + 1,
+    )
+    return _Attempt(cut, begun, history, worth(case, begun.soaked, history))
 
 
 def run(case: Case, *, tell: Tell | None = None) -> Result:
@@ -119,19 +117,13 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         The solver gave up.
     """
     setup = prepare(case)
-    soak = case.route[0]
-    assert soak.at is not None and soak.time is not None, "the first stage is a soak"
-    left = soaking.soak(case.steel.steel, soak.at, soak.time, grain_astm=case.steel.grain_astm)
-    material = _Material(
-        case, left, steel_tables(case.steel.steel, left, case.steel.shifts), soak.at
-    )
     dim = len(setup.section.spans)
     tolerance = TOLERANCE_PER_ACCURACY[dim] * case.grid.accuracy
     cells = case.grid.cells or forms.cells_for(setup.section, case.grid.accuracy)
     while True:
         fine = forms.cut(setup.section, _even(cells), strongest_film=setup.strongest_film)
         coarse = fine.coarser()
-        march = partial(material.march, stages=setup.stages, watched=tuple(case.watched))
+        march = partial(_march, case=case, setup=setup)
         at_fine, at_coarse = _places(case, fine), _places(case, coarse)
         scout = march(
             coarse, places=at_coarse, times=np.zeros(1), tolerance=4.0 * tolerance
@@ -168,9 +160,7 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
     time_error = TIME_FACTOR * float(np.abs(tight.history.field - loose.history.field).max())
     kept = np.isin(times, asked)
     main = replace(main, history=replace(main.history, times=asked, field=main.history.field[kept]))
-    return _result(
-        case, setup, material, main, rough, sharp, at_fine, at_coarse, time_error, grid_error
-    )
+    return _result(case, setup, main, rough, sharp, at_fine, at_coarse, time_error, grid_error)
 
 
 def _even(cells: tuple[int, ...]) -> tuple[int, ...]:
@@ -187,7 +177,7 @@ def _shared(field: Array, fine: Cut) -> Array:
 
 def _places(case: Case, cut: Cut) -> dict[str, Place]:
     named = dict(case.watched)
-    for stage in case.cooling:
+    for stage in (*case.heating, *case.cooling):
         if stage.until and stage.until.position not in named:
             named[stage.until.position] = case.position(stage.until.position)
     return {
@@ -223,7 +213,6 @@ def _spread(scout: History, count: int) -> Array:
 def _result(
     case: Case,
     setup: Setup,
-    material: _Material,
     main: _Attempt,
     rough: _Attempt,
     sharp: _Attempt,
@@ -242,7 +231,7 @@ def _result(
         _position(name, main, at_fine[name], rough, sharp, at_coarse[name]) for name in case.watched
     )
     eq = equilibrium.equilibrium(composition)
-    left = material.austenite
+    left = hottest_kind(main.worth.soaked)
     return Result(
         title=case.title,
         steel=case.steel.steel.name,
@@ -267,21 +256,13 @@ def _result(
         cementite_film_um=_film_um(main.worth),
         cementite_network=main.worth.scales.network,
         impact_transition_degC=main.worth.scales.impact_transition - ZERO_DEGC,
+        soaked=soak_fields(main.worth.soaked),
         history_times_s=history.step_times,
         history_temp_degC=history.watch_temp - ZERO_DEGC,
         positions=positions,
         profile=Profile(depth * 1e3, nodes, label),
         stages=tuple(
-            StageRecord(
-                kind=stage.kind,
-                medium=stage.label,
-                start_s=went.start,
-                end_s=went.end,
-                ended_by="time"
-                if went.ended_by == "time"
-                else f"{stage.until_place} below {(stage.until_temp or 0.0) - ZERO_DEGC:.4g} degC",
-                heat_to_bath_J=factor * went.heat_given,
-            )
+            stage_record(stage, went, factor, "below")
             for stage, went in zip(setup.stages, history.stages, strict=True)
         ),
         tempers=tuple(TemperRecord(t.temp - ZERO_DEGC, t.time) for t in tempers_of(case)),
@@ -295,7 +276,7 @@ def _result(
             "Ms": float(martensite.start(left.composition, left.carbon_pct))
             + (case.steel.shifts.martensite_start - ZERO_DEGC),
         },
-        soak=_soak_text(case, left),
+        soak=soak_text(case, main.begun),
         heat_given_J_per_kg=history.heat_given / mass,
         heat_extent=extent,
         heat_balance_relative=history.balance,
@@ -303,16 +284,17 @@ def _result(
         grid_error_K=grid_error,
         n_step=history.n_step,
         n_node=cut.body.n_node,
-        verdicts=judge(
-            case, left, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS
-        ),
+        heating=heating_record(setup.furnace, main.begun, factor, mass),
+        verdicts=judge(case, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS),
         notes=notes_of(
-            case, setup.notes, left, history, main.worth, seen=history.field, last=history.temp
+            case, setup.notes, history, main.worth, seen=history.field, last=history.temp
         ),
         sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
-        cautions=setup.cautions + main.worth.cautions,
+        cautions=soak_warnings(main.worth.soaked, case.soak.at or 0.0, cut.body.volume)
+        + setup.cautions
+        + main.worth.cautions,
         inputs=inputs_of(case),
         case_text=case.text,
     )
@@ -322,12 +304,13 @@ def _position(
     name: str, main: _Attempt, at: Place, rough: _Attempt, sharp: _Attempt, at_coarse: Place
 ) -> Position:
     def here(values: Array, place: Place) -> float:
-        return float((values[place.node] * place.share).sum())
+        used = place.share != 0.0  # a neighbour that does not count may have no value
+        return float((values[place.node[used]] * place.share[used]).sum())
 
     hv = here(main.worth.hardness_hv, at)
     hv_rough = here(rough.worth.hardness_hv, at_coarse)
     hv_sharp = here(sharp.worth.hardness_hv, at_coarse)
-    history, sizes = main.history, main.worth.scales
+    history, sizes, soaked = main.history, main.worth.scales, main.worth.soaked
     film = here(_film_um(main.worth), at)
     phases = {phase: here(main.worth.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
     return Position(
@@ -351,6 +334,12 @@ def _position(
             network.NAMES[int(network.network(np.array(1e-6 * film)))] if film == film else None
         ),
         impact_transition_degC=_known(here(sizes.impact_transition, at) - ZERO_DEGC),
+        soak_degC=here(soaked.hottest, at) - ZERO_DEGC,
+        carbon_in_solution_pct=here(soaked.carbon_pct, at),
+        undissolved_ferrite=here(soaked.ferrite, at),
+        undissolved_cementite=here(soaked.cementite, at),
+        austenite_grain_astm=_known(here(soaked.grain_astm, at)),
+        austenite_grain_um=_known(1e6 * here(soaked.grain_mean_intercept, at)),
         hardness_time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
         hardness_grid_error_hv=GRID_FACTOR * abs(hv - hv_rough),
     )
@@ -363,17 +352,3 @@ def _film_um(value: Worth) -> Array:
 
 def _known(value: float) -> float | None:
     return value if np.isfinite(value) else None
-
-
-def _soak_text(case: Case, left: Austenite) -> str:
-    at = (case.route[0].at or 0.0) - ZERO_DEGC
-    hours = (case.route[0].time or 0.0) / 3600.0
-    text = (
-        f"{at:.0f} degC, {hours:.3g} h: {left.regime} austenite with {left.carbon_pct:.3f} % C, "
-        f"grain ASTM {left.grain_astm:.1f}"
-    )
-    if left.ferrite > 0.0:
-        text += f", {100.0 * left.ferrite:.1f} % ferrite left"
-    if left.cementite > 0.0:
-        text += f", {100.0 * left.cementite:.1f} % cementite left"
-    return text

@@ -7,6 +7,7 @@ the blocks ask of each other is not in it. Draft 7, which TOML editors know.
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from midradius.fem.furnace import furnace_names
 from midradius.fem.media import names
 from midradius.thermo.grades import all_grades
 from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS
@@ -122,10 +123,28 @@ def _route() -> Schema:
         "until": {
             "type": "string",
             "description": "A place, below and a temperature.",
-            "pattern": _until_pattern(),
+            "pattern": _until_pattern("below"),
             "examples": ["core below 150 degC"],
         },
         "faces": _table({zone: _to("medium_use") for zone in zones}, ()),
+    }
+    heating: dict[str, Schema] = {
+        "stage": {"const": "heat"},
+        "medium": {
+            "description": "What the part is heated in; letter case and blanks do not matter.",
+            "type": "string",
+            "examples": list(furnace_names()),
+        },
+        "furnace": _quantity("temperature", keys.FURNACE_RANGE, "Of the furnace."),
+        "from": _quantity("temperature", keys.TEMP_RANGE, "Of the part; left out: 20 degC."),
+        "ramp": _quantity("heating rate", keys.RAMP_RANGE, "Of the furnace from there on."),
+        "time": time,
+        "until": {
+            "type": "string",
+            "description": "A place, above and a temperature.",
+            "pattern": _until_pattern("above"),
+            "examples": ["core above 850 degC"],
+        },
     }
     stages = [_table({"stage": {"const": kind}, **cooling}, ("stage",)) for kind in keys.COOLS]
     tempering = _quantity("temperature", (keys.TEMPER_COLDEST, keys.TEMPER_HOTTEST), "Below Ae1.")
@@ -134,14 +153,14 @@ def _route() -> Schema:
     )
     return {
         "type": "array",
-        "description": "One soak, the stages that cool in their order, tempers last.",
+        "description": "What heats, one soak, the stages that cool in their order, tempers last.",
         "minItems": 2,
         "maxItems": keys.STAGES_MOST,
         "items": {
             "type": "object",
             "properties": {"stage": {"enum": list(keys.STAGES)}},
             "required": ["stage"],
-            "oneOf": [soak, *stages],
+            "oneOf": [_table(heating, ("stage", "medium", "furnace")), soak, *stages],
         },
     }
 
@@ -253,8 +272,8 @@ def _quantity(kind: Kind, within: tuple[float, float], meaning: str) -> Schema:
     }
 
 
-def _until_pattern() -> str:
-    return r"^.*\S +below " + pattern("temperature").removeprefix("^")
+def _until_pattern(sense: str) -> str:
+    return rf"^.*\S +{sense} " + pattern("temperature").removeprefix("^")
 
 
 def _place_pattern() -> str:

@@ -11,6 +11,7 @@ from midradius.fem.route import CoolingStage, Surface
 from midradius.fem.section import Section
 from midradius.fem.surface import beyond, film, film_from_csv
 from midradius.study.case import Case, MediumUse, PositionInput, SectionInput, Stage
+from midradius.study.heatsetup import HeatSetup, prepare_heating
 from midradius.thermo.errors import InputFault
 from midradius.thermo.source import RangeNote, Source
 
@@ -28,6 +29,7 @@ class Setup:
     sources: tuple[Source, ...]
     assumptions: tuple[str, ...]
     cautions: tuple[str, ...]
+    furnace: HeatSetup = HeatSetup()
 
 
 def section_of(given: SectionInput) -> Section:
@@ -79,14 +81,16 @@ def prepare(case: Case) -> Setup:
     cautions: list[str] = []
     stages = []
     strongest: dict[str, float] = dict.fromkeys(section.zones, 0.0)
-    soak = case.route[0].at or 0.0
+    hottest = max(stage.at or 0.0 for stage in (*case.heating, case.soak))
+    length, geometry = _size(section)
+    furnace = prepare_heating(case, section, length=length, geometry=geometry)
     for stage, use in zip(case.cooling, uses, strict=True):
         surfaces = {}
         for zone, medium_use in use.items():
             surface, more, source, warned = _surface(medium_use, section, case.section.emissivity)
             surfaces[zone] = surface
             notes += more
-            notes += beyond(surface.film, coldest=surface.ambient, hottest=soak)
+            notes += beyond(surface.film, coldest=surface.ambient, hottest=hottest)
             sources += source
             cautions += warned
             strongest[zone] = max(strongest[zone], float(surface.film.htc.max()))
@@ -104,10 +108,11 @@ def prepare(case: Case) -> Setup:
         section=section,
         stages=tuple(stages),
         strongest_film=strongest,
-        notes=tuple(dict.fromkeys(notes)),
-        sources=tuple(dict.fromkeys(sources)),
+        notes=tuple(dict.fromkeys([*furnace.notes, *notes])),
+        sources=tuple(dict.fromkeys([*furnace.sources, *sources])),
         assumptions=_assumptions(case, section),
-        cautions=tuple(dict.fromkeys(cautions)),
+        cautions=tuple(dict.fromkeys([*furnace.cautions, *cautions])),
+        furnace=furnace,
     )
 
 
@@ -134,6 +139,17 @@ _GEOMETRY: Mapping[str, Geometry] = {
 }
 
 
+def _size(section: Section) -> tuple[float, Geometry]:
+    """The length [m] and the shape that a gas sees."""
+    spans = section.spans
+    length = 2.0 * spans[0].high
+    if section.form == "slab":
+        length = PLATE_HEIGHT
+    elif section.form == "bar":
+        length = spans[1].length
+    return length, _GEOMETRY.get(section.form, "horizontal cylinder")
+
+
 def _surface(
     use: MediumUse, section: Section, emissivity: float
 ) -> tuple[Surface, list[RangeNote], list[Source], tuple[str, ...]]:
@@ -149,17 +165,12 @@ def _surface(
     bath = use.bath if use.bath is not None else found.bath_default
     if bath is None:
         raise InputFault("bath", "missing", f'given for "{found.name}"', 'Write bath = "60 degC".')
-    spans = section.spans
-    length = 2.0 * spans[0].high
-    if section.form == "slab":
-        length = PLATE_HEIGHT
-    elif section.form == "bar":
-        length = spans[1].length
+    length, geometry = _size(section)
     curve, notes = film(
         found,
         bath=bath,
         length=length,
-        geometry=_GEOMETRY.get(section.form, "horizontal cylinder"),
+        geometry=geometry,
         emissivity=emissivity,
     )
     label = found.name if found.kind == "ideal" else f"{found.name}, {bath - ZERO_DEGC:.4g} degC"
@@ -177,9 +188,19 @@ def _label(surfaces: Mapping[str, Surface]) -> str:
 
 
 def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
-    lines = [
+    soaked = (
         "The whole section is at the soak temperature when cooling starts, and the soak time"
-        " counts from there: heating up is not computed.",
+        " counts from there: heating up is not computed."
+    )
+    if case.heating:
+        soaked = (
+            "One part alone in the furnace, which keeps its temperature; every face but an"
+            " insulated bore sees it alike. The soak goes on in the furnace of the last heat"
+            " stage, set to the soak temperature at once; its time counts from the end of that"
+            " stage. The steel takes up its heat of transformation at equilibrium."
+        )
+    lines = [
+        soaked,
         "One part alone in the bath; every zone has one film over all of it. Packed loads cool"
         " slower and less evenly.",
         "Density 7850 kg/m3 and the cold dimensions throughout.",

@@ -13,7 +13,8 @@ from typing import TYPE_CHECKING, Any, Literal
 
 from midradius.study.lengthtable import lengths, remark
 from midradius.study.needs import shown
-from midradius.study.result import Position, Result, Verdict
+from midradius.study.result import Position, Result, StageRecord, Verdict
+from midradius.study.soaktable import soaks, uneven
 from midradius.thermo.phases import PHASE_NAMES
 
 if TYPE_CHECKING:
@@ -93,6 +94,7 @@ def document(result: Result) -> dict[str, Any]:
         "section": result.section,
         "sense": result.sense,
         "soak": result.soak,
+        "heating": _heating(result),
         "n_node": result.n_node,
         "n_step": result.n_step,
         "heat_given_J_per_kg": result.heat_given_J_per_kg,
@@ -111,6 +113,17 @@ def document(result: Result) -> dict[str, Any]:
     }
     plain: dict[str, Any] = jsonable(content)
     return plain
+
+
+def _heating(result: Result) -> dict[str, object] | None:
+    """The heating without its curves."""
+    if result.heating is None:
+        return None
+    return {
+        "stages": [asdict(stage) for stage in result.heating.stages],
+        "heat_taken_J_per_kg": result.heating.heat_taken_J_per_kg,
+        "heat_balance_relative": result.heating.heat_balance_relative,
+    }
 
 
 def _position(p: Position) -> dict[str, object]:
@@ -136,6 +149,8 @@ def terminal(result: Result, console: "Console") -> None:
     console.print(_pairs(_head(result)))
     heads, sizes = lengths(result)
     for heading, table in (
+        *([("In the furnace", _stages(result.heating.stages))] if result.heating else []),
+        *([("After the soak", _table(*soaks(result), left={0}))] if uneven(result) else []),
         ("Route", _route(result)),
         *([("As quenched", _as_quenched(result))] if result.tempers else []),
         ("Result, tempered" if result.tempers else "Result", _properties(result)),
@@ -202,15 +217,19 @@ def _head(result: Result) -> list[tuple[str, str]]:
 
 
 def _route(result: Result) -> "Table":
-    rows = [
-        [s.kind, s.medium, duration(s.start_s), duration(s.end_s), s.ended_by]
-        for s in result.stages
-    ]
-    rows += [
-        ["temper", f"{t.at_degC:.0f} degC throughout", "-", duration(t.time_s), "time"]
-        for t in result.tempers
-    ]
-    return _table(["stage", "medium", "from", "to", "ended by"], rows, left={0, 1, 4})
+    return _stages(
+        result.stages,
+        [
+            ["temper", f"{t.at_degC:.0f} degC throughout", "-", duration(t.time_s), "time"]
+            for t in result.tempers
+        ],
+    )
+
+
+def _stages(stages: Sequence[StageRecord], more: Sequence[Sequence[str]] = ()) -> "Table":
+    rows = [[s.kind, s.medium, duration(s.start_s), duration(s.end_s), s.ended_by] for s in stages]
+    heads = ["stage", "medium", "from", "to", "ended by"]
+    return _table(heads, [*rows, *more], left={0, 1, 4})
 
 
 def _properties(result: Result) -> "Table":

@@ -20,6 +20,7 @@ HISTORIES = "histories.csv"
 PROFILE = "profile.csv"
 POSITIONS = "positions.csv"
 NEEDS = "needs.csv"
+HEATING = "heating.csv"
 
 _HARDNESS = [
     *("hardness_HV", "hardness_HRC", "hardness_HB"),
@@ -28,22 +29,37 @@ _HARDNESS = [
 _AFTER_HARDNESS = ["time_800_500_s", "cooling_rate_700degC_K_per_s", "austenite_carbon_pct"]
 _SCALES = ["ferrite_grain_um", "pearlite_spacing_um", "cementite_film_um", "cementite_network"]
 _TRANSITION = "impact_transition_degC"
+_SOAK = [
+    *("soak_reached_degC", "carbon_in_solution_pct"),
+    *("undissolved_ferrite_fraction", "undissolved_cementite_fraction"),
+    *("austenite_grain_astm", "austenite_grain_um"),
+]
 
 
 def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
     """Write the tables into an existing folder and return their paths.
 
-    ``needs.csv`` is written only where the case asks for something.
+    ``needs.csv`` is written only where the case asks for something, ``heating.csv`` only
+    where the part was heated from cold.
     """
     tables = {HISTORIES: _histories, PROFILE: _profile, POSITIONS: _positions}
     if result.verdicts:
         tables[NEEDS] = _needs
+    if result.heating is not None:
+        tables[HEATING] = _heating
     return tuple(_write(folder / name, rows(result)) for name, rows in tables.items())
 
 
 def _histories(result: Result) -> Iterable[Sequence[object]]:
     yield ["time_s", *(f"{p.name}_degC" for p in result.positions)]
     for time, row in zip(result.history_times_s, result.history_temp_degC, strict=True):
+        yield [float(time), *(float(temp) for temp in row)]
+
+
+def _heating(result: Result) -> Iterable[Sequence[object]]:
+    assert result.heating is not None, "written only where there is one"
+    yield ["time_s", *(f"{p.name}_degC" for p in result.positions)]
+    for time, row in zip(result.heating.times_s, result.heating.temp_degC, strict=True):
         yield [float(time), *(float(temp) for temp in row)]
 
 
@@ -66,6 +82,12 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         result.pearlite_spacing_um[node],
         result.cementite_film_um[node],
         result.impact_transition_degC[node],
+        result.soaked.hottest_degC[node],
+        result.soaked.carbon_in_solution_pct[node],
+        result.soaked.ferrite[node],
+        result.soaked.cementite[node],
+        result.soaked.grain_astm[node],
+        result.soaked.grain_um[node],
     ]
     yield [
         "depth_mm",
@@ -74,6 +96,7 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         *_AFTER_HARDNESS,
         *_SCALES[:3],
         _TRANSITION,
+        *_SOAK,
     ]
     for row in np.column_stack(columns):
         yield [float(value) for value in row]
@@ -87,6 +110,7 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
         *_AFTER_HARDNESS,
         *_SCALES,
         _TRANSITION,
+        *_SOAK,
         *("hardness_time_error_HV", "hardness_grid_error_HV"),
     ]
     for p in result.positions:
@@ -98,6 +122,9 @@ def _positions(result: Result) -> Iterable[Sequence[object]]:
             *(p.time_800_500_s, p.rate_700_K_per_s, p.austenite_carbon_pct),
             *(p.ferrite_grain_um, p.pearlite_spacing_um, p.cementite_film_um),
             *(p.cementite_network, p.impact_transition_degC),
+            *(p.soak_degC, p.carbon_in_solution_pct),
+            *(p.undissolved_ferrite, p.undissolved_cementite),
+            *(p.austenite_grain_astm, p.austenite_grain_um),
             *(p.hardness_time_error_hv, p.hardness_grid_error_hv),
         ]
 

@@ -1,7 +1,7 @@
 """What the structure at the end of a route is worth: hardness, temper, strength."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -10,7 +10,6 @@ from midradius.study.case import Asked
 from midradius.study.scale import Scales, scales
 from midradius.thermo import embrittlement, equilibrium, hardness, strength, tempering
 from midradius.thermo.arrays import Array
-from midradius.thermo.austenite import Austenite
 from midradius.thermo.phases import (
     AUSTENITE,
     BAINITE,
@@ -19,6 +18,7 @@ from midradius.thermo.phases import (
     MARTENSITE,
     PEARLITE,
 )
+from midradius.thermo.soaked import OLD_RATE, Soaked
 from midradius.thermo.source import RangeNote
 from midradius.thermo.tempering import Temper, Tempered
 
@@ -26,14 +26,15 @@ from midradius.thermo.tempering import Temper, Tempered
 @dataclass(frozen=True)
 class Worth:
     """Of every node: fractions (n_phase, n_node), hardness before and after the tempers
-    [HV] and yield strength [MPa], (n_node,) each; its lengths as cooled; what the models
-    say beside it."""
+    [HV] and yield strength [MPa], (n_node,) each; its lengths as cooled; what the soak
+    left; what the models say beside it."""
 
     phases: Array
     as_quenched_hv: Array
     hardness_hv: Array
     yield_mpa: Array
     scales: Scales
+    soaked: Soaked
     notes: tuple[RangeNote, ...]
     cautions: tuple[str, ...]
 
@@ -43,7 +44,7 @@ def tempers_of(case: Asked) -> tuple[Temper, ...]:
     return tuple(Temper(stage.at or 0.0, stage.time or 0.0) for stage in case.tempers)
 
 
-def worth(case: Asked, austenite: Austenite, history: Remains) -> Worth:
+def worth(case: Asked, soaked: Soaked, history: Remains) -> Worth:
     """Hardness as quenched, then through the tempers, then the strength of what is left.
 
     Raises
@@ -53,19 +54,22 @@ def worth(case: Asked, austenite: Austenite, history: Remains) -> Worth:
     """
     composition = case.steel.steel.composition
     ae1 = equilibrium.equilibrium(composition).ae1
+    # What was never austenite keeps the structure of an earlier cooling.
+    rate_700 = np.where(soaked.austenitised, history.rate_700, OLD_RATE)
+    history = replace(history, rate_700=rate_700)
     as_quenched, by_phase = hardness.vickers(
         history.phases,
         composition,
         carbon_austenite_pct=np.where(
             np.isnan(history.carbon_martensite_pct),
-            austenite.carbon_pct,
+            soaked.carbon_pct,
             history.carbon_martensite_pct,
         ),
         carbon_initial_pct=composition.C,
         rate_700=history.rate_700,
         pearlite_temp=history.pearlite_temp,
         ae1=ae1,
-        grain_intercept=austenite.grain_mean_intercept,
+        grain_intercept=soaked.old_intercept,
     )
     as_quenched = as_quenched + case.steel.shifts.hardness
     by_phase = by_phase + case.steel.shifts.hardness
@@ -76,15 +80,16 @@ def worth(case: Asked, austenite: Austenite, history: Remains) -> Worth:
         history.phases,
         rate_700=history.rate_700,
         pearlite_temp=history.pearlite_temp,
-        grain_intercept=austenite.grain_mean_intercept,
-        carbide_left=austenite.cementite,
+        grain_intercept=soaked.old_intercept,
+        carbide_left=soaked.cementite,
     )
     return Worth(
         phases=left.fractions,
         as_quenched_hv=as_quenched,
         hardness_hv=left.hardness_hv,
-        yield_mpa=_yield_mpa(case, austenite, history, left, ae1),
+        yield_mpa=_yield_mpa(case, soaked, history, left, ae1),
         scales=sizes,
+        soaked=soaked,
         notes=(
             *tempering.range_notes(composition, history.phases, by_phase, tempers),
             *sizes.notes,
@@ -102,16 +107,14 @@ def _tempered(
     return tempering.temper(phases, by_phase, as_quenched, composition=composition, tempers=tempers)
 
 
-def _yield_mpa(
-    case: Asked, austenite: Austenite, history: Remains, left: Tempered, ae1: float
-) -> Array:
+def _yield_mpa(case: Asked, soaked: Soaked, history: Remains, left: Tempered, ae1: float) -> Array:
     composition = case.steel.steel.composition
     some = np.where(left.fractions > hardness.PRESENT, left.fractions, 0.0)
     soft = some[FERRITE] + some[PEARLITE]
     rate = np.where(history.rate_700 > 0.0, history.rate_700, np.nan)
     ferrite_pearlite = strength.gladman_yield(
         np.where(soft > 0.0, some[FERRITE] / np.where(soft > 0.0, soft, 1.0), 1.0),
-        grain=strength.ferrite_grain(composition, rate, austenite.grain_mean_intercept),
+        grain=strength.ferrite_grain(composition, rate, soaked.old_intercept),
         spacing=strength.interlamellar_spacing(history.pearlite_temp, ae1),
         composition=composition,
     )

@@ -34,6 +34,12 @@ def test_the_last_file_of_the_series_carries_every_final_field(
         "ferrite_grain_um",
         "pearlite_spacing_um",
         "impact_transition_degC",
+        "soak_reached_degC",
+        "carbon_in_solution_pct",
+        "undissolved_ferrite_fraction",
+        "undissolved_cementite_fraction",
+        "austenite_grain_astm",
+        "austenite_grain_um",
     }
     total = sum(point_data[f"{name}_fraction"] for name in PHASE_NAMES)
     assert_allclose(total, 1.0, rtol=0, atol=1e-12)

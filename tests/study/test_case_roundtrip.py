@@ -10,6 +10,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
+from midradius.fem.furnace import furnace_medium, furnace_names
 from midradius.fem.media import medium, names
 from midradius.study import casefile, casekeys, schema, starter
 from midradius.study.case import (
@@ -103,11 +104,35 @@ def places(draw: st.DrawFn, section: SectionInput) -> list[PositionInput]:
 
 
 @st.composite
+def heats(draw: st.DrawFn, soak: Stage, wanted: list[PositionInput]) -> list[Stage]:
+    found: list[Stage] = []
+    fit = [known for known in map(furnace_medium, furnace_names()) if known.hottest > soak.at]
+    fit = [known for known in fit if known.coldest < soak.at]
+    for number in range(draw(st.integers(0, 2)) if fit else 0):
+        known = draw(st.sampled_from(fit))
+        furnace = draw(floats(max(known.coldest, 900.0), known.hottest))
+        place = draw(st.none() | st.sampled_from(wanted))
+        until = place and Until(place.name, draw(floats(450.0, 890.0)), "above")
+        found.append(
+            Stage(
+                "heat",
+                at=furnace,
+                time=draw(times) if until is None else draw(st.none() | times),
+                medium=MediumUse(known.name),
+                until=until,
+                start=draw(floats(260.0, 440.0)) if number == 0 else None,
+                ramp=draw(st.none() | floats(1e-3, 9.0)),
+            )
+        )
+    return found
+
+
+@st.composite
 def cases(draw: st.DrawFn) -> Case:
     section = draw(sections())
     wanted = draw(places(section))
     soak = Stage("soak", at=draw(floats(SOAK_COLDEST, 1490.0)), time=draw(times))
-    stages = [soak]
+    stages = [*draw(heats(soak, wanted)), soak]
     for kind in draw(st.lists(st.sampled_from(["transfer", "quench", "hold"]), min_size=1)):
         until = None
         if kind != "transfer" and draw(st.booleans()):

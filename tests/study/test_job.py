@@ -38,6 +38,12 @@ AT_END = [
     "ferrite_grain_um",
     "pearlite_spacing_um",
     "impact_transition_degC",
+    "soak_reached_degC",
+    "carbon_in_solution_pct",
+    "undissolved_ferrite_fraction",
+    "undissolved_cementite_fraction",
+    "austenite_grain_astm",
+    "austenite_grain_um",
 ]
 
 # What a person sees of each form [mm]: lowest and highest x and y of the drawing.

@@ -25,6 +25,7 @@ from midradius.thermo.austenite import soak
 from midradius.thermo.conversion import hrc_to_hv
 from midradius.thermo.grades import grade
 from midradius.thermo.phases import CEMENTITE, FERRITE, MARTENSITE
+from midradius.thermo.soaked import alike
 
 RADIUS = 0.05
 STEEL = grade("42CrMo4")
@@ -53,7 +54,8 @@ def solution(cells: int, shift_hv: float = 0.0) -> Invented:
         grain_intercept=soak(STEEL, 1123.15, 3600.0).grain_mean_intercept,
         carbide_left=0.0,
     )
-    return Invented(cut, Worth(phases, hardness, hardness, 2.0 * hardness, sizes, (), ()))
+    soaked = alike(soak(STEEL, 1123.15, 3600.0), 1123.15, 3600.0, len(depth))
+    return Invented(cut, Worth(phases, hardness, hardness, 2.0 * hardness, sizes, soaked, (), ()))
 
 
 def case_of(need: Need, *, tempered: bool = False, grain: float | None = None) -> Case:
@@ -85,7 +87,7 @@ def verdict_on(
         )
         for each in solved
     ]
-    (verdict,) = judge(case, soak(STEEL, 1123.15, 3600.0), *placed, FACTORS)
+    (verdict,) = judge(case, *placed, FACTORS)
     return verdict
 
 
@@ -139,7 +141,7 @@ def test_a_value_without_the_unit_asked_is_compared_in_vickers() -> None:
     case = case_of(need)
     at = {"surface": forms.place(solved.cut, (RADIUS,))}
     one = (solved, at)
-    (verdict,) = judge(case, soak(STEEL, 1123.15, 3600.0), one, one, one, FACTORS)
+    (verdict,) = judge(case, one, one, one, FACTORS)
     assert (verdict.unit, verdict.value) == ("HV", 800.0)
     assert verdict.outcome == "holds"
     assert verdict.note == "800 HV has no MPa: compared in HV"
@@ -228,7 +230,7 @@ def test_what_no_model_gives_is_too_close_to_call() -> None:
     blind = replace(solved, worth=replace(solved.worth, yield_mpa=np.full(65, np.nan)))
     case = case_of(Need("core", "yield", "MPa", at_least=500.0))
     one = (blind, {"core": forms.place(blind.cut, (0.0,))})
-    (verdict,) = judge(case, soak(STEEL, 1123.15, 3600.0), one, one, one, FACTORS)
+    (verdict,) = judge(case, one, one, one, FACTORS)
     assert (verdict.value, verdict.margin) == (None, None)
     assert (verdict.outcome, verdict.note) == ("too close to call", "no model gives a value here")
 
@@ -237,9 +239,10 @@ def test_a_grain_of_the_soak_is_less_sure_than_one_that_the_case_gives() -> None
     need = Need("everywhere", "grain", "ASTM", at_least=5.0)
     free = verdict_on(need)
     case = case_of(need, grain=8.0)
-    left = soak(STEEL, 1123.15, 3600.0, grain_astm=8.0)
-    one = (solution(64), {})
-    (given,) = judge(case, left, one, one, one, FACTORS)
+    left = alike(soak(STEEL, 1123.15, 3600.0, grain_astm=8.0), 1123.15, 3600.0, 65)
+    free_of = solution(64)
+    one = (replace(free_of, worth=replace(free_of.worth, soaked=left)), {})
+    (given,) = judge(case, one, one, one, FACTORS)
     assert given.value == 8.0
     assert given.model_uncertainty is not None and free.model_uncertainty is not None
     assert given.model_uncertainty < free.model_uncertainty

@@ -102,6 +102,7 @@ def test_every_heading_but_the_name_ends_with_a_unit(folder: Path) -> None:
         "_degC",
         "_mm",
         "_um",
+        "_astm",
         "_network",
         "_fraction",
         "_HV",
