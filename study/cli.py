@@ -19,6 +19,7 @@ from midradius.study.cli_calibrate import calibrate
 from midradius.study.cli_diagram import diagram
 from midradius.study.cli_endquench import endquench
 from midradius.study.cli_lever import lever
+from midradius.study.cli_mesh import mesh
 from midradius.study.cli_sources import described, sources, used_lines
 from midradius.study.cli_steels import steels
 
@@ -95,6 +96,7 @@ cli.add_command(calibrate)
 cli.add_command(diagram)
 cli.add_command(endquench)
 cli.add_command(lever)
+cli.add_command(mesh)
 cli.add_command(sources)
 cli.add_command(steels)
 
