@@ -5,37 +5,35 @@ mixture of ferrite and cementite is exactly linear.
 """
 
 from collections.abc import Callable, Sequence
-from functools import cache
+from typing import Any
 
 import numpy as np
 
-from midradius.thermo import diffusional, equilibrium, martensite, properties
+from midradius.thermo import clocks, diffusional, equilibrium, martensite, properties
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.calibration import NONE, Shifts
+from midradius.thermo.clocks import Shape
 from midradius.thermo.kinetics import Tables
 from midradius.thermo.steel import Steel
 
 COLDEST_K, HOTTEST_K, GRID_K = 230.0, 1500.0, 1.0
-N_CLOCK = 4097
 NEVER_K = 0.0  # a martensite start that no temperature reaches
 
 
-@cache
-def _clock_tables() -> tuple[Array, Array, float]:
-    """Fraction at even S, S at even square roots of the fraction, and S(1)."""
-    fine = (1.0 - np.cos(np.linspace(0.0, np.pi, 6001))) / 2.0
-    clock = diffusional.clock_integral(fine)
-    whole = float(clock[-1])
-    even = np.linspace(0.0, whole, N_CLOCK)
-    # Near the ends S goes as X^0.6: interpolate X^0.6 against S, which is smooth.
-    low = np.interp(even, clock, fine**0.6) ** (1.0 / 0.6)
-    high = 1.0 - np.interp(whole - even, clock, fine**0.6) ** (1.0 / 0.6)
-    fraction = np.where(even <= 0.5 * whole, low, high)
-    span = np.linspace(0.0, 1.0, N_CLOCK)
-    back = diffusional.clock_integral(np.minimum(span**2, 1.0))
-    return fraction, back, whole
+def _clocks(shapes: Sequence[Shape]) -> dict[str, Any]:
+    """The clocks of ferrite, pearlite and bainite as fields of ``Tables``."""
+    distinct = list(dict.fromkeys(shapes))
+    found = [clocks.tables(shape, kin.LAST) for shape in distinct]
+    first = [k * (kin.LAST + 1) for k in range(len(found))]
+    rows = [distinct.index(shape) for shape in shapes]
+    return {
+        "clock": np.concatenate([fraction for fraction, _, _ in found]),
+        "back": np.concatenate([cell + k for k, (_, cell, _) in zip(first, found, strict=True)]),
+        "per": np.array([kin.LAST / whole for *_, whole in found]),
+        "shape": np.array([*rows, 0], dtype=np.int64),
+    }
 
 
 def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> Tables:
@@ -87,7 +85,6 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
     value[:, kin.LIMIT_FERRITE] = equilibrium.ferrite_limit(eq, composition.C, temp)
     value[:, kin.LIMIT_CEMENTITE] = equilibrium.cementite_limit(eq, composition.C, temp)
     value[:, kin.CARBON_FERRITE] = eq.ferrite_solubility(temp)
-    fraction, back, whole = _clock_tables()
     active = (
         (value[:, kin.RATE_FERRITE] * value[:, kin.LIMIT_FERRITE] > 0.0)
         | (value[:, kin.RATE_PEARLITE] > 0.0)
@@ -97,9 +94,7 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
         value=value[None],
         first=COLDEST_K,
         step=GRID_K,
-        clock=fraction,
-        back=back,
-        whole=whole,
+        **_clocks((clocks.LI,) * 3),
         start=np.array([martensite.start_coefficients(austenite.composition)])
         + np.array([shifts.martensite_start, 0.0, 0.0]),
         rate=np.array([martensite.rate_coefficients(austenite.composition)]),
@@ -152,14 +147,11 @@ def inert_tables(
     value = np.zeros((len(temp), kin.N_COLUMN))
     value[:, kin.H_AUSTENITE] = enthalpy(temp)
     value[:, kin.K_AUSTENITE] = conductivity(temp)
-    fraction, back, whole = _clock_tables()
     return Tables(
         value=value[None],
         first=first,
         step=step,
-        clock=fraction,
-        back=back,
-        whole=whole,
+        **_clocks((clocks.LI,) * 3),
         start=np.array([[NEVER_K, 0.0, 0.0]]),
         rate=np.zeros((1, 3)),
         top=NEVER_K,

@@ -178,26 +178,6 @@ def cementite_rate(temp: Array, *, carbon_pct: float, grain_intercept: float) ->
     return np.pi**2 * carbon_diffusivity(temp, carbon_pct) / radius**2
 
 
-def clock_integral(fraction: Array) -> Array:
-    """``S(X)`` [-] for fractions between 0 and 1, by Gauss-Legendre quadrature.
-
-    With ``x = X s^(5/3)`` the end singularity ``x^-0.4`` drops out; ``S`` is
-    symmetric, ``S(X) = S(1) - S(1 - X)``.
-    """
-    node, weight = np.polynomial.legendre.leggauss(64)
-    unit, unit_weight = (0.5 * (node + 1.0)) ** (5.0 / 3.0), weight * 0.5 * (5.0 / 3.0)
-
-    def lower(upper: Array) -> Array:
-        x = upper[..., None] * unit
-        smooth = np.exp(0.4 * x * (np.log(np.maximum(x, 1e-300)) - np.log1p(-x)))
-        value: Array = upper**0.6 * (smooth * unit_weight).sum(axis=-1)
-        return value
-
-    half = lower(np.minimum(fraction, 1.0 - fraction))
-    whole = 2.0 * lower(np.array([0.5]))[0]
-    return np.where(fraction <= 0.5, half, whole - half)
-
-
 def range_notes(composition: Composition, carbon_pct: float, grain_astm: float) -> list[RangeNote]:
     """Where the rates are used outside the range of their regression."""
     notes = []

@@ -29,7 +29,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from midradius.thermo.arrays import Array
+from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.compiled import kernel
 
 # Columns of a node's state. Fractions are by mass; carbon is an inventory in
@@ -58,11 +58,18 @@ N_SCALE = 4  # factors of a node on the rates of ferrite, pearlite, bainite and 
     LIMIT_FERRITE,
     LIMIT_CEMENTITE,
     CARBON_FERRITE,
-) = range(16)
-N_COLUMN = 16
+    EXPONENT_FERRITE,
+    EXPONENT_PEARLITE,
+    EXPONENT_BAINITE,
+    EXPONENT_CEMENTITE,
+) = range(20)
+N_COLUMN = 20
+AVRAMI = -1  # instead of a row of the clocks: the exponent of the temperature
 
 CEMENTITE_CARBON_PCT = 6.690
 NOTHING_LEFT = 1e-9  # austenite below this is taken as gone
+LAST = 4096  # cells of a clock
+ALL_BUT = 1.0 - 1e-6  # the exponential never ends: above this it has
 LONGEST_STRIDE = 5.0  # K of temperature that one pass over the products may cover
 
 
@@ -70,18 +77,22 @@ class Tables(NamedTuple):
     """One steel as the kernel sees it.
 
     ``value`` (n_kind, n_temp, n_column) on the even grid ``first + i * step`` [K],
-    one kind for each austenite that the soak left in the section;
-    ``clock`` (n_clock,) the fraction at even values of S from 0 to ``whole``;
-    ``back`` (n_back,) S at even values of the square root of the fraction;
-    martensite ``start`` [K] and ``rate`` [1/K] as ``a - b (1 - exp(-c C))``, (n_kind, 3).
+    one kind for each austenite that the soak left in the section.
+    ``clock`` holds, one shape after another, the fraction at ``LAST + 1`` even values of
+    S; ``back`` the cell of it that holds a fraction, at as many even square roots of the
+    fraction and then, falling, of what is left of 1; ``per`` (n_shape,) cells for one unit
+    of S. ``shape`` (4,) says which shape ferrite, pearlite and bainite follow, or
+    ``AVRAMI``; the last is that of cementite: ``AVRAMI``, or a film that diffusion feeds.
+    Martensite ``start`` [K] and ``rate`` [1/K] as ``a - b (1 - exp(-c C))``, (n_kind, 3).
     """
 
     value: Array
     first: float
     step: float
     clock: Array
-    back: Array
-    whole: float
+    back: IntArray
+    per: Array
+    shape: IntArray
     start: Array
     rate: Array
     top: float
@@ -89,43 +100,68 @@ class Tables(NamedTuple):
 
 
 @kernel
-def _clock_of(fraction: float, tables: Tables) -> float:
-    """S of a fraction: the exact inverse of the table that `_grown` reads.
+def _place_of(fraction: float, first: int, clock: Array, back: IntArray) -> float:
+    """Place in a clock of a fraction: the exact inverse of the table that `_grown` reads.
 
-    A second table only finds the cell; were S read from it, each round trip
+    A second table only finds the cell; were the place read from it, each round trip
     would shift the fraction a little and the shifts would add up.
     """
     if fraction <= 0.0:
         return 0.0
-    low = min(fraction, 1.0 - fraction)
-    back = tables.back
-    near = min(int(np.sqrt(max(low, 0.0)) * (len(back) - 1)), len(back) - 1)
-    guess = back[near] if fraction <= 0.5 else tables.whole - back[near]
-    clock = tables.clock
-    per = (len(clock) - 1) / tables.whole
-    cell = min(max(int(guess * per), 0), len(clock) - 2)
-    while cell > 0 and clock[cell] > fraction:
+    if fraction <= 0.5:
+        cell = back[2 * first + int(np.sqrt(fraction) * LAST)]
+    else:
+        cell = back[2 * first + 2 * LAST + 1 - int(np.sqrt(max(1.0 - fraction, 0.0)) * LAST)]
+    while cell > first and clock[cell] > fraction:
         cell -= 1
-    while cell < len(clock) - 2 and clock[cell + 1] < fraction:
+    while cell < first + LAST - 1 and clock[cell + 1] < fraction:
         cell += 1
-    ticks: float = (cell + (fraction - clock[cell]) / (clock[cell + 1] - clock[cell])) / per
-    return ticks
+    place: float = cell - first + (fraction - clock[cell]) / (clock[cell + 1] - clock[cell])
+    return place
 
 
 @kernel
-def _grown(present: float, limit: float, ticks: float, tables: Tables) -> tuple[float, float]:
+def _grown(
+    present: float,
+    limit: float,
+    ticks: float,
+    shape: int,
+    exponent: float,
+    per: float,
+    clock: Array,
+    back: IntArray,
+) -> tuple[float, float]:
     """Amount after ``ticks`` of the clock, and its derivative by the clock."""
     if ticks <= 0.0 or limit <= NOTHING_LEFT or present >= limit:
         return present, 0.0
-    clock = _clock_of(present / limit, tables) + ticks
-    if clock >= tables.whole:
+    if shape == AVRAMI:
+        return _avrami(present, limit, ticks, exponent)
+    first = shape * (LAST + 1)
+    place = (_place_of(present / limit, first, clock, back) / per + ticks) * per
+    if place >= LAST:
         return limit, 0.0
-    per = (len(tables.clock) - 1) / tables.whole
-    place = clock * per
-    cell = min(int(place), len(tables.clock) - 2)
-    slope = tables.clock[cell + 1] - tables.clock[cell]
-    share = tables.clock[cell] + (place - cell) * slope
+    cell = int(place)
+    at = first + cell
+    slope = clock[at + 1] - clock[at]
+    share = clock[at] + (place - cell) * slope
     return max(limit * share, present), limit * slope * per
+
+
+@kernel
+def _avrami(present: float, limit: float, ticks: float, exponent: float) -> tuple[float, float]:
+    """As `_grown` with ``X = 1 - exp(-S^n)``: the clock goes on from the time that this
+    temperature would have needed for what is there."""
+    share = present / limit
+    if share > ALL_BUT:
+        return limit, 0.0
+    if ticks <= 0.0:
+        return present, 0.0
+    clock = ticks
+    if share > 0.0:
+        clock += (-np.log1p(-share)) ** (1.0 / exponent)
+    extended = clock**exponent
+    left = np.exp(-extended)
+    return max(-limit * np.expm1(-extended), present), limit * left * exponent * extended / clock
 
 
 @kernel
@@ -179,6 +215,7 @@ def advance(
         return 0.0
     kind = int(states[node, KIND])
     value, start_of, rate_of = tables.value[kind], tables.start[kind], tables.rate[kind]
+    clock, back, pers, shapes = tables.clock, tables.back, tables.per, tables.shape
     last = value.shape[0] - 2
     stride = to_temp - from_temp
     n_pass = 1 + int(abs(stride) / LONGEST_STRIDE)
@@ -203,7 +240,11 @@ def advance(
                 product = PEARLITE if which == 1 else BAINITE
                 present = states[node, product]
                 ticks = rate * scales[node, which] * part
-                grown, per = _grown(present, present + austenite, ticks, tables)
+                bent = value[row, column + (EXPONENT_FERRITE - RATE_FERRITE)]
+                shape = shapes[which]
+                grown, per = _grown(
+                    present, present + austenite, ticks, shape, bent, pers[shape], clock, back
+                )
                 more = grown - present
                 if more > 0.0:
                     carbon = states[node, CARBON_AUSTENITE] / austenite
@@ -219,7 +260,11 @@ def advance(
                 limit = min(_at(value, row, share, LIMIT_FERRITE), present + austenite)
                 if rate > 0.0 and limit > present:
                     ticks = rate * scales[node, 0] * part
-                    grown, per = _grown(present, limit, ticks, tables)
+                    bent = value[row, EXPONENT_FERRITE]
+                    shape = shapes[0]
+                    grown, per = _grown(
+                        present, limit, ticks, shape, bent, pers[shape], clock, back
+                    )
                     more = grown - present
                     states[node, FERRITE] = grown
                     states[node, CARBON_AUSTENITE] -= more * value[row, CARBON_FERRITE]
@@ -231,8 +276,12 @@ def advance(
                 if limit > present:
                     rate = _at(value, row, share, RATE_CEMENTITE)
                     ticks = rate * scales[node, 3] * part
-                    filled = 1.0 - (1.0 - (present / limit) ** 2) * np.exp(-ticks)
-                    more = limit * np.sqrt(filled) - present
+                    if shapes[3] == AVRAMI:
+                        bent = value[row, EXPONENT_CEMENTITE]
+                        more = _avrami(present, limit, ticks, bent)[0] - present
+                    else:
+                        filled = 1.0 - (1.0 - (present / limit) ** 2) * np.exp(-ticks)
+                        more = limit * np.sqrt(filled) - present
                     if more > 0.0:
                         states[node, CEMENTITE] += more
                         states[node, CARBON_AUSTENITE] -= more * CEMENTITE_CARBON_PCT

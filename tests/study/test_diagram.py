@@ -20,8 +20,8 @@ from midradius.study.diagram import (
 )
 from midradius.study.diagramsheet import at_rates, shown_rates
 from midradius.study.sectioncurves import SectionCurves, curves_of, since
+from midradius.thermo import clocks
 from midradius.thermo import kinetics as kin
-from midradius.thermo.diffusional import clock_integral
 from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import grade
 from midradius.thermo.martensite import rate as martensite_rate
@@ -52,7 +52,7 @@ def test_bainite_alone_takes_the_time_of_its_rate_equation() -> None:
     rate = np.interp(
         diagram.temp[at], steel.tables.first + np.arange(len(column)) * steel.tables.step, column
     )
-    exact = clock_integral(np.array([0.01, 0.5, 0.99])) / rate
+    exact = clocks.integral(np.array([0.01, 0.5, 0.99])) / rate
     # time steps of 6 % between which the fraction is taken straight
     assert_allclose(diagram.times["bainite"][:, at], exact, rtol=0.01, atol=0.0)
 
