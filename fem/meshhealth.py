@@ -125,6 +125,19 @@ def volumes(points: Array, simplices: IntArray) -> Array:
     return np.asarray(np.einsum("ij,ij->i", edges[:, 0], np.cross(edges[:, 1], edges[:, 2])) / 6.0)
 
 
+def without_volume(points: Array, kind: str, block: IntArray, dim: int) -> BoolArray:
+    """Cells (n,) of which nothing is left: their corners lie in one line or plane."""
+    corner = points[block]
+    scale = np.ptp(corner, axis=1).max(axis=1) ** dim
+    total = np.zeros(len(block))
+    for row in simplices_of(kind):
+        edges = corner[:, list(row[1:])] - corner[:, [row[0]]]
+        cross = np.cross(edges[:, 0], edges[:, 1])
+        size = np.linalg.norm(cross, axis=1)
+        total += size if dim == 2 else np.abs(np.einsum("ij,ij->i", cross, edges[:, 2]))
+    return np.asarray(total <= FLAT * scale)
+
+
 def _longest(points: Array, block: IntArray) -> Array:
     corner = points[block]
     return np.asarray(np.ptp(corner, axis=1).max(axis=1))
