@@ -4,9 +4,11 @@ Rounds, tubes and balls become a disc (a ball its great circle), folded halves
 are mirrored, bodies of revolution show their full axial section.
 """
 
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 
 import numpy as np
+from numpy.typing import NDArray
 
 from midradius.fem.grids import Axis
 from midradius.fem.section import Cut, Span
@@ -17,12 +19,17 @@ N_ANGLE = 72
 
 @dataclass(frozen=True)
 class Drawing:
-    """``points`` (n_point, 3) [m], ``quads`` (n, 4), ``triangles`` (n, 3), ``node`` (n_point,)."""
+    """``points`` (n_point, 3) [m], ``cells`` by type, the solved ``node`` (n_point,) of each.
+
+    Of a mesh, ``point_data`` (n_point, ...) and ``cell_data`` (n_cell, ...) are what
+    its file brought, cells counted over all blocks.
+    """
 
     points: Array
-    quads: IntArray
-    triangles: IntArray
+    cells: tuple[tuple[str, IntArray], ...]
     node: IntArray
+    point_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
+    cell_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
 
 
 def draw(cut: Cut) -> Drawing:
@@ -64,8 +71,7 @@ def _sheet(
     corners = (number[:-1, :-1], number[1:, :-1], number[1:, 1:], number[:-1, 1:])
     return Drawing(
         points=np.stack([x.ravel(), y.ravel(), np.zeros(na * nb)], axis=1),
-        quads=np.stack([c.ravel() for c in corners], axis=1),
-        triangles=np.empty((0, 3), dtype=np.int64),
+        cells=(("quad", np.stack([c.ravel() for c in corners], axis=1)),),
         node=(across_node[:, None] * n_along + along_node[None, :]).ravel(),
     )
 
@@ -74,8 +80,7 @@ def _joined(one: Drawing, other: Drawing) -> Drawing:
     n = len(one.points)
     return Drawing(
         points=np.concatenate([one.points, other.points]),
-        quads=np.concatenate([one.quads, other.quads + n]),
-        triangles=np.concatenate([one.triangles, other.triangles + n]),
+        cells=(*one.cells, *((kind, block + n) for kind, block in other.cells)),
         node=np.concatenate([one.node, other.node]),
     )
 
@@ -93,10 +98,10 @@ def _disc(radius: Array) -> Drawing:
     turned = np.roll(number, -1, axis=1)
     corners = (number[:-1], number[1:], turned[1:], turned[:-1])
     quads = np.stack([c.ravel() for c in corners], axis=1)
-    triangles = np.empty((0, 3), dtype=np.int64)
+    cells: list[tuple[str, IntArray]] = [("quad", quads)]
     if solid:
         centre = np.full(N_ANGLE, len(points), dtype=np.int64)
-        triangles = np.stack([centre, number[0], turned[0]], axis=1)
+        cells.append(("triangle", np.stack([centre, number[0], turned[0]], axis=1)))
         points = np.concatenate([points, np.zeros((1, 3))])
         node = np.concatenate([node, [0]])
-    return Drawing(points, quads, triangles, node)
+    return Drawing(points, tuple(cells), node)

@@ -30,6 +30,7 @@ from pathlib import Path
 from xml.sax.saxutils import quoteattr
 
 import numpy as np
+from numpy.typing import NDArray
 
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
@@ -50,17 +51,23 @@ UNIT_ENDINGS = (
 INDEX = "fields.pvd"
 FINAL = "final.vtu"
 STEPS = "fields"
+POSITION = "position_mm"
+
+Blocks = tuple[tuple[str, IntArray], ...]
+Given = Mapping[str, NDArray[np.generic]]
+NOTHING: Given = {}
 
 
 def write_series(
     folder: Path,
     *,
     points_mm: Array,
-    quads: IntArray,
-    triangles: IntArray,
+    cells: Blocks,
     times_s: Array,
     each_time: Mapping[str, Array],
     at_end: Mapping[str, Array],
+    given_point: Given = NOTHING,
+    given_cell: Given = NOTHING,
 ) -> Path:
     """Write the whole series and return the path of its index.
 
@@ -70,15 +77,18 @@ def write_series(
         An existing folder; files of an earlier series in it are overwritten.
     points_mm
         Points of the drawing [mm], shape (n_point, 3).
-    quads, triangles
-        Corner points of the cells, shapes (n_quad, 4) and (n_triangle, 3);
-        either may be empty, not both.
+    cells
+        Blocks of one type each: its name and its corner points (n, n_corner).
     times_s
         Stored times [s], rising, shape (n_time,).
     each_time
         Arrays known at every stored time, shape (n_time, n_point).
     at_end
         Arrays known at the end, shape (n_point,); nan where not available.
+    given_point, given_cell
+        Arrays that a mesh file brought, shapes (n_point, ...) and (n_cell, ...) over
+        all blocks: written into every file as they are. One with the name of a result
+        gets "given " before it.
 
     Raises
     ------
@@ -86,8 +96,12 @@ def write_series(
         A name without a unit, two arrays with one name, shapes that do not
         agree, times that do not rise, or a cell that names a missing point.
     """
-    _check(points_mm, quads, triangles, times_s, each_time, at_end)
-    cells = [(kind, _narrow(block)) for kind, block in _blocks(quads, triangles) if len(block)]
+    _check(points_mm, cells, times_s, each_time, at_end)
+    narrow = [(kind, _narrow(block)) for kind, block in cells if len(block)]
+    ours = {*each_time, *at_end, POSITION}
+    beside = {_beside(name, ours): values for name, values in given_point.items()}
+    ends = np.cumsum([len(block) for _, block in narrow])[:-1]
+    of_cells = {_beside(name, ours): np.split(values, ends) for name, values in given_cell.items()}
     points = np.ascontiguousarray(points_mm * 1e-3)
     unknown = np.full(len(points), np.nan)
     last = len(times_s) - 1
@@ -97,7 +111,9 @@ def write_series(
     def write(k: int) -> None:
         data = {key: values[k] for key, values in each_time.items()}
         data |= {key: values if k == last else unknown for key, values in at_end.items()}
-        _write_vtu(folder / names[k], points, cells, data | {"position_mm": points_mm})
+        data |= {POSITION: points_mm}
+        results = {key: np.asarray(values, dtype=np.float64) for key, values in data.items()}
+        _write_vtu(folder / names[k], points, narrow, results | beside, of_cells)
 
     # Nearly all the time goes into zlib, which lets other threads run.
     with ThreadPoolExecutor(max_workers=min(8, os.cpu_count() or 1)) as pool:
@@ -108,8 +124,8 @@ def write_series(
     return index
 
 
-def _blocks(quads: IntArray, triangles: IntArray) -> tuple[tuple[str, IntArray], ...]:
-    return ("quad", quads), ("triangle", triangles)
+def _beside(name: str, ours: set[str]) -> str:
+    return f"given {name}" if name in ours else name
 
 
 def _narrow(block: IntArray) -> IntArray:
@@ -118,13 +134,15 @@ def _narrow(block: IntArray) -> IntArray:
 
 
 def _write_vtu(
-    path: Path, points: Array, cells: list[tuple[str, IntArray]], data: Mapping[str, Array]
+    path: Path,
+    points: Array,
+    cells: list[tuple[str, IntArray]],
+    data: Mapping[str, NDArray[np.generic]],
+    of_cells: Mapping[str, list[NDArray[np.generic]]],
 ) -> None:
     import meshio
 
-    mesh = meshio.Mesh(
-        points, cells, {key: np.asarray(values, dtype=np.float64) for key, values in data.items()}
-    )
+    mesh = meshio.Mesh(points, cells, dict(data), dict(of_cells))
     meshio.write(path, mesh, file_format="vtu", binary=True, compression="zlib")
 
 
@@ -143,8 +161,7 @@ def _index(times_s: Array, names: list[str]) -> str:
 
 def _check(
     points_mm: Array,
-    quads: IntArray,
-    triangles: IntArray,
+    cells: Blocks,
     times_s: Array,
     each_time: Mapping[str, Array],
     at_end: Mapping[str, Array],
@@ -154,9 +171,9 @@ def _check(
         raise InputFault("points", f"shape {points_mm.shape}", "(n_point, 3), finite")
     if n_time == 0 or np.any(np.diff(times_s) <= 0.0) or not np.all(np.isfinite(times_s)):
         raise InputFault("stored times", f"{times_s}", "at least one, finite and rising")
-    if len(quads) + len(triangles) == 0:
-        raise InputFault("cells", "none", "at least one quad or triangle")
-    for kind, block in _blocks(quads, triangles):
+    if not any(len(block) for _, block in cells):
+        raise InputFault("cells", "none", "at least one cell")
+    for kind, block in cells:
         if len(block) and not 0 <= block.min() <= block.max() < n_point:
             raise InputFault(f"{kind} corners", f"{block.min()} to {block.max()}", "known points")
     for expected, arrays in (((n_time, n_point), each_time), ((n_point,), at_end)):
@@ -165,6 +182,6 @@ def _check(
                 raise InputFault("field name", name, f"one ending with {', '.join(UNIT_ENDINGS)}")
             if values.shape != expected:
                 raise InputFault(f"shape of {name}", f"{values.shape}", f"{expected}")
-    for name in ({"position_mm"} | set(each_time)) & (set(at_end) | {"position_mm"}):
+    for name in ({POSITION} | set(each_time)) & (set(at_end) | {POSITION}):
         if name in each_time or name in at_end:
             raise InputFault("field name", name, "used once")

@@ -12,9 +12,10 @@ import numpy as np
 
 from midradius.fem import march
 from midradius.fem.coupled import Run, Surroundings, Until, Watch
+from midradius.fem.cutting import AnyCut
 from midradius.fem.furnace import Rise
+from midradius.fem.place import Place
 from midradius.fem.route import LONGEST_STAGE, StageEnd
-from midradius.fem.section import Cut, Place
 from midradius.fem.surface import Film
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
@@ -68,7 +69,7 @@ class Heating:
 
 
 def heat_up(
-    cut: Cut,
+    cut: AnyCut,
     tables: Tables,
     stages: tuple[HeatingStage, ...],
     *,

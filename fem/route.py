@@ -12,9 +12,10 @@ import numpy as np
 
 from midradius.fem import march
 from midradius.fem.coupled import Run, Surroundings, Until, Watch
+from midradius.fem.cutting import AnyCut
 from midradius.fem.media import ZERO_DEGC
+from midradius.fem.place import Place
 from midradius.fem.remains import Remains, remains
-from midradius.fem.section import Cut, Place
 from midradius.fem.surface import Film
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
@@ -95,7 +96,7 @@ class History(Remains):
 
 
 def cool(
-    cut: Cut,
+    cut: AnyCut,
     tables: Tables,
     stages: tuple[CoolingStage, ...],
     *,

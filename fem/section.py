@@ -7,14 +7,19 @@ Where both ends of an axis see the same medium only the lower half is solved.
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
 from midradius.fem.grids import Axis, axis, halved, line, rectangle
+from midradius.fem.place import Line
+from midradius.fem.place import Place as Place  # for those who read sections only
 from midradius.fem.volumes import ControlVolumes, Sense
-from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
+
+if TYPE_CHECKING:
+    from midradius.fem.drawing import Drawing
 
 FormName = Literal["slab", "round", "tube", "ball", "bar", "ring"]
 FIRST_OVER_FILM = 0.04  # first of 64 cells as a share of k/h, the depth a film acts over
@@ -75,6 +80,24 @@ class Section:
         factor, name = _WHOLE[self.sense]
         return factor * folds, name
 
+    @property
+    def n_dim(self) -> int:
+        """How many coordinates a point has."""
+        return len(self.spans)
+
+    def trade_place(self, term: str, depth: float | None = None) -> tuple[float, ...]:
+        """Coordinates [m] of a trade term; see :func:`trade_place`."""
+        return trade_place(self, term, depth)
+
+    def depth_of(self, coordinates: tuple[float, ...]) -> float:
+        """Distance [m] to the nearest surface; see :func:`depth_of`."""
+        return depth_of(self, coordinates)
+
+    def cooled_by(self, strongest_film: Mapping[str, float]) -> "Section":
+        """Depths of a form count from all its surfaces, cooled or not."""
+        del strongest_film
+        return self
+
     def folded(self, same: Mapping[tuple[str, str], bool]) -> "Section":
         """The section with each axis folded whose two zones always see the same."""
         spans = tuple(
@@ -103,15 +126,33 @@ class Cut:
         """The same section with every second node."""
         return _assemble(self.section, tuple(halved(a) for a in self.axes))
 
+    def finer(self, strongest_film: Mapping[str, float], most: int) -> "Cut | None":
+        """The same section on twice the cells a side; None beyond ``most`` nodes."""
+        cells = tuple(2 * (len(a.nodes) - 1) for a in self.axes)
+        if np.prod([count + 1 for count in cells]) > most:
+            return None
+        return cut(self.section, cells, strongest_film=strongest_film)
 
-@dataclass(frozen=True)
-class Place:
-    """A point of the section: weights on nodes, coordinates and depth [m]."""
+    def shared(self, field: Array) -> Array:
+        """A field (n_time, n_node) on the nodes that the coarser grid keeps."""
+        shape = [len(a.nodes) for a in self.axes]
+        every = [slice(None, None, 2)] * len(shape)
+        kept = field.reshape(len(field), *shape)[(slice(None), *every)]
+        return kept.reshape(len(field), -1)
 
-    node: IntArray
-    share: Array
-    coordinates: tuple[float, ...]
-    depth: float
+    def place(self, coordinates: tuple[float, ...]) -> Place:
+        """A point [m] of the part; see :func:`place`."""
+        return place(self, coordinates)
+
+    def profile(self) -> Line:
+        """The line from surface to core; see :func:`profile`."""
+        return profile(self)
+
+    def drawing(self) -> "Drawing":
+        """The whole part as a mesh to look at."""
+        from midradius.fem.drawing import draw  # which knows cuts
+
+        return draw(self)
 
 
 def slab(thickness: float) -> Section:
@@ -317,8 +358,8 @@ def trade_place(section: Section, term: str, depth: float | None = None) -> tupl
     return tuple(value if i == which else s.middle for i, s in enumerate(section.spans))
 
 
-def profile(cut: Cut) -> tuple[Array, IntArray, str]:
-    """Depth [m] and nodes from surface to core along the drawing's line, and its name."""
+def profile(cut: Cut) -> Line:
+    """Depth [m] and nodes from surface to core along the drawing's line."""
     section = cut.section
     which, from_low, core = _line_of(section)
     nodes = cut.axes[which].nodes
@@ -337,4 +378,4 @@ def profile(cut: Cut) -> tuple[Array, IntArray, str]:
         at = int(np.argmin(np.abs(cut.axes[other].nodes - across.middle)))
         n_along = len(cut.axes[1].nodes)
         chosen = order * n_along + at if which == 0 else at * n_along + order
-    return depth[order], chosen.astype(np.int64), labels[through]
+    return Line(depth[order], chosen.astype(np.int64), labels[through])

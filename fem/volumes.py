@@ -13,7 +13,7 @@ import numpy as np
 
 from midradius.thermo.arrays import Array, IntArray
 
-Sense = Literal["slab", "cylinder", "ball", "plane", "axisymmetric"]
+Sense = Literal["slab", "cylinder", "ball", "plane", "axisymmetric", "solid"]
 
 EXTENT = {
     "slab": "per square metre of face",
@@ -21,6 +21,7 @@ EXTENT = {
     "ball": "per steradian",
     "plane": "per metre of length",
     "axisymmetric": "per radian",
+    "solid": "as meshed",
 }
 
 
@@ -31,7 +32,8 @@ class ControlVolumes:
     Parameters
     ----------
     points
-        Node positions [m], shape (n_node, dim): depth, radius, (x, y) or (r, z).
+        Node positions [m], shape (n_node, dim): depth, radius, (x, y), (r, z) or
+        (x, y, z).
     volume
         Volume of each node's cell, shape (n_node,), in m3 per the unit that
         :data:`EXTENT` names for the sense.
@@ -40,7 +42,8 @@ class ControlVolumes:
         the nodes ``e`` and ``e + 1``, which lets the solver eliminate directly.
     conductance_length
         Face area over node distance, shape (n_edge,); times a conductivity it
-        is a conductance.
+        is a conductance. On meshes it is the weight of P1 elements, which may be
+        negative where cells of a solid mesh are obtuse.
     face_node, face_area, face_zone
         Where heat leaves: node, area and index into ``zones``, (n_face,) each.
     """

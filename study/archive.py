@@ -59,8 +59,9 @@ def write_fields(result: Result, folder: Path) -> Path:
     return write_series(
         folder,
         points_mm=result.view.points_mm,
-        quads=result.view.quads,
-        triangles=result.view.triangles,
+        cells=result.view.cells,
+        given_point=result.view.point_data,
+        given_cell=result.view.cell_data,
         times_s=result.times_s,
         each_time={"temperature_degC": result.temp_degC[:, node]},
         at_end=at_end,
@@ -90,6 +91,11 @@ def _numbers(result: Result) -> dict[str, Quantity]:
         "view/points": many(view.points_mm, "mm", "points of the drawing of the whole part"),
         "view/quads": many(view.quads, "1", "corner points of quadrilateral cells"),
         "view/triangles": many(view.triangles, "1", "corner points of triangular cells"),
+        "view/connectivity": many(
+            np.concatenate([block.ravel() for _, block in view.cells]),
+            "1",
+            f"corner points of all cells in turn, of the types {_types(view.cells)}",
+        ),
         "view/node": many(view.node, "1", "solved node of each point of the drawing"),
         "fields/time": many(r.times_s, "s", "stored times"),
         "fields/temperature": many(r.temp_degC, "degC", "temperature (time, node)"),
@@ -159,6 +165,11 @@ def _numbers(result: Result) -> dict[str, Quantity]:
                 r.heating.heat_balance_relative, "1", "relative closure of the heating's balance"
             ),
         }
+    if r.profile.share is not None:
+        data["profile/share"] = many(r.profile.share, "1", "shares of these nodes")
+    for name, given in (*view.point_data.items(), *view.cell_data.items()):
+        if given.dtype.kind in "fiu":
+            data[f"given/{_plain(name)}"] = many(given, "1", "array of the mesh file, as it was")
     for name, temp in r.critical_degC.items():
         data[f"critical/{_plain(name)}"] = one(temp, "degC", f"critical temperature {name}")
     for key, units, long_name in _POSITION_COLUMNS:
@@ -227,6 +238,10 @@ def _texts(result: Result) -> dict[str, str]:
 
 def _json(value: object) -> str:
     return json.dumps(jsonable(value), indent=1, ensure_ascii=False, allow_nan=False)
+
+
+def _types(cells: tuple[tuple[str, NDArray[np.int64]], ...]) -> str:
+    return ", ".join(f"{kind} x {len(block)}" for kind, block in cells)
 
 
 def _plain(name: str) -> str:

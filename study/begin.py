@@ -6,8 +6,9 @@ from functools import lru_cache
 
 import numpy as np
 
+from midradius.fem.cutting import AnyCut
 from midradius.fem.heatup import Heating, heat_up
-from midradius.fem.section import Cut, Place
+from midradius.fem.place import Place
 from midradius.study.case import Case
 from midradius.study.heatsetup import HeatSetup
 from midradius.thermo import austenite as soaking
@@ -39,7 +40,7 @@ class Begun:
 def begin(
     case: Case,
     furnace: HeatSetup,
-    cut: Cut,
+    cut: AnyCut,
     *,
     places: Mapping[str, Place],
     watched: tuple[str, ...],

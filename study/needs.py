@@ -21,8 +21,8 @@ from typing import Protocol
 
 import numpy as np
 
-from midradius.fem import section as forms
-from midradius.fem.section import Cut, Place
+from midradius.fem.cutting import AnyCut
+from midradius.fem.place import Place
 from midradius.study import casekeys as keys
 from midradius.study import uncertainty
 from midradius.study.case import EVERYWHERE, Asked, Case, Need
@@ -62,7 +62,7 @@ class Solution(Protocol):
     """One solution, with what its structure is worth; no cut where temperatures were given."""
 
     @property
-    def cut(self) -> Cut | None: ...
+    def cut(self) -> AnyCut | None: ...
     @property
     def worth(self) -> Worth: ...
 
@@ -253,7 +253,7 @@ def _where(run: _Run, need: Need, field: Array, limits: _Limits) -> str:
     worst = int(np.argmin(limits.margin(field)))
     if cut is None:
         return f"worst at {run.called(worst)}"
-    depth = forms.depth_of(cut.section, tuple(cut.body.points[worst]))
+    depth = cut.section.depth_of(tuple(cut.body.points[worst]))
     return f"worst {1e3 * depth:.1f} mm below the surface"
 
 
@@ -274,8 +274,8 @@ def _depth(run: _Run, need: Need) -> Verdict:
     def to(solution: Solution, level: float) -> float:
         worth = solution.worth
         field = worth.phases[MARTENSITE] if of_martensite else worth.hardness_hv
-        depth, node, _ = forms.profile(solution.cut or cut)
-        return crossing(depth, field[node], level) / metre
+        line = (solution.cut or cut).profile()
+        return crossing(line.depth, line.of(field), level) / metre
 
     answer = run.answer[0]
     value = to(answer, level)
@@ -286,11 +286,11 @@ def _depth(run: _Run, need: Need) -> Verdict:
         basis=f"{wide.basis}; taken along the profile",
         measured=wide.measured,
     )
-    depth, _, label = forms.profile(cut)
-    note = "hardened through" if value >= depth[-1] / metre else ""
+    line = cut.profile()
+    note = "hardened through" if value >= line.depth[-1] / metre else ""
     limits = _Limits(need.at_least, need.at_most)
     verdict = _verdict(need, need.unit, limits, value, error, spread, note)
-    return replace(verdict, position=label)
+    return replace(verdict, position=line.label)
 
 
 def crossing(depth: Array, values: Array, level: float) -> float:
@@ -376,11 +376,12 @@ def _with_remedy(run: _Run, need: Need, verdict: Verdict, field: Array, limits: 
         share = float(cut.body.volume[met].sum() / cut.body.volume.sum())
         text = f"met in {100.0 * share:.0f} % of the section"
     else:
-        depth, node, label = forms.profile(cut)
-        near = nearest_met(depth, limits.margin(field[node]), run.answer[1][need.position].depth)
-        text = f"met nowhere on the profile, {label}"
+        line = cut.profile()
+        wanted = run.answer[1][need.position].depth
+        near = nearest_met(line.depth, limits.margin(line.of(field)), wanted)
+        text = f"met nowhere on the profile, {line.label}"
         if near is not None:
-            text = f"nearest place that meets it: {1e3 * near:.1f} mm on the profile, {label}"
+            text = f"nearest place that meets it: {1e3 * near:.1f} mm on the profile, {line.label}"
     return replace(verdict, note=_joined([verdict.note, text]))
 
 

@@ -143,9 +143,9 @@ def cooling(result: Result) -> "Figure":
 def profile(result: Result) -> "Figure":
     """Hardness and microstructure from the surface to the core."""
     figure, (upper, lower) = sheets(result, height=7.2, rows=2)
-    depth, node = result.profile.depth_mm, result.profile.node
-    hardness = result.hardness_hv[node]
-    before = result.hardness_as_quenched_hv[node]
+    depth, on = result.profile.depth_mm, result.profile.of
+    hardness = on(result.hardness_hv)
+    before = on(result.hardness_as_quenched_hv)
     if result.tempers:
         upper.plot(depth, before, color=BLACK, lw=0.8, label="as quenched")
         upper.plot(depth, hardness, color=BLACK, lw=2.4, label="tempered")
@@ -168,10 +168,11 @@ def profile(result: Result) -> "Figure":
     upper.set_ylim(low, high)
     upper.set_ylabel("hardness [HV]", fontsize=SIZE)
     _rockwell_axis(upper, low, high)
-    present = [k for k in range(len(PHASE_NAMES)) if result.phases[k, node].max() > _LEAST_SHARE]
+    phases = on(result.phases)
+    present = [k for k in range(len(PHASE_NAMES)) if phases[k].max() > _LEAST_SHARE]
     lower.stackplot(
         depth,
-        100.0 * result.phases[present][:, node],
+        100.0 * phases[present],
         labels=[PHASE_LABEL[PHASE_NAMES[k]] for k in present],
         colors=[PHASE[PHASE_NAMES[k]] for k in present],
         edgecolor="white",
@@ -247,7 +248,7 @@ def _name_axes(axes: "Axes", sense: str) -> None:
 
 def _along(result: Result, coordinates_mm: tuple[float, ...]) -> float | None:
     """Depth of a place along the line of the profile [mm]; None if it lies elsewhere."""
-    line = result.points_mm[result.profile.node]
+    line = result.profile.of(result.points_mm.T).T
     depth = result.profile.depth_mm
     length = float(np.linalg.norm(line[-1] - line[0]))
     ahead = (line[-1] - line[0]) / length

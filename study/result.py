@@ -6,8 +6,12 @@ symmetry allows it); ``view`` draws the whole part from them.
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import Any, Literal
 
+import numpy as np
+from numpy.typing import NDArray
+
+from midradius.fem.place import along
 from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.source import RangeNote, Source
 
@@ -16,15 +20,32 @@ from midradius.thermo.source import RangeNote, Source
 class SectionView:
     """A mesh that shows the part as a person would draw it.
 
-    ``points_mm`` (n_point, 3); ``quads`` (n_quad, 4) and ``triangles``
-    (n_triangle, 3) index points; ``node`` (n_point,) is the solved node that
-    each point takes its values from.
+    ``points_mm`` (n_point, 3); ``cells`` are blocks of one type each, (n, k) indices
+    of points; ``node`` (n_point,) is the solved node that each point takes its values
+    from. Of a mesh file, points and cells are the file's own in its order, with the
+    data that it brought: ``point_data`` (n_point, ...), ``cell_data`` (n_cell, ...).
     """
 
     points_mm: Array
-    quads: IntArray
-    triangles: IntArray
+    cells: tuple[tuple[str, IntArray], ...]
     node: IntArray
+    point_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
+    cell_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
+
+    def of_type(self, kind: str, n_corner: int) -> IntArray:
+        """All cells of one type, (n, n_corner)."""
+        blocks = [block for name, block in self.cells if name == kind]
+        return np.concatenate([np.empty((0, n_corner), dtype=np.int64), *blocks])
+
+    @property
+    def quads(self) -> IntArray:
+        """Quadrilaterals, (n_quad, 4)."""
+        return self.of_type("quad", 4)
+
+    @property
+    def triangles(self) -> IntArray:
+        """Triangles, (n_triangle, 3)."""
+        return self.of_type("triangle", 3)
 
 
 @dataclass(frozen=True)
@@ -72,11 +93,19 @@ class Position:
 
 @dataclass(frozen=True)
 class Profile:
-    """Surface to core along the drawing's line, (n_point,) each."""
+    """Surface to core along the drawing's line, (n_point,) each.
+
+    On a mesh its points lie between nodes: ``node`` and ``share`` are (n_point, k).
+    """
 
     depth_mm: Array
     node: IntArray
     label: str
+    share: Array | None = None
+
+    def of(self, values: NDArray[Any]) -> Array:
+        """Values of nodes (..., n_node) along the profile, (..., n_point)."""
+        return along(values, self.node, self.share)
 
 
 @dataclass(frozen=True)

@@ -7,13 +7,15 @@ from functools import partial
 import numpy as np
 
 from midradius.fem import section as forms
-from midradius.fem.drawing import draw
+from midradius.fem.cutting import AnyCut
 from midradius.fem.media import ZERO_DEGC
+from midradius.fem.place import Place
 from midradius.fem.route import History, cool
-from midradius.fem.section import Cut, Place
+from midradius.fem.section import Section
 from midradius.study.basis import inputs_of, notes_of, sources_of
 from midradius.study.begin import Begun, begin
 from midradius.study.case import Case
+from midradius.study.meshrun import first_level, mesh_notes, mesh_statements, with_grid
 from midradius.study.needs import judge
 from midradius.study.result import (
     Position,
@@ -39,15 +41,15 @@ from midradius.thermo.phases import PHASE_NAMES
 # By dimension: error of one step against the asked accuracy of the run, and the
 # grid error against it above which the run is repeated on twice the cells. In two
 # dimensions that costs five times the time and gains little inside the part.
-TOLERANCE_PER_ACCURACY = {1: 0.1, 2: 0.2}
-REFINE_ABOVE = {1: 1.0, 2: 4.0}
+TOLERANCE_PER_ACCURACY = {1: 0.1, 2: 0.2, 3: 0.2}
+REFINE_ABOVE = {1: 1.0, 2: 4.0, 3: 4.0}
 TIGHTER = 1.0 / 8.0  # tolerance of the run that measures the time error
 # The error of a second-order method goes with tolerance^(2/3): what the tighter
 # run still has, and so what its difference from the looser one leaves out.
 TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
 GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
 FACTORS = (TIME_FACTOR, GRID_FACTOR)
-MOST_NODES = {1: 2049, 2: 12_000}
+MOST_NODES = {1: 2049, 2: 12_000, 3: 12_000}
 N_ERROR_TIMES = 200  # moments at which the errors are measured, stored or not
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
@@ -58,14 +60,14 @@ Tell = Callable[[float, float], None]
 class _Attempt:
     """One march from the furnace on, and what its structure is worth."""
 
-    cut: Cut
+    cut: AnyCut
     begun: Begun
     history: History
     worth: Worth
 
 
 def _march(
-    cut: Cut,
+    cut: AnyCut,
     case: Case,
     setup: Setup,
     places: Mapping[str, Place],
@@ -117,12 +119,12 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         The solver gave up.
     """
     setup = prepare(case)
-    dim = len(setup.section.spans)
+    dim = setup.section.n_dim
     tolerance = TOLERANCE_PER_ACCURACY[dim] * case.grid.accuracy
-    cells = case.grid.cells or forms.cells_for(setup.section, case.grid.accuracy)
+    fine = _first(case, setup)
     while True:
-        fine = forms.cut(setup.section, _even(cells), strongest_film=setup.strongest_film)
-        coarse = fine.coarser()
+        below = fine.coarser()
+        coarse = below or fine
         march = partial(_march, case=case, setup=setup)
         at_fine, at_coarse = _places(case, fine), _places(case, coarse)
         scout = march(
@@ -138,19 +140,19 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
             tolerance=tolerance,
             tell=None if tell is None else lambda now, end=end: tell(now, end),  # type: ignore[misc]
         )
-        rough = march(coarse, places=at_coarse, times=times, tolerance=tolerance)
-        grid_error = GRID_FACTOR * float(
-            np.abs(_shared(main.history.field, fine) - rough.history.field).max()
-        )
-        finer = tuple(2 * count for count in _even(cells))
-        nodes = np.prod([count + 1 for count in finer])
-        if (
-            case.grid.cells
-            or grid_error <= REFINE_ABOVE[dim] * case.grid.accuracy
-            or nodes > MOST_NODES[dim]
-        ):
+        if below is None:
+            rough, grid_error = main, float("nan")
             break
-        cells = finer
+        rough = march(coarse, places=at_coarse, times=times, tolerance=tolerance)
+        both = fine.shared(main.history.field)
+        grid_error = GRID_FACTOR * float(
+            np.abs(both - rough.history.field[:, : both.shape[1]]).max()
+        )
+        good = grid_error <= REFINE_ABOVE[dim] * case.grid.accuracy
+        finer = fine.finer(setup.strongest_film, MOST_NODES[dim])
+        if case.grid.cells or good or finer is None:
+            break
+        fine = finer
     sharp = march(coarse, places=at_coarse, times=times, tolerance=TIGHTER * tolerance)
     # In one dimension the finer grid is cheap enough to tell its own time error.
     loose, tight = (rough, sharp)
@@ -159,8 +161,10 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         tight = march(fine, places=at_fine, times=times, tolerance=TIGHTER * tolerance)
     time_error = TIME_FACTOR * float(np.abs(tight.history.field - loose.history.field).max())
     kept = np.isin(times, asked)
-    main = replace(main, history=replace(main.history, times=asked, field=main.history.field[kept]))
-    return _result(case, setup, main, rough, sharp, at_fine, at_coarse, time_error, grid_error)
+    shown = replace(
+        main, history=replace(main.history, times=asked, field=main.history.field[kept])
+    )
+    return _result(case, setup, shown, rough, sharp, at_fine, at_coarse, time_error, grid_error)
 
 
 def _even(cells: tuple[int, ...]) -> tuple[int, ...]:
@@ -168,21 +172,21 @@ def _even(cells: tuple[int, ...]) -> tuple[int, ...]:
     return tuple(4 * int(np.ceil(count / 4)) for count in cells)
 
 
-def _shared(field: Array, fine: Cut) -> Array:
-    """A field on the nodes that the coarser grid kept, (n_time, n_coarse)."""
-    shape = [len(a.nodes) for a in fine.axes]
-    kept = field.reshape(len(field), *shape)[(slice(None), *[slice(None, None, 2)] * len(shape))]
-    return kept.reshape(len(field), -1)
+def _first(case: Case, setup: Setup) -> AnyCut:
+    """The section cut as the case asks, or as fine as its accuracy is likely to need."""
+    section = setup.section
+    if not isinstance(section, Section):
+        return first_level(section)
+    cells = case.grid.cells or forms.cells_for(section, case.grid.accuracy)
+    return forms.cut(section, _even(cells), strongest_film=setup.strongest_film)
 
 
-def _places(case: Case, cut: Cut) -> dict[str, Place]:
+def _places(case: Case, cut: AnyCut) -> dict[str, Place]:
     named = dict(case.watched)
     for stage in (*case.heating, *case.cooling):
         if stage.until and stage.until.position not in named:
             named[stage.until.position] = case.position(stage.until.position)
-    return {
-        name: forms.place(cut, coordinates_of(cut.section, place)) for name, place in named.items()
-    }
+    return {name: cut.place(coordinates_of(cut.section, place)) for name, place in named.items()}
 
 
 def _field_times(case: Case, scout: History) -> Array:
@@ -223,8 +227,7 @@ def _result(
 ) -> Result:
     composition = case.steel.steel.composition
     history, cut = main.history, main.cut
-    view = draw(cut)
-    depth, nodes, label = forms.profile(cut)
+    view, line = cut.drawing(), cut.profile()
     factor, extent = setup.section.whole
     mass = properties.DENSITY * float(cut.body.volume.sum())
     positions = tuple(
@@ -240,7 +243,7 @@ def _result(
         sense=setup.section.sense,
         points_mm=cut.body.points * 1e3,
         volume=cut.body.volume,
-        view=SectionView(view.points * 1e3, view.quads, view.triangles, view.node),
+        view=SectionView(view.points * 1e3, view.cells, view.node, view.point_data, view.cell_data),
         times_s=history.times,
         temp_degC=history.field - ZERO_DEGC,
         phases=main.worth.phases,
@@ -260,7 +263,7 @@ def _result(
         history_times_s=history.step_times,
         history_temp_degC=history.watch_temp - ZERO_DEGC,
         positions=positions,
-        profile=Profile(depth * 1e3, nodes, label),
+        profile=Profile(line.depth * 1e3, line.node, line.label, line.share),
         stages=tuple(
             stage_record(stage, went, factor, "below")
             for stage, went in zip(setup.stages, history.stages, strict=True)
@@ -285,12 +288,17 @@ def _result(
         n_step=history.n_step,
         n_node=cut.body.n_node,
         heating=heating_record(setup.furnace, main.begun, factor, mass),
-        verdicts=judge(case, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS),
+        verdicts=with_grid(
+            judge(case, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS),
+            measured=bool(np.isfinite(grid_error)),
+        ),
         notes=notes_of(
             case, setup.notes, history, main.worth, seen=history.field, last=history.temp
-        ),
+        )
+        + mesh_notes(cut, history, setup.stages, main.begun.temp),
         sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
+        + mesh_statements(cut)
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=soak_warnings(main.worth.soaked, case.soak.at or 0.0, cut.body.volume)
         + setup.cautions
@@ -341,7 +349,9 @@ def _position(
         austenite_grain_astm=_known(here(soaked.grain_astm, at)),
         austenite_grain_um=_known(1e6 * here(soaked.grain_mean_intercept, at)),
         hardness_time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
-        hardness_grid_error_hv=GRID_FACTOR * abs(hv - hv_rough),
+        hardness_grid_error_hv=(
+            GRID_FACTOR * abs(hv - hv_rough) if rough.cut is not main.cut else float("nan")
+        ),
     )
 
 

@@ -6,6 +6,7 @@ from itertools import combinations
 
 from midradius.fem import section as forms
 from midradius.fem.convection import Geometry
+from midradius.fem.cutting import AnySection
 from midradius.fem.media import ZERO_DEGC, medium
 from midradius.fem.route import CoolingStage, Surface
 from midradius.fem.section import Section
@@ -53,11 +54,11 @@ def section_of(given: SectionInput) -> Section:
             return forms.ring(size["outside"], size["bore"], size["height"])
 
 
-def coordinates_of(section: Section, place: PositionInput) -> tuple[float, ...]:
+def coordinates_of(section: AnySection, place: PositionInput) -> tuple[float, ...]:
     """Where a position of the case lies [m]."""
     if place.coordinates is not None:
         return place.coordinates
-    return forms.trade_place(section, place.kind, place.depth)
+    return section.trade_place(place.kind, place.depth)
 
 
 def prepare(case: Case) -> Setup:

@@ -64,30 +64,30 @@ def _heating(result: Result) -> Iterable[Sequence[object]]:
 
 
 def _profile(result: Result) -> Iterable[Sequence[object]]:
-    node = result.profile.node
-    hardness = result.hardness_hv[node]
+    on = result.profile.of
+    hardness = on(result.hardness_hv)
     columns = [
         result.profile.depth_mm,
-        *result.phases[:, node],
+        *on(result.phases),
         hardness,
         hv_to_hrc(hardness),
         hv_to_hb(hardness),
         hv_to_uts(hardness),
-        result.yield_mpa[node],
-        result.hardness_as_quenched_hv[node],
-        result.time_800_500_s[node],
-        result.rate_700_K_per_s[node],
-        result.austenite_carbon_pct[node],
-        result.ferrite_grain_um[node],
-        result.pearlite_spacing_um[node],
-        result.cementite_film_um[node],
-        result.impact_transition_degC[node],
-        result.soaked.hottest_degC[node],
-        result.soaked.carbon_in_solution_pct[node],
-        result.soaked.ferrite[node],
-        result.soaked.cementite[node],
-        result.soaked.grain_astm[node],
-        result.soaked.grain_um[node],
+        on(result.yield_mpa),
+        on(result.hardness_as_quenched_hv),
+        on(result.time_800_500_s),
+        on(result.rate_700_K_per_s),
+        on(result.austenite_carbon_pct),
+        on(result.ferrite_grain_um),
+        on(result.pearlite_spacing_um),
+        on(result.cementite_film_um),
+        on(result.impact_transition_degC),
+        on(result.soaked.hottest_degC),
+        on(result.soaked.carbon_in_solution_pct),
+        on(result.soaked.ferrite),
+        on(result.soaked.cementite),
+        on(result.soaked.grain_astm),
+        on(result.soaked.grain_um),
     ]
     yield [
         "depth_mm",

@@ -39,7 +39,9 @@ def series(folder: Path, **changes: object) -> Path:
         "each_time": {"temperature_degC": np.arange(3.0 * n_point).reshape(3, n_point) / 3.0},
         "at_end": {"hardness_HV": hardness, "ferrite_fraction": np.full(n_point, 0.25)},
     }
-    return write_series(folder, **(content | changes))  # type: ignore[arg-type]
+    content |= changes
+    content["cells"] = tuple((kind[:-1], content.pop(kind)) for kind in ("quads", "triangles"))
+    return write_series(folder, **content)  # type: ignore[arg-type]
 
 
 def read(path: Path) -> tuple[object, dict[str, np.ndarray]]:

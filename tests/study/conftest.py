@@ -49,7 +49,8 @@ def disc(radii_mm: np.ndarray, n_around: int = 48) -> SectionView:
             for a in 1 + n_around * np.arange(len(radii_mm) - 2)
         ]
     )
-    return SectionView(points, quads.astype(np.int64), triangles.astype(np.int64), node)
+    cells = (("quad", quads.astype(np.int64)), ("triangle", triangles.astype(np.int64)))
+    return SectionView(points, cells, node)
 
 
 def invented_result(n_node: int = 31, n_around: int = 48) -> Result:
