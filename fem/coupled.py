@@ -14,7 +14,11 @@ from midradius.thermo.errors import SolverFault
 from midradius.thermo.kinetics import COLDEST, N_SCALE, Tables, enthalpy_node
 
 HISTORY_ROWS = 512  # accepted steps between two looks at the outside world
+FIELD_WINDOW = 8  # fields held at a time where a sink takes them
 NEVER_MARKED = -1.0
+
+Sink = Callable[[float, Array], None]
+"""Takes a moment [s] and the field then [K], (n_node,), which is its own only during the call."""
 
 
 @dataclass(frozen=True)
@@ -74,6 +78,8 @@ class Run:
         Places followed at every step.
     field_times
         When to keep the whole field [s], ascending.
+    sink
+        Takes each field as it comes, in order; else all are held until the end.
     rows
         Accepted steps between two calls of ``tell``.
     scale
@@ -93,6 +99,7 @@ class Run:
         field_times: Array,
         scale: Array | None = None,
         rows: int = HISTORY_ROWS,
+        sink: Sink | None = None,
     ) -> None:
         n = body.n_node
         self._volumes = body
@@ -109,7 +116,9 @@ class Run:
             face_zone=body.face_zone,
         )
         self._history: list[Array] = []
-        clock = np.zeros(8)
+        self._sink = sink
+        held = len(field_times) if sink is None else min(FIELD_WINDOW, len(field_times))
+        clock = np.zeros(march.N_CLOCK)
         self.progress = Progress(
             clock=clock,
             temp=np.array(temp, dtype=np.float64),
@@ -121,7 +130,7 @@ class Run:
             zone_heat=np.zeros(max(len(body.zones), 1)),
             marks=np.full((n, march.N_MARK), NEVER_MARKED),
             field_moment=np.array(field_times, dtype=np.float64),
-            field=np.full((len(field_times), n), np.nan),
+            field=np.full((held, n), np.nan),
             watch_node=watch.node,
             watch_share=watch.share,
             history=np.zeros((rows, len(watch.node) + 1, 6)),
@@ -138,9 +147,36 @@ class Run:
             part = p.state[p.watch_node, column]
             first[0, 1:, column + 1] = (part * p.watch_share).sum(axis=1)
         self._history.append(first)
-        now = p.field_moment <= 0.0
-        p.field[now] = p.temp
-        p.clock[march.FIELD_ROW] = int(now.sum())
+        now = int((p.field_moment <= 0.0).sum())
+        p.field[:now] = p.temp
+        p.clock[march.FIELD_ROW] = now
+        self._hand_over()
+
+    def _hand_over(self) -> None:
+        """Give the sink what the window holds, so that its rows can be used again."""
+        if self._sink is None:
+            return
+        p = self.progress
+        done = int(p.clock[march.FIELD_ROW])
+        for row in range(int(p.clock[march.FIELD_TAKEN]), done):
+            self._sink(float(p.field_moment[row]), p.field[row % len(p.field)])
+        p.clock[march.FIELD_TAKEN] = done
+
+    def fields(self) -> Array:
+        """All fields (n_time, n_node) [K], the last temperatures for moments after the end.
+
+        With a sink the rest goes there, and none is left here.
+        """
+        p = self.progress
+        first = int(p.clock[march.FIELD_ROW])
+        if self._sink is None:
+            field = p.field.copy()
+            field[first:] = p.temp
+            return field
+        for moment in p.field_moment[first:]:
+            self._sink(float(moment), p.temp)
+        p.clock[march.FIELD_ROW] = p.clock[march.FIELD_TAKEN] = len(p.field_moment)
+        return np.empty((0, len(p.temp)))
 
     def enthalpy(self) -> Array:
         """Enthalpy of every node now [J/kg], shape (n_node,)."""
@@ -232,6 +268,7 @@ class Run:
                 len(self.progress.history),
             )
             self._history.append(self.progress.history[: int(clock[march.HISTORY_ROW])].copy())
+            self._hand_over()
             if tell is not None:
                 tell(float(clock[march.TIME]))
             if status == march.GAVE_UP:

@@ -79,7 +79,8 @@ class Progress(NamedTuple):
     """What a march changes in place; see :func:`midradius.fem.coupled.begin`.
 
     ``clock``: time, next step, previous step (0 when there is none), steps
-    taken, steps refused, Newton iterations, next output row, next history row.
+    taken, steps refused, Newton iterations, next output row, next history row, output
+    rows fetched.
     """
 
     clock: Array

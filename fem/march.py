@@ -43,7 +43,18 @@ SMALLEST_STEP = 1e-9  # s
 MARKS_K = (1073.15, 973.15, 773.15)
 N_MARK = 4  # three times and the cooling rate at the second
 
-TIME, STEP, STEP_BEFORE, TAKEN, REFUSED, ITERATIONS, FIELD_ROW, HISTORY_ROW = range(8)
+(
+    TIME,
+    STEP,
+    STEP_BEFORE,
+    TAKEN,
+    REFUSED,
+    ITERATIONS,
+    FIELD_ROW,  # fields kept so far
+    HISTORY_ROW,
+    FIELD_TAKEN,  # of these, fetched by the caller; their rows may be used again
+) = range(9)
+N_CLOCK = 9
 
 
 @kernel
@@ -83,8 +94,8 @@ def march(
 ) -> int:
     """Advance ``progress`` until the end, the limit, or ``most_steps`` steps.
 
-    Returns REACHED_END, REACHED_LIMIT, PAUSED or GAVE_UP. On GAVE_UP the state
-    is that of the last accepted step.
+    Returns REACHED_END, REACHED_LIMIT, PAUSED (so many steps are done, or the window of
+    kept fields is full) or GAVE_UP. On GAVE_UP the state is that of the last accepted step.
     """
     n = len(body.mass)
     clock = progress.clock
@@ -115,6 +126,19 @@ def march(
             step = remaining
         elif step > 0.5 * remaining:
             step = 0.5 * remaining
+        # Fields kept in a window that is smaller than their number: wait for room, and
+        # never step over more of them than the window holds.
+        window, row = progress.field.shape[0], int(clock[FIELD_ROW])
+        if row + window <= len(progress.field_moment):
+            free = window - (row - int(clock[FIELD_TAKEN]))
+            reach = clock[TIME] + step * (1.0 + 1e-12)
+            if (
+                row + free < len(progress.field_moment)
+                and progress.field_moment[row + free] <= reach
+            ):
+                if free < window:
+                    return PAUSED
+                step = progress.field_moment[row + window - 1] - clock[TIME]
         if step < SMALLEST_STEP:
             return GAVE_UP
         before = clock[STEP_BEFORE]
@@ -229,14 +253,13 @@ def march(
             progress.zone_heat[zone] += step * (
                 EXPLICIT * (zone0[zone] + zone1[zone]) + IMPLICIT * zone2[zone]
             )
-        row = int(clock[FIELD_ROW])
         while row < len(progress.field_moment) and progress.field_moment[row] <= start + step * (
             1.0 + 1e-12
         ):
             s = (progress.field_moment[row] - start) / step
             for i in range(n):
                 c = ((end[i] - temp[i]) - (middle[i] - temp[i]) / GAMMA) / (1.0 - GAMMA)
-                progress.field[row, i] = temp[i] + s * (end[i] - temp[i] - c + c * s)
+                progress.field[row % window, i] = temp[i] + s * (end[i] - temp[i] - c + c * s)
             row += 1
         clock[FIELD_ROW] = row
         for i in range(n):

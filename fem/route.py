@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from midradius.fem import march
-from midradius.fem.coupled import Run, Surroundings, Until, Watch
+from midradius.fem.coupled import Run, Sink, Surroundings, Until, Watch
 from midradius.fem.cutting import AnyCut
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.place import Place
@@ -111,6 +111,7 @@ def cool(
     tell: Callable[[float], None] | None = None,
     scale: Array | None = None,
     first_number: int = 1,
+    sink: Sink | None = None,
 ) -> History:
     """March a cut section through its stages.
 
@@ -141,6 +142,8 @@ def cool(
         Factors on the rates, as `Run` takes them.
     first_number
         Place of the first stage in the route, for messages.
+    sink
+        Takes each field as it comes; the history then holds none of them.
 
     Raises
     ------
@@ -164,6 +167,7 @@ def cool(
         ),
         field_times=field_times,
         scale=scale,
+        sink=sink,
     )
     ends = []
     for number, stage in enumerate(stages, start=first_number):
@@ -224,8 +228,7 @@ def _refuse_heating(stage: CoolingStage, number: int, temp: Array) -> None:
 def _history(run: Run, stages: tuple[StageEnd, ...], times: Array) -> History:
     p = run.progress
     steps = run.history
-    field = p.field.copy()
-    field[np.isnan(field).any(axis=1)] = p.temp
+    field = run.fields()
     heat_after, coldest = run.heat(), run.coldest
     left = remains(p.state, p.temp, p.scale, p.marks, run.tables)
     return History(

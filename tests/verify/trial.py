@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from midradius.fem.coupled import Run, Surroundings, Watch
+from midradius.fem.coupled import Run, Sink, Surroundings, Watch
 from midradius.fem.grids import Axis, halved
 from midradius.fem.volumes import ControlVolumes
 from midradius.thermo import kinetics as kin
@@ -88,6 +88,7 @@ def start(
     *,
     fields: Sequence[float] = (),
     watch: Sequence[int] = (),
+    sink: Sink | None = None,
 ) -> Run:
     """A body at its starting temperature [K], ready to run."""
     field = np.broadcast_to(np.asarray(temp, dtype=np.float64), body.n_node).copy()
@@ -105,6 +106,7 @@ def start(
             np.ones((len(watch), 1)),
         ),
         field_times=np.array(fields, dtype=np.float64),
+        sink=sink,
     )
 
 
