@@ -169,8 +169,8 @@ class HdfSeries:
         steps.create_dataset("CellOffsets", data=none[:, None])
         steps.create_dataset("ConnectivityIdOffsets", data=none[:, None])
         offsets = steps.create_group("PointDataOffsets")
-        for name, values in self._offsets.items():
-            offsets.create_dataset(name, data=np.array(values, dtype=np.int64))
+        for name, starts in self._offsets.items():
+            offsets.create_dataset(name, data=np.array(starts, dtype=np.int64))
 
     def _check(self, arrays: Mapping[str, Array]) -> None:
         for name, values in arrays.items():
