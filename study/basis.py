@@ -7,7 +7,8 @@ import numpy as np
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.remains import Remains
 from midradius.study import uncertainty
-from midradius.study.case import Asked
+from midradius.study.calibrationfile import CalibratedSoak, soak_differences
+from midradius.study.case import Asked, SteelInput
 from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth
 from midradius.thermo import austenite as soaking
@@ -65,6 +66,7 @@ def notes_of(
         *value.notes,
         *properties.range_notes(seen, composition.C),
         *more,
+        *_of_calibration(case.steel, left),
     ]
     hottest = float(last.max())
     if hottest > ENDS_HOT:
@@ -87,6 +89,27 @@ def _of_austenite(composition: Composition, left: Soaked, node: int) -> list[Ran
         *diffusional.range_notes(composition, carbon, grain),
         *martensite.range_notes(left.kinds[int(left.kind[node])].composition),
     ]
+
+
+def _of_calibration(given: SteelInput, left: Soaked) -> tuple[RangeNote, ...]:
+    """Notes for the mean of all that was austenitised."""
+    if given.calibration is None or not left.austenitised.any():
+        return ()
+    hottest, time, grain, carbon = (
+        float(np.mean(each[left.austenitised]))
+        for each in (left.hottest, left.time, left.grain_astm, left.carbon_pct)
+    )
+    return calibration_notes(given, CalibratedSoak(hottest - ZERO_DEGC, time, grain, carbon))
+
+
+def calibration_notes(given: SteelInput, soak: CalibratedSoak) -> tuple[RangeNote, ...]:
+    """A note for each way in which a calibrated steel is soaked otherwise than it was measured."""
+    if given.calibration is None:
+        return ()
+    return tuple(
+        RangeNote(calibration.SOURCE.model, "austenitising", found, "as in its measurement")
+        for found in soak_differences(given.calibration, soak)
+    )
 
 
 def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:

@@ -7,9 +7,26 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from midradius.study.calibrate import HIGHEST_HRC, LOWEST_HRC, Fitted
-from midradius.study.calibrationfile import KEYS, WORDS, HeatCalibration, dumps, shown
+from midradius.study.calibrate import Fitted
+from midradius.study.calibratepoints import (
+    POINTS_PICTURE,
+    POINTS_TABLE,
+    deviation_texts,
+    diagram_document,
+    point_rows,
+    points_picture,
+    points_text,
+)
+from midradius.study.calibrationfile import (
+    KEYS,
+    WORDS,
+    CalibratedSoak,
+    HeatCalibration,
+    dumps,
+    shown,
+)
 from midradius.study.chart import SIZE, SMALL, WIDTH_INCH, label
+from midradius.study.curvefit import HIGHEST_HRC, LOWEST_HRC, CurveFit
 from midradius.study.measuredcurve import SIXTEENTH_MM
 from midradius.study.palette import BLACK, GRID, GUIDE, PURPLE
 from midradius.study.sheetfile import write_document, write_picture, write_table
@@ -25,11 +42,15 @@ ZERO_DEGC = 273.15
 
 
 def head(found: Fitted) -> list[str]:
-    """The steel, the measurement, the shifts, how much nearer they bring the curve."""
-    before, after = found.fit.root_mean_square
+    """The steel, the measurements, the shifts, how much nearer they bring the heat."""
+    names = " and ".join(name for name, _ in found.files)
+    said = []
+    if found.curve is not None:
+        said.append(f"{int(found.curve.used.sum())} points, scatter {found.curve.scatter:g} HRC")
+    said += [points_text(drawn) for drawn in found.diagrams]
     lines = [
-        f"Calibration of {found.steel.name} to {found.curve.name}",
-        f"{int(found.used.sum())} points, scatter {found.fit.scatter:g} HRC; austenitised at "
+        f"Calibration of {found.steel.name} to {names}",
+        f"{'; '.join(said)}; austenitised at "
         f"{found.austenitize - ZERO_DEGC:.0f} degC ({found.reason}), {found.time / 60.0:.4g} min",
         "",
         "Shifts, with standard errors",
@@ -44,7 +65,18 @@ def head(found: Fitted) -> list[str]:
                 lines.append(f"    {bound}")
     if found.fit.held:
         lines += ["Held at none", *(f"  {reason}" for reason in found.fit.held)]
-    return [*lines, f"Root mean square deviation: {before:.2f} HRC before, {after:.2f} after"]
+    return [*lines, *(f"Root mean square deviation: {text}" for text in deviations(found))]
+
+
+def deviations(found: Fitted) -> list[str]:
+    """Before and after, of every measurement in its own unit."""
+    lines = []
+    if found.curve is not None:
+        before, after = found.curve.root_mean_square
+        lines.append(f"{before:.2f} HRC before, {after:.2f} after")
+    for drawn in found.diagrams:
+        lines += deviation_texts(drawn)
+    return lines
 
 
 def remarks(found: Fitted) -> list[str]:
@@ -63,26 +95,20 @@ def _at_bound(k: int, value: float) -> str:
 
 def document(found: Fitted) -> dict[str, Any]:
     """The fit as plain Python for JSON; None where unknown or held."""
-    before, after = found.fit.root_mean_square
     content = {
         "grade": found.steel.name,
         "composition_pct": {k: v for k, v in vars(found.steel.composition).items() if v},
         "austenitize_degC": round(found.austenitize - ZERO_DEGC, 6),
         "soak_time_s": found.time,
         "grain_astm": found.grain_astm,
-        "measured": found.curve.name,
-        "measured_sha256": found.curve.sha256,
-        "scatter_hrc": found.fit.scatter,
+        "measured": ", ".join(name for name, _ in found.files),
+        "measured_sha256": ", ".join(digest for _, digest in found.files),
         "shifts": {key: getattr(found.fit.shifts, item[0]) for key, item in KEYS.items()},
         "standard_errors": dict(zip(KEYS, found.fit.error, strict=True)),
         "held": found.fit.held,
-        "rms_before_hrc": before,
-        "rms_after_hrc": after,
-        "distance_mm": found.curve.distance_mm,
-        "measured_hrc": found.curve.hardness_hrc,
-        "used": [bool(used) for used in found.used],
-        "before_hrc": found.before_hrc,
-        "after_hrc": found.after_hrc,
+        "rivals": [vars(other) for other in found.fit.rivals],
+        **_curve_document(found.curve),
+        "diagrams": [diagram_document(drawn) for drawn in found.diagrams],
         "notes": found.notes,
         "sources": [vars(SOURCE)],
     }
@@ -90,25 +116,45 @@ def document(found: Fitted) -> dict[str, Any]:
     return plain
 
 
+def _curve_document(curve: CurveFit | None) -> dict[str, object]:
+    if curve is None:
+        return {}
+    before, after = curve.root_mean_square
+    return {
+        "scatter_hrc": curve.scatter,
+        "rms_before_hrc": before,
+        "rms_after_hrc": after,
+        "distance_mm": curve.measured.distance_mm,
+        "measured_hrc": curve.measured.hardness_hrc,
+        "used": [bool(used) for used in curve.used],
+        "before_hrc": curve.before_hrc,
+        "after_hrc": curve.after_hrc,
+    }
+
+
 def write_sheet(found: Fitted, folder: Path) -> None:
-    """Write table, picture and document into an existing folder."""
-    write_table(folder / TABLE, _rows(found))
-    write_picture(folder / PICTURE, picture(found))
+    """Write tables, pictures and the document into an existing folder."""
+    if found.curve is not None:
+        write_table(folder / TABLE, _rows(found.curve))
+        write_picture(folder / PICTURE, picture(found, found.curve))
+    if found.diagrams:
+        write_table(folder / POINTS_TABLE, point_rows(found.diagrams))
+        write_picture(folder / POINTS_PICTURE, points_picture(found.steel.name, found.diagrams))
     write_document(folder / DOCUMENT, document(found))
 
 
-def _rows(found: Fitted) -> Iterable[Sequence[object]]:
+def _rows(curve: CurveFit) -> Iterable[Sequence[object]]:
     yield [
         *("distance_mm", "distance_sixteenths_in", "measured_HRC", "used_in_fit"),
         *("before_HRC", "after_HRC"),
     ]
-    for k, z in enumerate(found.curve.distance_mm):
-        measured, used = float(found.curve.hardness_hrc[k]), int(found.used[k])
-        computed = float(found.before_hrc[k]), float(found.after_hrc[k])
+    for k, z in enumerate(curve.measured.distance_mm):
+        measured, used = float(curve.measured.hardness_hrc[k]), int(curve.used[k])
+        computed = float(curve.before_hrc[k]), float(curve.after_hrc[k])
         yield [float(z), float(z / SIXTEENTH_MM), measured, used, *computed]
 
 
-def picture(found: Fitted) -> "Figure":
+def picture(found: Fitted, curve: CurveFit) -> "Figure":
     """The measured points between the computed curves before and after."""
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
@@ -116,48 +162,48 @@ def picture(found: Fitted) -> "Figure":
     figure = Figure(figsize=(WIDTH_INCH, 4.6), layout="constrained", facecolor="white")
     FigureCanvasAgg(figure)
     axes = figure.subplots()
-    title = f"{found.steel.name}, calibrated to {found.curve.name}"
+    title = f"{found.steel.name}, calibrated to {curve.measured.name}"
     figure.suptitle(label(title if len(title) <= 90 else title[:88] + " …"), fontsize=SIZE + 1.5)
     axes.grid(color=GRID, lw=0.6)
     axes.set_axisbelow(True)
     axes.tick_params(labelsize=SMALL)
-    before, after = found.fit.root_mean_square
+    before, after = curve.root_mean_square
     axes.plot(
-        *(found.chart_mm, found.chart_before_hrc),
+        *(curve.chart_mm, curve.chart_before_hrc),
         color=PURPLE,
         ls=(0, (5, 2)),
         lw=1.6,
         label=f"computed before (rms {before:.1f} HRC)",
     )
     axes.plot(
-        *(found.chart_mm, found.chart_after_hrc),
+        *(curve.chart_mm, curve.chart_after_hrc),
         color=BLACK,
         lw=1.8,
         label=f"computed after (rms {after:.1f} HRC)",
     )
-    used = found.used
+    used = curve.used
     axes.errorbar(
-        *(found.curve.distance_mm[used], found.curve.hardness_hrc[used]),
-        yerr=found.fit.scatter,
+        *(curve.measured.distance_mm[used], curve.measured.hardness_hrc[used]),
+        yerr=curve.scatter,
         fmt="o",
         ms=5,
         color=BLACK,
         mfc="white",
         elinewidth=0.9,
-        label=f"measured, ±{found.fit.scatter:g} HRC",
+        label=f"measured, ±{curve.scatter:g} HRC",
         zorder=3,
     )
     if not used.all():
         axes.plot(
-            *(found.curve.distance_mm[~used], found.curve.hardness_hrc[~used]),
+            *(curve.measured.distance_mm[~used], curve.measured.hardness_hrc[~used]),
             "x",
             ms=5,
             color=GUIDE,
             label=f"below {LOWEST_HRC:g} HRC, left out",
         )
-    lowest = min(LOWEST_HRC, float(found.curve.hardness_hrc.min()))
+    lowest = min(LOWEST_HRC, float(curve.measured.hardness_hrc.min()))
     axes.set_ylim(lowest - 2.0, HIGHEST_HRC)
-    axes.set_xlim(0.0, float(found.chart_mm[-1]) * 1.02)
+    axes.set_xlim(0.0, float(curve.chart_mm[-1]) * 1.02)
     axes.set_xlabel("distance from the quenched end [mm]", fontsize=SIZE)
     axes.set_ylabel("hardness [HRC]", fontsize=SIZE)
     axes.legend(loc="upper right", fontsize=SMALL, frameon=True, edgecolor="white", framealpha=0.9)
@@ -172,9 +218,12 @@ def saved(found: Fitted, path: Path) -> HeatCalibration:
         composition=found.steel.composition,
         shifts=found.fit.shifts,
         error=tuple(float(e) if np.isfinite(e) else None for e in found.fit.error),
-        measured=found.curve.name,
-        measured_sha256=found.curve.sha256,
+        measured=", ".join(name for name, _ in found.files),
+        measured_sha256=", ".join(digest for _, digest in found.files),
         program=f"midradius {metadata.version('midradius')}",
+        soak=CalibratedSoak(
+            found.austenitize - ZERO_DEGC, found.time, found.grain_left_astm, found.carbon_pct
+        ),
     )
 
 
@@ -186,12 +235,11 @@ def save_file(found: Fitted, path: Path) -> None:
     InputFault
         The place cannot be written.
     """
-    before, after = found.fit.root_mean_square
     grain = "as the soak leaves it" if found.grain_astm is None else f"ASTM {found.grain_astm:g}"
     said = (
-        f"{int(found.used.sum())} points, scatter {found.fit.scatter:g} HRC, austenitised at "
+        f"{len(found.fit.measured)} points, austenitised at "
         f"{found.austenitize - ZERO_DEGC:.4g} degC for {found.time / 60.0:.4g} min, grain {grain}",
-        f"root mean square deviation {before:.2f} HRC before, {after:.2f} after",
+        *(f"root mean square deviation {text}" for text in deviations(found)),
         *(f"held: {reason}" for reason in found.fit.held),
     )
     try:

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from midradius.thermo.calibration import Shifts
 
 LARGEST = 100_000  # bytes
+LONGEST_TEXT = 600  # characters: names or digests of a few files
 FORMAT = 1
 OWN_COMPOSITION = "own composition"  # of a case: a composition without a name
 # Key of the file, attribute of `Shifts`, least and most: the bounds of the fit
@@ -33,11 +34,32 @@ _REMEDY = "`midradius calibrate STEEL --measured curve.csv --save heat.toml` wri
 
 
 @dataclass(frozen=True)
+class CalibratedSoak:
+    """How the measured heat was austenitised: temperature, time at heat, what that left."""
+
+    austenitize_degC: float
+    soak_time_s: float
+    grain_astm: float
+    carbon_in_solution_pct: float
+
+
+SOAK_KEYS: Mapping[str, tuple[float, float]] = {
+    "austenitize_degC": (500.0, 1400.0),
+    "soak_time_s": (0.0, 1e7),
+    "grain_astm": (-3.0, 14.0),
+    "carbon_in_solution_pct": (0.0, 2.2),
+}
+# How far apart two soaks leave one heat's transformation alike (estimates)
+SOAK_APART_K, GRAIN_APART, CARBON_APART_PCT = 30.0, 1.0, 0.05
+
+
+@dataclass(frozen=True)
 class HeatCalibration:
     """What a calibration file says.
 
     ``error`` has the order of :data:`KEYS`: relative for the factors, K, HV; None for a
-    shift that was held. ``measured`` is the name of the curve's file.
+    shift that was held. ``measured`` names the files of the measurement. ``soak`` is None in
+    files of earlier versions.
     """
 
     path: Path
@@ -48,6 +70,7 @@ class HeatCalibration:
     measured: str
     measured_sha256: str
     program: str
+    soak: CalibratedSoak | None = None
 
     @property
     def text(self) -> str:
@@ -121,7 +144,7 @@ def read_calibration(path: Path) -> HeatCalibration:
         raise _fault("calibration.format", head.get("format"), f"{FORMAT}", _REMEDY)
     texts = {key: head.get(key) for key in TEXTS}
     for key, text in texts.items():
-        if not isinstance(text, str) or not (text.isprintable() and 1 <= len(text) <= 255):
+        if not isinstance(text, str) or not (text.isprintable() and 1 <= len(text) <= LONGEST_TEXT):
             raise _fault(f"calibration.{key}", text, "a text of one line")
     amounts = _table(head, "composition", "calibration.")
     for element, amount in amounts.items():
@@ -147,8 +170,40 @@ def read_calibration(path: Path) -> HeatCalibration:
         composition=Composition(**{key: float(str(amount)) for key, amount in amounts.items()}),
         shifts=Shifts(**values),
         error=tuple(widths),
+        soak=_soak(data),
         **{key: str(text) for key, text in texts.items()},
     )
+
+
+def _soak(data: Mapping[str, object]) -> CalibratedSoak | None:
+    if "soak" not in data:
+        return None
+    table = _table(data, "soak")
+    for key in table:
+        if key not in SOAK_KEYS:
+            raise _fault("soak", key, f"one of {', '.join(SOAK_KEYS)}")
+    return CalibratedSoak(
+        **{
+            key: _number(f"soak.{key}", table.get(key), *within)
+            for key, within in SOAK_KEYS.items()
+        }
+    )
+
+
+def soak_differences(calibration: HeatCalibration, other: CalibratedSoak) -> tuple[str, ...]:
+    """In words, where another soak is too far from that of the calibration to share it."""
+    own = calibration.soak
+    if own is None:
+        return ()
+    found = []
+    if abs(own.austenitize_degC - other.austenitize_degC) > SOAK_APART_K:
+        found.append(f"soak {other.austenitize_degC:.0f} degC, not {own.austenitize_degC:.0f}")
+    if abs(own.grain_astm - other.grain_astm) > GRAIN_APART:
+        found.append(f"grain ASTM {other.grain_astm:.1f}, not {own.grain_astm:.1f}")
+    if abs(own.carbon_in_solution_pct - other.carbon_in_solution_pct) > CARBON_APART_PCT:
+        theirs, ours = other.carbon_in_solution_pct, own.carbon_in_solution_pct
+        found.append(f"{theirs:.2f} % C in solution, not {ours:.2f}")
+    return tuple(found)
 
 
 def dumps(calibration: HeatCalibration, remarks: tuple[str, ...] = ()) -> str:
@@ -166,6 +221,10 @@ def dumps(calibration: HeatCalibration, remarks: tuple[str, ...] = ()) -> str:
     for key, error in zip(KEYS, calibration.error, strict=True):
         if error is not None:
             lines.append(f"{key} = {float(error)!r}")
+    if calibration.soak is not None:
+        lines += ["", "# How the measured heat was austenitised, and what that left.", "[soak]"]
+        soak = calibration.soak
+        lines += [f"{key} = {float(getattr(soak, key))!r}" for key in SOAK_KEYS]
     return "\n".join(lines) + "\n"
 
 

@@ -1,4 +1,4 @@
-"""``midradius calibrate``: fit a heat to its measured end-quench curve."""
+"""``midradius calibrate``: fit a heat to its measured end-quench curve or diagram."""
 
 import json
 import logging
@@ -11,27 +11,38 @@ from midradius.study.cli_answer import answered, printable
 
 if TYPE_CHECKING:
     from midradius.study.calibrate import Fitted
+    from midradius.study.curvefit import CurveFit
 
 _EPILOG = """\b
 Examples:
   midradius calibrate 42CrMo4 --measured curve.csv
   midradius calibrate heat.toml --measured curve.csv --save heat-4711.toml
   midradius calibrate 4140 --measured curve.csv --grain "ASTM 8" --out heat-4711
+  midradius calibrate 4140 --measured curve.csv --measured holds.csv --save heat-4711.toml
 
 \b
-The curve is CSV with a head: distance_mm (or distance_sixteenths_in for J positions)
-and hardness_hrc. A case uses what was saved with calibration = "heat-4711.toml" in its
-[steel] table. The folder holds calibration.csv, calibration.png and calibration.json.
+A file is CSV with a head. End-quench curve: distance_mm (or distance_sixteenths_in for J
+positions) and hardness_hrc. Holds: temperature_degC, time_s, product, fraction. Cooling:
+rate_K_per_s (or time_800_500_s) with temperature_degC, product, fraction, or with the
+final hardness_HV. Product: ferrite, pearlite, bainite, martensite, all; fraction: start,
+half, finish or percent. All files are of one heat, austenitised in one way.
+
+\b
+A case uses what was saved with calibration = "heat-4711.toml" in its [steel] table,
+endquench and diagram with --calibration heat-4711.toml. The folder holds tables,
+pictures and calibration.json.
 """
 
 
-@click.command(epilog=_EPILOG, short_help="Fit a heat to its measured end-quench curve.")
+@click.command(epilog=_EPILOG, short_help="Fit a heat to its measured end-quench curve or diagram.")
 @click.argument("steel", metavar="GRADE_OR_FILE")
 @click.option(
     "--measured",
+    "files",
     required=True,
+    multiple=True,
     type=click.Path(path_type=Path),
-    help="The measured curve, CSV.",
+    help="A measured curve or diagram, CSV; up to four.",
 )
 @click.option("--austenitize", metavar="TEMP", help='Such as "850 degC". Default: by the steel.')
 @click.option("--time", "soak_time", default="30 min", show_default=True, help="Time at heat.")
@@ -39,13 +50,13 @@ and hardness_hrc. A case uses what was saved with calibration = "heat-4711.toml"
     "--grain", help='"ASTM 7", or "soak" for the grain it grows. Default: the file\'s, or ASTM 7.'
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
-@click.option("--scatter", default="1 HRC", show_default=True, help="Of one measured point.")
+@click.option("--scatter", default="1 HRC", show_default=True, help="Of one point of the curve.")
 @click.option("--save", type=click.Path(path_type=Path), help="Write the calibration, TOML.")
 @click.option("--out", "folder", type=click.Path(path_type=Path), help="Write files there.")
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON document, nothing else.")
 def calibrate(
     steel: str,
-    measured: Path,
+    files: tuple[Path, ...],
     austenitize: str | None,
     soak_time: str,
     grain: str | None,
@@ -55,23 +66,23 @@ def calibrate(
     folder: Path | None,
     as_json: bool,
 ) -> None:
-    """Fit named shifts of a heat to its measured end-quench curve.
+    """Fit named shifts of a heat to its measured end-quench curve or diagram.
 
     Factors on the times of ferrite with pearlite and of bainite, offsets of the
-    martensite start and of hardness, each with its standard error. What the curve
+    martensite start and of hardness, each with its standard error. What the data
     cannot tell is held at none.
     """
     with answered():
         from midradius.study import steelgiven
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
-        from midradius.study.measuredcurve import read_curve
+        from midradius.study.measured import read_measured
 
         named = steelgiven.given(steel, heat=heat)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         assert time is not None, "it has a default"
         spread = _rockwell(scatter)
-        curve = read_curve(measured)
+        measured = read_measured(files)
         if save is not None:
             _check_target(save)
 
@@ -87,7 +98,7 @@ def calibrate(
         logging.getLogger("matplotlib").setLevel(logging.ERROR)
 
         def found() -> "Fitted":
-            return fit.fitted(named, curve, temp=temp, time=time, scatter=spread)
+            return fit.fitted(named, measured, temp=temp, time=time, scatter=spread)
 
         if folder is None:
             heat_fit = found()
@@ -141,14 +152,23 @@ def _check_target(path: Path) -> None:
             raise InputFault("--save", f'"{path}"', allowed, remedy) from None
 
 
-def _table(fit: "Fitted") -> list[str]:
+def _table(found: "Fitted") -> list[str]:
+    from midradius.study.calibratepoints import table_lines
+
+    lines = [] if found.curve is None else _curve_lines(found.curve)
+    if found.diagrams:
+        lines += [*([""] if lines else []), *table_lines(found.diagrams)]
+    return lines
+
+
+def _curve_lines(curve: "CurveFit") -> list[str]:
     lines = ["    mm  1/16 in   measured    before     after   HRC"]
     rows = zip(
-        fit.curve.distance_mm,
-        fit.curve.hardness_hrc,
-        fit.before_hrc,
-        fit.after_hrc,
-        fit.used,
+        curve.measured.distance_mm,
+        curve.measured.hardness_hrc,
+        curve.before_hrc,
+        curve.after_hrc,
+        curve.used,
         strict=True,
     )
     for z, measured, before, after, used in rows:

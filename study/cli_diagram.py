@@ -10,6 +10,7 @@ import click
 from midradius.study.cli_answer import answered, printable
 
 if TYPE_CHECKING:
+    from midradius.study.case import SteelInput
     from midradius.study.diagram import Cooling, Isothermal, Soaked
     from midradius.study.sectioncurves import SectionCurves
 
@@ -44,6 +45,11 @@ The folder holds a table and a picture, named after the kind of diagram.
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
 @click.option(
+    "--calibration",
+    type=click.Path(path_type=Path),
+    help="What midradius calibrate saved for this heat, TOML.",
+)
+@click.option(
     "--out", "folder", type=click.Path(path_type=Path), help="Default: named by steel and kind."
 )
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON document, nothing else.")
@@ -55,6 +61,7 @@ def diagram(
     soak_time: str | None,
     grain: str | None,
     heat: str,
+    calibration: Path | None,
     folder: Path | None,
     as_json: bool,
 ) -> None:
@@ -67,7 +74,7 @@ def diagram(
         from midradius.study import steelgiven
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
 
-        named = steelgiven.given(steel, heat=heat)
+        named = steelgiven.calibrated(steelgiven.given(steel, heat=heat), calibration)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         asked_grain = None if grain is None else (steelgiven.grain_of(grain),)
@@ -106,7 +113,7 @@ def diagram(
                 else:
                     figure = cooling_picture(metal, found, curves)
                 write_picture(work / f"{kind}.png", figure)
-        notes = _notes(metal, curves, kind)
+        notes = [*_of_calibration(named, metal), *_notes(metal, curves, kind)]
     if as_json:
         click.echo(json.dumps(_document(metal, found, notes), indent=1, allow_nan=False))
         return
@@ -131,6 +138,21 @@ def _notes(metal: "Soaked", curves: "SectionCurves | None", kind: str) -> list[s
     if curves is not None and curves.composition_pct != own:
         notes.append(f"the section's curves are those of {curves.steel}, another composition")
     return notes
+
+
+def _of_calibration(named: "SteelInput", metal: "Soaked") -> list[str]:
+    if named.calibration is None:
+        return []
+    from midradius.study.basis import calibration_notes
+    from midradius.study.calibrationfile import CalibratedSoak
+    from midradius.study.diagram import ZERO_DEGC
+
+    left = metal.austenite
+    soak = CalibratedSoak(
+        metal.soak_temp - ZERO_DEGC, metal.soak_time, left.grain_astm, left.carbon_pct
+    )
+    apart = calibration_notes(named, soak)
+    return [named.calibration.text, *(str(note) for note in apart)]
 
 
 def _document(metal: "Soaked", found: "Isothermal | Cooling", notes: list[str]) -> dict[str, Any]:

@@ -35,6 +35,11 @@ The folder holds end-quench.csv, end-quench.png and end-quench.json.
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
 @click.option(
+    "--calibration",
+    type=click.Path(path_type=Path),
+    help="What midradius calibrate saved for this heat, TOML.",
+)
+@click.option(
     "--section",
     type=click.Path(path_type=Path),
     help="A result folder: also say which distance cools like its positions.",
@@ -47,6 +52,7 @@ def endquench(
     soak_time: str,
     grain: str | None,
     heat: str,
+    calibration: Path | None,
     section: Path | None,
     folder: Path | None,
     as_json: bool,
@@ -60,7 +66,7 @@ def endquench(
         from midradius.study import steelgiven
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
 
-        named = steelgiven.given(steel, heat=heat)
+        named = steelgiven.calibrated(steelgiven.given(steel, heat=heat), calibration)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         assert time is not None, "it has a default"
@@ -126,6 +132,7 @@ def _head(test: "EndQuench") -> list[str]:
         f"End-quench test of {printable(test.steel.name)} ({mass} % by mass)",
         f"austenitised at {test.austenitize - ZERO_DEGC:.0f} degC ({test.reason})",
         f"soak: {test.result.soak}",
+        *(printable(line) for line in test.result.assumptions if line.startswith("calibration ")),
     ]
 
 

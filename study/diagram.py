@@ -35,6 +35,7 @@ from midradius.thermo.kinetics import Tables, advance_node
 from midradius.thermo.phases import PHASE_NAMES
 from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Steel, range_notes
+from midradius.thermo.walk import walk
 
 ZERO_DEGC = 273.15
 PRODUCTS = ("ferrite", "cementite", "pearlite", "bainite", "martensite")  # as the states hold them
@@ -151,12 +152,12 @@ def isothermal(metal: Soaked) -> Isothermal:
     total = np.full((3, count), np.nan)
     reached = np.zeros((len(PHASE_NAMES), count))
     for i, hold in enumerate(temp):
-        grown, state = _held(metal, float(hold), time)
+        grown, state = held(metal, float(hold), time)
         for k, name in enumerate(DIFFUSIONAL):
             times[name][:, i] = _crossings(np.log(time), grown[:, k], settled=True)
-        gone = grown.sum(axis=1) / _austenite_before(metal)
+        gone = grown.sum(axis=1) / austenite_before(metal)
         total[:, i] = np.exp(
-            [_crossing(np.log(time), gone, level) for level in (START, MIDDLE, END)]
+            [crossing(np.log(time), gone, level) for level in (START, MIDDLE, END)]
         )
         reached[:, i] = fractions(state)[:, 0]
     return Isothermal(temp, {k: np.exp(v) for k, v in times.items()}, total, reached)
@@ -166,7 +167,7 @@ def cooling(metal: Soaked) -> Cooling:
     """The diagram of continuous cooling."""
     decades = np.log10(FASTEST_RATE / SLOWEST_RATE)
     rate = np.geomspace(FASTEST_RATE, SLOWEST_RATE, int(round(RATES_PER_DECADE * decades)) + 1)
-    ends = [_cooled(metal, float(one)) for one in rate]
+    ends = [cooled(metal, float(one)) for one in rate]
     temps = {
         name: np.array([_cooling_crossings(temp, grown[:, k]) for temp, grown, _ in ends]).T
         for k, name in enumerate(PRODUCTS)
@@ -177,7 +178,7 @@ def cooling(metal: Soaked) -> Cooling:
         rate=rate,
         temps=temps,
         phases=phases,
-        hardness_hv=_hardness(metal, rate, states, phases),
+        hardness_hv=hardness_of(metal, rate, states, phases),
         critical=_critical(rate, phases, metal),
     )
 
@@ -186,45 +187,41 @@ def _start(metal: Soaked) -> Array:
     return initial_state(metal.austenite, metal.steel.composition.C, metal.soak_temp, 1)
 
 
-def _austenite_before(metal: Soaked) -> float:
+def austenite_before(metal: Soaked) -> float:
     return 1.0 - metal.austenite.ferrite - metal.austenite.cementite
 
 
-def _held(metal: Soaked, hold: float, time: Array) -> tuple[Array, Array]:
+def held(metal: Soaked, hold: float, time: Array) -> tuple[Array, Array]:
     """What each diffusional product has grown to at each time, (n_time, 4), and the state."""
     state = _start(metal)
     scale = np.ones(kin.N_SCALE)
     before = state[0, :4].copy()
     advance_node(state[0], metal.soak_temp, hold, 0.0, scale, metal.tables)
-    grown = np.empty((len(time), 4))
-    for i, span in enumerate(np.diff(time, prepend=0.0)):
-        advance_node(state[0], hold, hold, span, scale, metal.tables)
-        grown[i] = state[0, :4] - before
-    return grown, state
+    grown = np.empty((len(time) + 1, 4))
+    temps = np.full(len(grown), hold)
+    walk(state[0], temps, np.diff(time, prepend=0.0), scale, metal.tables, grown)
+    return grown[1:] - before, state
 
 
-def _cooled(metal: Soaked, rate: float) -> tuple[Array, Array, Array]:
+def cooled(metal: Soaked, rate: float) -> tuple[Array, Array, Array]:
     """Temperatures, what each product has grown to at them, (n_temp, 5), and the state."""
     temp = np.linspace(metal.top, ROOM, int((metal.top - ROOM) / COOL_K) + 1)
     state = _start(metal)
     scale = np.ones(kin.N_SCALE)
     before = state[0, :5].copy()
     advance_node(state[0], metal.soak_temp, metal.top, 0.0, scale, metal.tables)
-    grown = np.zeros((len(temp), 5))
-    for i in range(1, len(temp)):
-        span = (temp[i - 1] - temp[i]) / rate
-        advance_node(state[0], temp[i - 1], temp[i], span, scale, metal.tables)
-        grown[i] = state[0, :5] - before
-    return temp, grown, state
+    grown = np.empty((len(temp), 5))
+    walk(state[0], temp, -np.diff(temp) / rate, scale, metal.tables, grown)
+    return temp, grown - before, state
 
 
 def _crossings(at: Array, grown: Array, *, settled: bool) -> list[float]:
     """Where a product starts, is half and is done; ``at`` rises."""
     last = float(grown[-1])
-    found = [_crossing(at, grown, START), np.nan, np.nan]
+    found = [crossing(at, grown, START), np.nan, np.nan]
     still = settled and last - grown[-1 - PER_DECADE] > (1.0 - END) * last
     if last >= LEAST and not still:
-        found[1:] = [_crossing(at, grown, level * last) for level in (MIDDLE, END)]
+        found[1:] = [crossing(at, grown, level * last) for level in (MIDDLE, END)]
     return found
 
 
@@ -232,7 +229,7 @@ def _cooling_crossings(temp: Array, grown: Array) -> list[float]:
     return [-value for value in _crossings(-temp, grown, settled=False)]
 
 
-def _crossing(at: Array, grown: Array, level: float) -> float:
+def crossing(at: Array, grown: Array, level: float) -> float:
     """Where ``grown`` first reaches ``level``, straight between two points; nan if never."""
     above = np.flatnonzero(grown >= level)
     if not above.size:
@@ -244,7 +241,7 @@ def _crossing(at: Array, grown: Array, level: float) -> float:
     return float(at[i - 1] + share * (at[i] - at[i - 1]))
 
 
-def _hardness(metal: Soaked, rate: Array, states: Array, phases: Array) -> Array:
+def hardness_of(metal: Soaked, rate: Array, states: Array, phases: Array) -> Array:
     carbon = metal.steel.composition.C
     hard, pearlite = states[:, kin.MARTENSITE], states[:, kin.PEARLITE]
     some, formed = hard > 1e-6, pearlite > 1e-6
@@ -284,4 +281,4 @@ def _critical(rate: Array, phases: Array, metal: Soaked) -> dict[str, float]:
 
 def _appears(log: Array, share: Array) -> float:
     """Where ``share`` first reaches 1 %; nan if it starts above, or never does."""
-    return float("nan") if share[0] >= START else _crossing(log, share, START)
+    return float("nan") if share[0] >= START else crossing(log, share, START)

@@ -2,9 +2,11 @@
 
 import re
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 
 from midradius.study import casekeys as keys
+from midradius.study.calibrationfile import read_calibration, refuse_other_steel
 from midradius.study.case import SteelInput
 from midradius.study.caseblocks import steel_input
 from midradius.study.casefaults import Notebook
@@ -45,6 +47,21 @@ def given(text: str, *, heat: str = "") -> SteelInput:
         if found is not None:
             return found
     return _from_certificate(path, heat)
+
+
+def calibrated(steel: SteelInput, file: Path | None) -> SteelInput:
+    """The steel with the shifts of a calibration file; itself without one.
+
+    Raises
+    ------
+    InputFault
+        No calibration, or one of another steel.
+    """
+    if file is None:
+        return steel
+    found = read_calibration(file)
+    refuse_other_steel(found, steel.steel)
+    return replace(steel, shifts=found.shifts, calibration=found)
 
 
 def _from_case(path: Path) -> SteelInput | None:

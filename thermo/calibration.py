@@ -6,7 +6,9 @@ Four shifts with a physical name: a factor on the times of ferrite and pearlite,
 one on the times of bainite, an offset of the martensite start, an offset of
 hardness. A measured curve is fitted by bounded least squares; the standard errors
 follow from the Jacobian and the scatter that is left (or from the scatter of the
-measurement where that is larger). A shift that the data cannot tell is not fitted:
+measurement where that is larger). Every fit starts anew from several places, so that no
+local minimum decides which shift is held; other minima that fit nearly as well are
+named. A shift that the data cannot tell is not fitted:
 its error would exceed half its bounds, or two shifts are correlated beyond 0.98.
 
 Source
@@ -22,6 +24,7 @@ heat says nothing about another heat of the same grade.
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
+from typing import Protocol
 
 import numpy as np
 
@@ -40,6 +43,9 @@ _UPPER = -_LOWER
 _SCALE = np.array([0.5, 0.5, 15.0, 15.0])
 WORST_ERROR = 0.5  # of the half width of the bounds
 WORST_CORRELATION = 0.98
+START = 0.6  # of its bound, where a restart begins
+SAME = 0.5  # counting steps within which two minima are one
+RIVAL = 4.0  # chi squared by which a minimum may be worse and still count [two sigma]
 MOST_ALIKE = 1e8  # condition number beyond which shifts act as one
 
 
@@ -67,7 +73,8 @@ class Calibration:
     ``error`` has the order of :data:`NAMES` (factors: relative error), nan for a
     shift that was held; ``before``, ``after`` and ``measured`` (n_point,) in the
     unit of the measurement; ``held`` names the shifts the data could not tell,
-    with the reason.
+    with the reason. ``scatter`` (n_point,) is that of one measured point. ``rivals`` are
+    other minima that fit nearly as well (two standard deviations): the data do not choose.
     """
 
     shifts: Shifts
@@ -76,11 +83,12 @@ class Calibration:
     measured: Array
     before: Array
     after: Array
-    scatter: float
+    scatter: Array
+    rivals: tuple[Shifts, ...] = ()
 
     @property
     def root_mean_square(self) -> tuple[float, float]:
-        """Root mean square deviation before and after."""
+        """Root mean square deviation before and after, of points in one unit."""
         return (
             float(np.sqrt(np.mean((self.before - self.measured) ** 2))),
             float(np.sqrt(np.mean((self.after - self.measured) ** 2))),
@@ -91,7 +99,7 @@ def calibrate(
     curve: Callable[[Shifts], Array],
     measured: Array,
     *,
-    scatter: float,
+    scatter: float | Array,
     free: Sequence[str] = NAMES,
 ) -> Calibration:
     """Fit shifts so that a computed curve meets a measured one.
@@ -103,7 +111,7 @@ def calibrate(
     measured
         The measurement, shape (n_point,).
     scatter
-        Standard deviation of one measured point, in its unit.
+        Standard deviation of one measured point, in its unit; one, or (n_point,).
     free
         Which shifts may move, of :data:`NAMES`.
 
@@ -113,13 +121,12 @@ def calibrate(
         Fewer points than shifts plus one, a point that is not a number, or no
         shift that the data can tell.
     """
-    from scipy.optimize import least_squares
-
     measured = np.asarray(measured, dtype=np.float64)
     _check(measured, scatter, free)
     moving = [name in free for name in NAMES]
     held = [f"{name}: not asked for" for name in NAMES if name not in free]
     before = np.asarray(curve(NONE), dtype=np.float64)
+    last = np.zeros(len(NAMES))
     while True:
         which: IntArray = np.flatnonzero(moving).astype(np.int64)
         if len(which) == 0:
@@ -133,18 +140,8 @@ def calibrate(
         def residual(x: Array, which: IntArray = which) -> Array:
             return np.asarray((curve(_shifts(x, which)) - measured) / scatter)
 
-        fit = least_squares(
-            residual,
-            np.zeros(len(which)),
-            bounds=(_LOWER[which], _UPPER[which]),
-            x_scale=_SCALE[which],
-            # Curves come out of a time stepper: differences over a counting step, not over
-            # the square root of rounding.
-            diff_step=1e-2 * np.ones(len(which)),
-            xtol=1e-4,
-            ftol=1e-6,
-            max_nfev=40,
-        )
+        found = _minima(residual, which, last)
+        fit, last = found[0], _spread(found[0].x, which)
         jacobian = _jacobian(residual, fit.x, _SCALE[which])
         left = max(1.0, float(np.sum(fit.fun**2)) / max(len(measured) - len(which), 1))
         error, worst, why = _errors(jacobian, left, which)
@@ -162,13 +159,66 @@ def calibrate(
         measured=measured,
         before=before,
         after=np.asarray(curve(shifts), dtype=np.float64),
-        scatter=scatter,
+        scatter=np.broadcast_to(scatter, measured.shape),
+        rivals=tuple(
+            _shifts(other.x, which)
+            for other in found[1:]
+            if 2.0 * (other.cost - fit.cost) < RIVAL * left
+        ),
     )
 
 
-def _shifts(x: Array, which: IntArray) -> Shifts:
+class _Minimum(Protocol):
+    """What of a fit of scipy is used."""
+
+    x: Array
+    fun: Array
+    cost: float
+
+
+def _minima(residual: Callable[[Array], Array], which: IntArray, last: Array) -> list[_Minimum]:
+    """The minima that several starts lead to, the deepest first.
+
+    Starts: where the fit before a shift was held ended, at first no shifts; and the best of
+    every shift alone at six tenths of its range to either side.
+    """
+    from scipy.optimize import least_squares
+
+    alone = [sign * START * _UPPER[k] * np.eye(len(NAMES))[k] for k in which for sign in (-1, 1)]
+    best = min(alone, key=lambda x: float(np.sum(residual(x[which]) ** 2)))
+    found: list[_Minimum] = []
+    for start in (last, best):
+        found.append(
+            least_squares(
+                residual,
+                start[which],
+                # Curves come out of a time stepper: differences over a counting step, not
+                # over the square root of rounding.
+                jac=lambda x: _slopes(residual, x, which),
+                bounds=(_LOWER[which], _UPPER[which]),
+                x_scale=_SCALE[which],
+                xtol=1e-4,
+                ftol=1e-6,
+                max_nfev=40,
+            )
+        )
+    found.sort(key=lambda one: one.cost)
+    apart: list[_Minimum] = []
+    for one in found:
+        if all(np.abs((one.x - other.x) / _SCALE[which]).max() > SAME for other in apart):
+            apart.append(one)
+    return apart
+
+
+def _spread(x: Array, which: IntArray) -> Array:
+    """Shifts by :data:`NAMES`, zero for those held."""
     full = np.zeros(len(NAMES))
     full[which] = x
+    return full
+
+
+def _shifts(x: Array, which: IntArray) -> Shifts:
+    full = _spread(x, which)
     return replace(
         NONE,
         diffusional_time=float(np.exp(full[0])),
@@ -176,6 +226,16 @@ def _shifts(x: Array, which: IntArray) -> Shifts:
         martensite_start=float(full[2]),
         hardness=float(full[3]),
     )
+
+
+def _slopes(residual: Callable[[Array], Array], x: Array, which: IntArray) -> Array:
+    """Differences over a tenth of a counting step away from the nearer bound."""
+    here, columns = residual(x), []
+    for k in range(len(x)):
+        step = np.zeros(len(x))
+        step[k] = np.copysign(0.1 * _SCALE[which[k]], -x[k])
+        columns.append((residual(x + step) - here) / step[k])
+    return np.stack(columns, axis=1)
 
 
 def _jacobian(residual: Callable[[Array], Array], x: Array, scale: Array) -> Array:
@@ -216,7 +276,7 @@ def _errors(jacobian: Array, left: float, which: IntArray) -> tuple[Array, int |
     return error, None, ""
 
 
-def _check(measured: Array, scatter: float, free: Sequence[str]) -> None:
+def _check(measured: Array, scatter: float | Array, free: Sequence[str]) -> None:
     unknown = [name for name in free if name not in NAMES]
     if unknown:
         raise InputFault("shift", unknown[0], "one of " + ", ".join(NAMES), "")
@@ -229,5 +289,6 @@ def _check(measured: Array, scatter: float, free: Sequence[str]) -> None:
             f"at least {len(free) + 1} points for {len(free)} shifts",
             "Measure more points or free fewer shifts.",
         )
-    if not (np.isfinite(scatter) and scatter > 0.0):
-        raise InputFault("scatter", f"{scatter:g}", "more than 0", "Rockwell C repeats to 1 HRC.")
+    if not (np.isfinite(scatter) & (np.asarray(scatter) > 0.0)).all():
+        least = float(np.min(scatter))
+        raise InputFault("scatter", f"{least:g}", "more than 0", "Rockwell C repeats to 1 HRC.")

@@ -15,7 +15,7 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 
-from midradius.study import calibrate as fit
+from midradius.study import curvefit
 from midradius.study.calibrationfile import HeatCalibration, dumps, read_calibration
 from midradius.study.case import Case, SteelInput
 from midradius.study.casefile import CaseFaults, loads, read
@@ -55,7 +55,7 @@ def formula(case: Case, shifts: Shifts) -> Array:
 
 @pytest.fixture
 def quick(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(fit, "_hardness_hv", formula)
+    monkeypatch.setattr(curvefit, "hardness_hv_of", formula)
 
 
 @pytest.fixture
@@ -116,6 +116,15 @@ def test_the_screen_says_shifts_what_was_held_and_what_was_left_out(call, curve:
     assert [float(row["distance_mm"]) for row in rows] == [*DISTANCES, 60.0]
     for row in rows[:-1]:
         assert_allclose(float(row["after_HRC"]), float(row["measured_HRC"]), rtol=0.0, atol=0.1)
+
+
+def test_a_curve_and_a_diagram_may_stand_together(call, curve: Path) -> None:
+    text = "temperature_degC,time_s,product,fraction\n450,9,bainite,start\n480,9,bainite,start\n"
+    (curve.parent / "holds.csv").write_text(text, encoding="utf-8")
+    answer = call("calibrate", "42CrMo4", "--measured", "curve.csv", "--measured", "holds.csv")
+    assert (answer.code, answer.err) == (0, "")
+    assert "scatter 1 HRC; holds.csv: 2 times of holds" in answer.out
+    assert "HRC before" in answer.out and "times of holds by a factor" in answer.out
 
 
 def test_what_is_saved_is_what_was_fitted_and_a_case_takes_it(
@@ -217,9 +226,9 @@ def test_a_scatter_needs_a_number_and_its_unit(call, curve: Path, scatter: str) 
 
 def test_the_scale_goes_on_where_rockwell_ends() -> None:
     hv = np.array([float(hrc_to_hv(20.0)), 300.0, float(hrc_to_hv(68.0))])
-    assert_allclose(fit._rockwell(hv), hv_to_hrc(hv), rtol=0.0, atol=1e-12)
+    assert_allclose(curvefit._rockwell(hv), hv_to_hrc(hv), rtol=0.0, atol=1e-12)
     slope = 1.0 / (float(hrc_to_hv(21.0)) - float(hrc_to_hv(20.0)))
-    assert_allclose(fit._rockwell(hv[:1] - 30.0), 20.0 - 30.0 * slope, rtol=1e-12, atol=0.0)
+    assert_allclose(curvefit._rockwell(hv[:1] - 30.0), 20.0 - 30.0 * slope, rtol=1e-12, atol=0.0)
 
 
 # The saved calibration and the case that uses it

@@ -81,3 +81,37 @@ def test_a_curve_that_cannot_be_used_is_refused(
 def test_a_curve_that_nothing_moves_is_refused() -> None:
     with pytest.raises(InputFault, match="able to tell at least one shift"):
         calibrate(lambda _: PLACE, PLACE + 1.0, scatter=1.0)
+
+
+def test_a_local_minimum_near_no_shift_does_not_win() -> None:
+    # A screw of 40 HV a turn: its end is met exactly at 40, and from 0 a turn lies between.
+    def screw(shifts: Shifts) -> Array:
+        turn = shifts.hardness / 40.0
+        around = [np.cos(2.0 * np.pi * turn), np.sin(2.0 * np.pi * turn), turn]
+        return np.array(around * 4)
+
+    fit = calibrate(screw, np.array([1.0, 0.0, 1.0] * 4), scatter=0.1, free=("hardness",))
+    assert_allclose(fit.shifts.hardness, 40.0, rtol=0.0, atol=0.05)
+    assert fit.rivals == ()
+
+
+def test_minima_that_fit_alike_are_all_named() -> None:
+    # A circle comes back to its first point after 40 HV, either way round.
+    def alike(shifts: Shifts) -> Array:
+        h = shifts.hardness
+        return np.array([np.cos(2.0 * np.pi * h / 40.0), np.sin(2.0 * np.pi * h / 40.0)] * 6)
+
+    fit = calibrate(alike, np.array([1.0, 0.0] * 6), scatter=0.5, free=("hardness",))
+    assert_allclose(fit.shifts.hardness, 0.0, rtol=0.0, atol=0.1)
+    assert len(fit.rivals) == 1
+    assert_allclose(abs(fit.rivals[0].hardness), 40.0, rtol=0.0, atol=0.2)
+
+
+def test_points_of_two_units_weigh_by_their_scatter() -> None:
+    # Mean of 11 with scatter 4 and 16 with scatter 8 is 12, error 4 / sqrt(1 + 1/4); exact.
+    def flat(shifts: Shifts) -> Array:
+        return np.full(2, shifts.hardness)
+
+    fit = calibrate(flat, np.array([11.0, 16.0]), scatter=np.array([4.0, 8.0]), free=("hardness",))
+    assert_allclose(fit.shifts.hardness, 12.0, rtol=1e-3, atol=0.0)
+    assert_allclose(fit.error[3], 4.0 / np.sqrt(1.25), rtol=1e-6, atol=0.0)
