@@ -32,11 +32,24 @@ class Surface:
     label: str
     film: Film
     ambient: float
+    ambient_after: float | None = None  # K at the end of a piece; None: constant
+
+
+@dataclass(frozen=True)
+class Piece:
+    """A part of a stage, ``duration`` [s] long, with surfaces of its own."""
+
+    duration: float
+    surfaces: Mapping[str, Surface]
 
 
 @dataclass(frozen=True)
 class CoolingStage:
-    """One stage: its kind, the zones' surfaces, its longest time [s], its condition."""
+    """One stage: its kind, the zones' surfaces, its longest time [s], its condition.
+
+    Where the surroundings change, as a bath does under its load, ``pieces`` go first;
+    ``surfaces`` then hold for the rest of the stage.
+    """
 
     kind: str
     label: str
@@ -44,16 +57,22 @@ class CoolingStage:
     duration: float | None
     until_place: str | None = None
     until_temp: float | None = None
+    pieces: tuple[Piece, ...] = ()
 
 
 @dataclass(frozen=True)
 class StageEnd:
-    """How a stage went: times [s], what ended it, heat given off [J per extent]."""
+    """How a stage went: times [s], what ended it, heat given off [J per extent].
+
+    ``moments`` (n,) [s] and ``heat_until`` (n,) [J per extent] at the end of each piece.
+    """
 
     start: float
     end: float
     ended_by: str
     heat_given: float
+    moments: tuple[float, ...] = ()
+    heat_until: tuple[float, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -177,13 +196,7 @@ def cool(
         if stage.until_place is not None and stage.until_temp is not None:
             place = places[stage.until_place]
             until = Until(place.node, place.share, stage.until_temp)
-        ended = run.stage(
-            surroundings(body.zones, stage.surfaces),
-            duration=LONGEST_STAGE if stage.duration is None else stage.duration,
-            tolerance=tolerance,
-            until=until,
-            tell=tell,
-        )
+        ended, moments, given_until = _through(run, body.zones, stage, until, tolerance, tell)
         if ended == "time" and stage.duration is None:
             raise InputFault(
                 f"route[{number}].until",
@@ -192,19 +205,64 @@ def cool(
                 "Give the stage a time, or a temperature that its surroundings allow.",
             )
         given = -(run.progress.zone_heat.sum() - before)
-        ends.append(StageEnd(begun, run.time, ended, float(given)))
+        ends.append(StageEnd(begun, run.time, ended, float(given), moments, given_until))
     return _history(run, tuple(ends), field_times)
 
 
-def surroundings(zones: tuple[str, ...], surfaces: Mapping[str, Surface]) -> Surroundings:
-    """The zones' films on one common temperature axis."""
+def _through(
+    run: Run,
+    zones: tuple[str, ...],
+    stage: CoolingStage,
+    until: Until | None,
+    tolerance: float,
+    tell: Callable[[float], None] | None,
+) -> tuple[str, tuple[float, ...], tuple[float, ...]]:
+    """March one stage, piece by piece; what ended it, and the heat at the end of each."""
+    begun, before = run.time, float(run.progress.zone_heat.sum())
+    last = begun + (LONGEST_STAGE if stage.duration is None else stage.duration)
+    moments: list[float] = []
+    heat: list[float] = []
+    ended, step = "time", None
+    for piece in (*stage.pieces, Piece(np.inf, stage.surfaces)):
+        span = min(piece.duration, last - run.time)
+        if span <= 1e-9 * last:
+            break
+        ended = run.stage(
+            surroundings(zones, piece.surfaces, run.time, span),
+            duration=span,
+            tolerance=tolerance,
+            until=until,
+            first_step=step,
+            tell=tell,
+        )
+        step = max(float(run.progress.clock[march.STEP]), 1e-6)
+        moments.append(run.time)
+        heat.append(before - float(run.progress.zone_heat.sum()))
+        if ended == "limit":
+            break
+    return ended, tuple(moments), tuple(heat)
+
+
+def surroundings(
+    zones: tuple[str, ...],
+    surfaces: Mapping[str, Surface],
+    begin: float = 0.0,
+    span: float = np.inf,
+) -> Surroundings:
+    """The zones' films on one common temperature axis, from ``begin`` on for ``span`` [s]."""
     seen = [surfaces[zone] for zone in zones]
     temp = np.unique(np.concatenate([s.film.temp for s in seen]))
+    if any(s.ambient_after is not None for s in seen) and np.isfinite(span):
+        after = [s.ambient if s.ambient_after is None else s.ambient_after for s in seen]
+        ambient = np.array([[s.ambient, end] for s, end in zip(seen, after, strict=True)])
+        moment = np.array([begin, begin + span])
+    else:
+        ambient, moment = np.array([[s.ambient] for s in seen]), np.zeros(1)
     return Surroundings(
         film_temp=temp,
         film_htc=np.array([s.film.at(temp) for s in seen]),
-        ambient=np.array([[s.ambient] for s in seen]),
-        moment=np.zeros(1),
+        ambient=ambient,
+        moment=moment,
         flux=np.zeros(len(zones)),
     )
 

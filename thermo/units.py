@@ -34,6 +34,10 @@ Kind = Literal[
     "pressure",
     "power",
     "heating rate",
+    "area",
+    "mass flow",
+    "volume flow",
+    "conductance",
 ]
 KINDS: tuple[Kind, ...] = get_args(Kind)
 
@@ -108,6 +112,15 @@ UNITS: dict[Kind, dict[str, _Unit]] = {
         "hp": ("745.6998715822702", "0"),
     },
     "heating rate": {"K/h": ("1/3600", "0"), "K/min": ("1/60", "0"), "K/s": ("1", "0")},
+    "area": {"m2": ("1", "0"), "cm2": ("0.0001", "0"), "ft2": ("0.09290304", "0")},
+    "mass flow": {"kg/s": ("1", "0"), "kg/min": ("1/60", "0"), "kg/h": ("1/3600", "0")},
+    "volume flow": {
+        "m3/s": ("1", "0"),
+        "m3/h": ("1/3600", "0"),
+        "l/s": ("0.001", "0"),
+        "l/min": ("0.001/60", "0"),
+    },
+    "conductance": {"W/K": ("1", "0"), "kW/K": ("1000", "0")},
 }
 _EXAMPLE: dict[Kind, str] = {
     "length": "300 mm",
@@ -121,6 +134,10 @@ _EXAMPLE: dict[Kind, str] = {
     "pressure": "10 bar",
     "power": "250 kW",
     "heating rate": "100 K/h",
+    "area": "4 m2",
+    "mass flow": "5 kg/s",
+    "volume flow": "30 m3/h",
+    "conductance": "4 kW/K",
 }
 # Ways of writing that people use and that are not in the list: what to write.
 _MEANT: dict[Kind, dict[str, str]] = {
@@ -165,7 +182,7 @@ def parse(text: object, kind: Kind) -> float:
     Returns
     -------
     float
-        m, K, s, W/(m2 K), kg, m3, m/s, Pa or W. May be negative; a temperature
+        m, K, s, W/(m2 K), kg, m3, m/s, Pa, W, m2, kg/s, m3/s or W/K. May be negative; a temperature
         is never below absolute zero.
 
     Raises
