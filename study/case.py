@@ -18,6 +18,7 @@ from midradius.thermo.units import parse
 
 from .calibrationfile import HeatCalibration
 from .steelfile import FileSteel
+from .tankinput import LoadInput, ShiftInput, TankInput
 
 if TYPE_CHECKING:
     from midradius.thermo.calibration import Shifts
@@ -223,6 +224,9 @@ class Asked:
     route: tuple[Stage, ...]
     outputs: Outputs
     needs: tuple[Need, ...] = ()
+    load: LoadInput | None = None
+    tank: TankInput | None = None
+    shift: tuple[ShiftInput, ...] = ()
     text: str = field(default="", compare=False, repr=False)
     path: Path | None = field(default=None, compare=False)
 

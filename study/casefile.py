@@ -17,6 +17,7 @@ from .caseneed import needs
 from .caseoutput import outputs
 from .caseroute import route, soak_and_tempers
 from .casetable import Table, is_line
+from .casetank import tank_blocks
 from .casewrite import dumps
 from .seriescase import SeriesCase, temperatures
 from .seriesplaces import needs_at, places
@@ -94,10 +95,7 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
     folder = path.parent if path else Path()
     notes = Notebook(name, folder, lambda: locate(text))
     top = Table(data, (), notes)
-    for later, why in keys.LATER.items():
-        if top.has(later):
-            top.refuse(later, f"{later} is part of the format, but not yet answered", why)
-    top.only(keys.TOP, silent=tuple(keys.LATER))
+    top.only(keys.TOP)
     title = top.text("title", keys.LONGEST_TITLE)
     title = title or (path.stem if path and is_line(path.stem) else "untitled")
     if not top.has("steel"):
@@ -114,6 +112,7 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
     stages = route(top, steel, section, wanted)
     asked = needs(top, section, wanted)
     cells = grid(top.table("grid", "[grid]"), section)
+    load, tank, shift = tank_blocks(top, section, stages)
     notes.close()
     if steel is None or section is None:  # cannot be: each None has its note
         raise AssertionError("a block is missing without a fault")
@@ -125,6 +124,9 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
         outputs=wanted,
         grid=cells,
         needs=asked,
+        load=load,
+        tank=tank,
+        shift=shift,
         text=text,
         path=path,
     )

@@ -7,16 +7,16 @@ they cannot differ.
 from collections.abc import Mapping
 
 from midradius.thermo.phases import PHASE_NAMES
+from midradius.thermo.units import Kind
 
 from .case import Form, StageKind
 
 ZERO_DEGC = 273.15
 
-TOP = ("title", "steel", "section", "temperatures", "route", "need", "output", "grid")
-LATER: Mapping[str, str] = {
-    "load": "The heat of a whole load is not computed by this version: take the table out.",
-    "tank": "A tank and its cooler are not computed by this version: take the table out.",
-}
+TOP = (
+    *("title", "steel", "section", "temperatures", "route", "need", "output", "grid"),
+    *("load", "tank", "shift"),
+)
 STEEL = ("grade", "composition", "file", "heat", "name", "austenite_grain", "calibration")
 STEEL_FROM = ("grade", "composition", "file")
 DIMENSIONS: Mapping[Form, tuple[str, ...]] = {
@@ -92,3 +92,49 @@ NEED_WHY: Mapping[str, str] = {
     "ksi": "Strength follows from hardness between these ends only.",
 }
 LENGTHS: Mapping[str, float] = {"mm": 1e-3, "in": 0.0254}
+
+DAY = 86_400.0
+LOAD = ("pieces", "length", "piece_mass", "fixture")
+FIXTURE = ("name", "mass", "thickness", "grade")
+COOLER = (
+    *("power", "conductance", "bath_flow", "coolant", "coolant_flow", "coolant_in"),
+    *("arrangement", "start"),
+)
+COOLANTS = ("water", "air")
+ARRANGEMENTS = ("counterflow", "parallel", "crossflow")
+SHIFT = ("at", "every", "count", "case", "mass", "from", "thickness", "time")
+PIECES_RANGE = (1, 100_000)
+PIECE_LENGTH_RANGE = (1e-3, 50.0)
+MASS_RANGE = (1e-3, 1e6)
+THICKNESS_RANGE = (0.5e-3, 0.5)
+FIXTURES_MOST = 20
+LOADS_MOST = 200
+POWER_RANGE = (1.0, 1e8)
+CONDUCTANCE_RANGE = (1.0, 1e7)
+FLOW_RANGE = (1e-3, 1e4)
+BATH_RANGE = (ZERO_DEGC - 20.0, ZERO_DEGC + 550.0)
+COOLANT_RANGE = (ZERO_DEGC - 20.0, ZERO_DEGC + 90.0)
+# The quantities of [tank], by name: kind and range.
+TANK_QUANTITIES: Mapping[str, tuple[Kind, tuple[float, float]]] = {
+    "volume": ("volume", (0.01, 10_000.0)),
+    "length": ("length", (0.1, 100.0)),
+    "width": ("length", (0.1, 100.0)),
+    "depth": ("length", (0.1, 30.0)),
+    "filled_at": ("temperature", BATH_RANGE),
+    "flash_point": ("temperature", (ZERO_DEGC + 50.0, ZERO_DEGC + 400.0)),
+    "bath_limit": ("temperature", BATH_RANGE),
+    "rise_limit": ("temperature difference", (0.5, 300.0)),
+    "ready_at": ("temperature", BATH_RANGE),
+    "freeboard": ("length", (0.0, 3.0)),
+    "morning": ("temperature", BATH_RANGE),
+    "heater": ("power", POWER_RANGE),
+    "heater_set": ("temperature", BATH_RANGE),
+    "agitator": ("power", POWER_RANGE),
+    "flow": ("volume flow", (1e-5, 100.0)),
+    "velocity": ("velocity", (0.01, 10.0)),
+    "passage": ("area", (1e-3, 1000.0)),
+    "air": ("temperature", (ZERO_DEGC - 20.0, ZERO_DEGC + 60.0)),
+    "drag_out": ("volume", (0.0, 100.0)),
+    "period": ("duration", (3600.0, 7.0 * DAY)),
+}
+TANK = (*TANK_QUANTITIES, "fluid_file", "cooler", "layers", "lid", "coupled")
