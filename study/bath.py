@@ -120,19 +120,26 @@ def shares(n_layer: int) -> Array:
     return np.full(n_layer, 1.0 / n_layer)
 
 
-def times_of(tank: Tank, loads: Sequence[Immersion], end: float, *, smallest_volume: float) -> Array:
-    """Moments [s] of a march: dense after each immersion, never wider than a minute."""
-    longest = LONGEST_STEP
+def times_of(
+    tank: Tank,
+    loads: Sequence[Immersion],
+    end: float,
+    *,
+    smallest_volume: float,
+    longest: float = LONGEST_STEP,
+) -> Array:
+    """Moments [s] of a march: dense after each immersion, never wider than ``longest``."""
     if tank.n_layer > 1:
         flow = tank.mixing + (tank.cooler.bath_flow if tank.cooler else 0.0)
         least = tank.fill_mass * smallest_volume * float(shares(tank.n_layer).min())
         longest = min(longest, 0.4 * least / max(flow, 1e-9))
-    moments = [np.arange(0.0, end, longest), np.array([end])]
+    moments = [np.arange(0.0, end, longest)]
     for load in loads:
         near = np.concatenate([[0.0], np.geomspace(0.5, max(load.stay, 1.0), 60)])
         moments.append(load.time + near)
     found = np.unique(np.round(np.concatenate(moments), 6))
-    return found[found <= end]
+    # The end itself, exactly: a rounded one would leave out the last of the heat.
+    return np.append(found[found < end - 1e-5], end)
 
 
 def march(
@@ -144,6 +151,7 @@ def march(
     volume: Array | None = None,
     cooling: Array | None = None,
     cooler_fails_at: float = np.inf,
+    longest: float = LONGEST_STEP,
 ) -> BathRun:
     """March baths from 0 to ``end`` [s].
 
@@ -157,6 +165,8 @@ def march(
         Factors on the tank's mass and area, and on its cooler, (n_bath,); 1 by default.
     cooler_fails_at
         From then on no cooler [s].
+    longest
+        Longest step [s].
     """
     start = np.asarray(start, dtype=np.float64)
     if start.ndim == 1:
@@ -166,7 +176,7 @@ def march(
     cooling = np.ones(n_bath) if cooling is None else np.asarray(cooling, dtype=np.float64)
     mass = tank.fill_mass * volume[:, None] * shares(tank.n_layer)[None, :]
     rates = _Rates(tank, mass, volume, cooling)
-    time = times_of(tank, loads, end, smallest_volume=float(volume.min()))
+    time = times_of(tank, loads, end, smallest_volume=float(volume.min()), longest=longest)
     layer = load_layer(tank.n_layer)
     content = mass * tank.fluid.enthalpy(start)
     first = content.sum(axis=1)
@@ -274,7 +284,7 @@ class _Rates:
         fixed = content + source + span * self.between(temp, on)
         known = fixed + (1.0 - THETA) * span * rate0
         guess = fluid.temp_of(fixed / self.mass)
-        for _ in range(4):
+        for _ in range(3):
             rate, _parts = self.into(guess, on)
             steeper = (self.into(guess + _PROBE, on)[0] - rate) / _PROBE
             left = known + THETA * span * rate - self.mass * fluid.enthalpy(guess)

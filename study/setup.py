@@ -71,7 +71,7 @@ def prepare(case: Case) -> Setup:
         zone that no medium was given for.
     """
     section = section_of(case.section)
-    uses = [_uses(section, case.section, stage) for stage in case.cooling]
+    uses = [uses_of(section, case.section, stage) for stage in case.cooling]
     same = {
         pair: all(use[pair[0]] == use[pair[1]] for use in uses)
         for pair in combinations(section.zones, 2)
@@ -117,7 +117,7 @@ def prepare(case: Case) -> Setup:
     )
 
 
-def _uses(section: Section, given: SectionInput, stage: Stage) -> dict[str, MediumUse]:
+def uses_of(section: Section, given: SectionInput, stage: Stage) -> dict[str, MediumUse]:
     """What each zone of the section sees in a stage."""
     found = {}
     for zone in section.zones:

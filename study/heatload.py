@@ -1,0 +1,342 @@
+"""The heat that a load gives to its bath, from the section's own solution.
+
+Model
+-----
+The part is solved as any case is; its heat through the surface in the tank is that of
+its enthalpies, latent heat included, times the mass of the load. Baskets and fixtures
+are slabs of their steel and thickness, cooled on both faces through the same stages
+for the same times. The bath's temperature enters as ambient and through the films,
+which are made anew for every interval of the immersion.
+
+Source
+------
+Enthalpies: `thermo.properties`; films: `fem.media`. Waveform relaxation: Lelarasmee,
+Ruehli & Sangiovanni-Vincentelli 1982 (remembered); it converges on every finite time.
+
+Holds for
+---------
+Pieces that all see the same bath. Pieces in the wake of others see a hotter one.
+"""
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from midradius.fem import section as forms
+from midradius.fem.media import ZERO_DEGC, medium
+from midradius.fem.route import CoolingStage, History, Piece, Surface, cool
+from midradius.fem.section import Cut
+from midradius.fem.surface import Film, film
+from midradius.study.case import Case, MediumUse, SectionInput, SteelInput, position
+from midradius.study.casetank import tank_stage
+from midradius.study.setup import Setup, coordinates_of, prepare, uses_of
+from midradius.study.tankinput import LoadInput
+from midradius.thermo import austenite as soaking
+from midradius.thermo import properties
+from midradius.thermo.arrays import Array
+from midradius.thermo.assemble import initial_state, steel_tables
+from midradius.thermo.austenite import Austenite
+from midradius.thermo.errors import SolverFault
+from midradius.thermo.kinetics import Tables
+from midradius.thermo.source import Source
+
+SOURCES = (
+    Source("bath and section as one problem", "Lelarasmee et al. 1982", "relaxation", "remembered"),
+)
+
+TOLERANCE = 0.05  # K per step, as the runner's scout
+SETTLED = 0.01  # K between two bath paths
+MOST_ROUNDS = 15
+N_PIECE = 60
+FIRST_PIECE = 0.5  # s
+GROWTH = 1.3  # of the pieces of the first round, whose length is not known yet
+
+
+@dataclass(frozen=True)
+class BathPath:
+    """Temperatures of the bath ``temp`` (n,) [K] at ``time`` (n,) [s] since immersion."""
+
+    time: Array
+    temp: Array
+
+
+@dataclass(frozen=True)
+class Body:
+    """A case made ready for the march, and how many kilograms of it a load holds."""
+
+    name: str
+    case: Case
+    setup: Setup
+    cut: Cut
+    austenite: Austenite
+    tables: Tables
+    mass: float
+
+    @property
+    def mass_per_extent(self) -> float:
+        """Mass of the solved section [kg per its extent]."""
+        return properties.DENSITY * float(self.cut.body.volume.sum())
+
+
+@dataclass(frozen=True)
+class Given:
+    """What a load gives: ``heat`` (n,) [J] until ``time`` (n,) [s] since immersion.
+
+    ``left`` [J] is what it still holds when it leaves the bath, above ferrite with
+    cementite of 20 degC; ``before`` [J] what went to the air on the way. ``balance`` is
+    the largest gap of a body's own account. ``path`` is the bath that it saw.
+    """
+
+    time: Array
+    heat: Array
+    left: float
+    before: float
+    balance: float
+    path: BathPath
+    part: History
+    rounds: int
+
+    @property
+    def stay(self) -> float:
+        """How long the load is in the bath [s]."""
+        return float(self.time[-1])
+
+    @property
+    def total(self) -> float:
+        """Heat given to the bath [J]."""
+        return float(self.heat[-1])
+
+    @property
+    def peak(self) -> float:
+        """Largest mean rate of one interval of a second or more [W]."""
+        even = np.arange(0.0, self.stay, 1.0)
+        if len(even) < 2:
+            return self.total / max(self.stay, 1e-9)
+        return float(np.diff(np.interp(even, self.time, self.heat)).max())
+
+
+def piece_mass(section: SectionInput, load: LoadInput, per_extent: float) -> float:
+    """Mass of one piece [kg]; ``per_extent`` that of the section as it is named [kg]."""
+    if load.piece_mass is not None:
+        return load.piece_mass
+    return per_extent * (load.length if load.length is not None else 1.0)
+
+
+def bodies_of(case: Case) -> tuple[Body, ...]:
+    """The pieces of a case's load as one body, then its fixtures.
+
+    Raises
+    ------
+    InputFault
+        As `setup.prepare`.
+    """
+    load = case.load or LoadInput()
+    part = _body("pieces", case, 0.0)
+    factor, _ = part.setup.section.whole
+    one = piece_mass(case.section, load, factor * part.mass_per_extent)
+    found = [replace(part, mass=load.pieces * one)]
+    for fixture in load.fixtures:
+        steel = SteelInput(fixture.steel) if fixture.steel else case.steel
+        found.append(_body(fixture.name, as_slab(case, fixture.thickness, steel), fixture.mass))
+    return tuple(found)
+
+
+def as_slab(case: Case, thickness: float, steel: SteelInput) -> Case:
+    """The same route for a slab of that thickness [m], both faces in each stage's medium."""
+    stages = []
+    for stage in case.route:
+        use = stage.medium or next(iter(stage.faces.values()), None)
+        until = replace(stage.until, position="core") if stage.until else None
+        stages.append(replace(stage, medium=use, faces={}, until=until))
+    return replace(
+        case,
+        steel=steel,
+        section=SectionInput("slab", thickness=thickness, emissivity=case.section.emissivity),
+        route=tuple(stages),
+        outputs=replace(case.outputs, positions=(position("core"),)),
+        needs=(),
+        grid=replace(case.grid, cells=()),
+    )
+
+
+def _body(name: str, case: Case, mass: float) -> Body:
+    setup = prepare(case)
+    soak = case.route[0]
+    left = soaking.soak(
+        case.steel.steel, soak.at or 0.0, soak.time or 0.0, grain_astm=case.steel.grain_astm
+    )
+    cells = tuple(4 * int(np.ceil(n / 4)) for n in forms.cells_for(setup.section, 1.0))
+    cut = forms.cut(setup.section, cells, strongest_film=setup.strongest_film)
+    if len(setup.section.spans) > 1:
+        cut = cut.coarser()
+    tables = steel_tables(case.steel.steel, left, case.steel.shifts)
+    return Body(name, case, setup, cut, left, tables, mass)
+
+
+def stages_in(
+    setup: Setup, case: Case, path: BathPath, film_factor: float = 1.0
+) -> tuple[CoolingStage, ...]:
+    """The stages of a case, that in the tank with the bath on a path."""
+    number = tank_stage(case.route)
+    assert number is not None, "the reader checked that a quench is in a liquid"
+    stage, given = setup.stages[number - 1], case.route[number]
+    use = given.medium
+    assert use is not None
+    uses = uses_of(setup.section, case.section, given)
+    same = [zone for zone, seen in uses.items() if _same(seen, use)]
+
+    def surfaces(start: float, end: float | None) -> Mapping[str, Surface]:
+        middle = start if end is None else 0.5 * (start + end)
+        curve = _film_at(use, middle, stage.surfaces[same[0]].film, film_factor)
+        changed = {
+            zone: Surface(stage.surfaces[zone].label, curve, start, end) for zone in same
+        }
+        return {**stage.surfaces, **changed}
+
+    pieces = tuple(
+        Piece(float(after - now), surfaces(float(start), float(end)))
+        for now, after, start, end in zip(
+            path.time[:-1], path.time[1:], path.temp[:-1], path.temp[1:], strict=True
+        )
+    )
+    rest = surfaces(float(path.temp[-1]), None)
+    changed = replace(stage, surfaces=rest, pieces=pieces)
+    return tuple(changed if k == number - 1 else s for k, s in enumerate(setup.stages))
+
+
+def _same(seen: MediumUse, tank: MediumUse) -> bool:
+    return (seen.name, seen.film_file) == (tank.name, tank.film_file)
+
+
+def _film_at(use: MediumUse, bath: float, own: Film, factor: float) -> Film:
+    curve = own
+    if use.film_file is None:
+        known = medium(use.name or "")
+        # A bath that runs away keeps the film of its hottest table; the notes say so.
+        held = min(max(bath, known.bath_min), known.bath_max)
+        curve, _ = film(known, bath=held, length=1.0, geometry="sphere")
+    return Film(curve.temp, factor * curve.htc, curve.name)
+
+
+def march_body(
+    body: Body,
+    path: BathPath,
+    *,
+    film_factor: float = 1.0,
+    durations: Mapping[int, float] | None = None,
+) -> History:
+    """One body through its route; ``durations`` [s] by stage replace its own ends."""
+    stages = list(stages_in(body.setup, body.case, path, film_factor))
+    for k, seconds in (durations or {}).items():
+        stages[k] = replace(stages[k], duration=seconds, until_place=None, until_temp=None)
+    if durations is not None:
+        stages = stages[: len(durations)]
+    named = {place.name: place for place in body.case.outputs.positions}
+    for stage in stages:
+        if stage.until_place and stage.until_place not in named:
+            named[stage.until_place] = body.case.position(stage.until_place)
+    named.setdefault("core", position("core"))
+    section = body.cut.section
+    places = {name: forms.place(body.cut, coordinates_of(section, at)) for name, at in named.items()}
+    carbon = body.case.steel.steel.composition.C
+    start = body.case.route[0].at or 0.0
+    return cool(
+        body.cut,
+        body.tables,
+        tuple(stages),
+        density=properties.DENSITY,
+        start_temp=start,
+        state=initial_state(body.austenite, carbon, start, body.cut.body.n_node),
+        carbon_pct=carbon,
+        places=places,
+        watched=("core",),
+        field_times=np.zeros(1),
+        tolerance=TOLERANCE,
+    )
+
+
+Response = Callable[[Array, Array], BathPath]
+"""From the heat of a load [J] on the seconds since immersion to the bath that it makes."""
+
+
+def solve(
+    bodies: tuple[Body, ...],
+    *,
+    bath: float,
+    response: Response | None,
+    film_factor: float = 1.0,
+) -> Given:
+    """A load in its bath, both at once.
+
+    Parameters
+    ----------
+    bodies
+        From `bodies_of`.
+    bath
+        The bath at immersion [K].
+    response
+        What the bath does; None keeps it at ``bath``.
+    film_factor
+        On the film coefficients in the tank.
+
+    Raises
+    ------
+    SolverFault
+        Bath and load do not settle.
+    """
+    number = tank_stage(bodies[0].case.route)
+    assert number is not None
+    begin = np.concatenate([[0.0], np.cumsum(FIRST_PIECE * GROWTH ** np.arange(40))])
+    path = BathPath(begin, np.full(len(begin), bath))
+    for round_number in range(1, MOST_ROUNDS + 1):
+        given = _give(bodies, path, number - 1, film_factor, round_number)
+        if round_number > 1 and response is None:
+            return given
+        grid = np.concatenate([[0.0], np.geomspace(FIRST_PIECE, 1.2 * given.stay, N_PIECE)])
+        if given.stay <= 2.0 * FIRST_PIECE:
+            grid = np.linspace(0.0, given.stay, 9)
+        if response is None:
+            path = BathPath(grid, np.full(len(grid), bath))
+            continue
+        made = response(given.time, given.heat)
+        after = np.interp(grid, made.time, made.temp)
+        moved = np.abs(after - np.interp(grid, path.time, path.temp))
+        inside = grid <= given.stay
+        if round_number > 1 and float(moved[inside].max()) < SETTLED:
+            return given
+        path = BathPath(grid, after)
+    raise SolverFault(
+        f"Bath and load did not settle in {MOST_ROUNDS} rounds: the bath is very small for"
+        " its load. Enlarge the volume."
+    )
+
+
+def _give(
+    bodies: tuple[Body, ...], path: BathPath, stage: int, film_factor: float, rounds: int
+) -> Given:
+    part = march_body(bodies[0], path, film_factor=film_factor)
+    ends = part.stages[: stage + 1]
+    durations = {k: end.end - end.start for k, end in enumerate(ends)}
+    histories = [part] + [
+        march_body(body, path, film_factor=film_factor, durations=durations)
+        for body in bodies[1:]
+    ]
+    begun = ends[stage].start
+    time = np.concatenate([[0.0], np.array(ends[stage].moments) - begun])
+    heat, left, before = np.zeros(len(time)), 0.0, 0.0
+    for body, history in zip(bodies, histories, strict=True):
+        factor = body.mass / body.mass_per_extent
+        end = history.stages[stage]
+        own = np.concatenate([[0.0], np.array(end.moments) - end.start])
+        heat += factor * np.interp(time, own, np.concatenate([[0.0], end.heat_until]))
+        air = sum(s.heat_given for s in history.stages[:stage])
+        before += factor * air
+        left += factor * (history.heat_before - air - end.heat_given)
+    balance = max(history.balance for history in histories)
+    return Given(time, heat, left, before, balance, path, part, rounds)
+
+
+def degC(temp: float) -> str:
+    """A temperature for a text."""
+    return f"{temp - ZERO_DEGC:.4g} degC"

@@ -1,0 +1,406 @@
+"""The answer of ``midradius tank``: load and bath as one, the day, the size, the checks."""
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from midradius.fem import fluids
+from midradius.fem.fluids import Fluid
+from midradius.fem.media import medium
+from midradius.fem.section import place
+from midradius.study import bath as baths
+from midradius.study import bathcooler, bathloss, heatload, shift, sizing, tanksafety
+from midradius.study.bath import Tank
+from midradius.study.bathcooler import cooler_of
+from midradius.study.case import Case, position
+from midradius.study.casemedium import effective_bath
+from midradius.study.casetank import tank_stage
+from midradius.study.heatload import Body, Given, bodies_of, solve
+from midradius.study.setup import coordinates_of
+from midradius.study.shift import OWN, Failure, LoadInBath, LoadKind, Shift, response_of
+from midradius.study.sizing import Agitation, Limits, Sizing
+from midradius.study.tankfluid import fluid_of
+from midradius.study.tankinput import TankInput
+from midradius.study.tanksafety import FREEBOARD, Check
+from midradius.study.worth import worth
+from midradius.thermo.arrays import Array
+from midradius.thermo.errors import InputFault
+from midradius.thermo.source import RangeNote, Source
+
+ZERO_DEGC = 273.15
+AIR = 20.0 + ZERO_DEGC
+OWN_FILM_PCT = 30.0  # uncertainty of a film curve of the user's own [estimate]
+TURNED_OVER = 60.0  # s within which a bath counts as well mixed
+DAY = 86_400.0
+LEAST_WARMER = 10.0  # K between the two baths in which loads are solved
+VARIANTS = ("film as given", "stronger film", "weaker film")
+
+
+@dataclass(frozen=True)
+class CoreEffect:
+    """Hardness of the core [HV] and the bath behind it: uncoupled, first load, worst load."""
+
+    uncoupled_hv: float
+    first_hv: float
+    worst_hv: float
+    worst_start: float
+
+
+@dataclass(frozen=True)
+class TankAnswer:
+    """Everything the command says. Runs hold three baths: the film as given and its band."""
+
+    case: Case
+    tank: Tank
+    fluid: Fluid
+    flash: float | None
+    limits: Limits
+    uncertainty_pct: float
+    kinds: tuple[LoadKind, ...]
+    own: Given
+    own_bodies: tuple[Body, ...]
+    day: Shift
+    loads: tuple[LoadInBath, ...]
+    level: Array | None
+    level_volume: Array
+    lip: float | None
+    failure: Failure | None
+    sizing: Sizing
+    agitation: Agitation | None
+    core: CoreEffect
+    checks: tuple[Check, ...]
+    rules: tuple[tuple[str, float, str], ...]
+    cautions: tuple[str, ...]
+    assumptions: tuple[str, ...]
+    notes: tuple[RangeNote, ...]
+    sources: tuple[Source, ...]
+    balance: float
+
+    @property
+    def acceptable(self) -> bool:
+        """Whether no check is missed."""
+        return tanksafety.acceptable(self.checks)
+
+    @property
+    def hottest(self) -> Array:
+        """Hottest bath by film variant [K], over the first and the periodic day."""
+        runs = (self.day.first, self.day.steady)
+        return np.asarray(np.max([run.hottest.max(axis=0) for run in runs], axis=0))
+
+
+Say = Callable[[str], None]
+
+
+def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
+    """Solve loads, day and size of a case's tank.
+
+    Raises
+    ------
+    InputFault
+        The case has no tank or load, or asks for what cannot be.
+    SolverFault
+        A load and its bath do not settle.
+    """
+    tell = say or (lambda _: None)
+    given, number = case.tank, tank_stage(case.route)
+    if given is None or case.load is None or number is None:
+        lacking = "tank" if given is None else "load" if case.load is None else "route"
+        raise InputFault(lacking, "missing", f"given as [{lacking}]", "The README shows a case.")
+    use = case.route[number].medium
+    assert use is not None
+    bath = effective_bath(use)
+    if bath is None:
+        raise InputFault(f"route[{number}].bath", "missing", "given for a tank")
+    fluid = fluid_of(use, given.fluid_file)
+    limits, flash, told = _limits(given, fluid, bath)
+    tank, more = tank_of(given, fluid, bath, limits.bath)
+    morning = bath if given.morning is None else given.morning
+    known = medium(use.name) if use.name and use.film_file is None else None
+    band = known.uncertainty_pct if known else OWN_FILM_PCT
+    factors = (1.0, 1.0 + band / 100.0, 1.0 - band / 100.0)
+    warm = max(limits.bath, bath + LEAST_WARMER)
+    tell("loads")
+    bodies = bodies_of(case)
+    loads: list[tuple[LoadKind, float]] = []
+    kinds: list[LoadKind] = []
+    for entry in case.shift or (_ALONE,):
+        name, its = (OWN, bodies) if entry is _ALONE else shift.bodies_of_entry(case, entry)
+        kind = shift.kind_of(
+            name, its, tank, cool=bath, warm=warm, factors=factors, coupled=given.coupled
+        )
+        kinds.append(kind)
+        loads += [(kind, moment) for moment in entry.moments]
+    loads.sort(key=lambda item: item[1])
+    tell("day")
+    period = given.period or DAY
+    day = shift.through(
+        tank,
+        [kind.immersion(time, np.arange(len(factors))) for kind, time in loads],
+        period=period,
+        morning=np.full(len(factors), morning),
+        repeats=bool(case.shift),
+    )
+    rows = shift.loads_in(day.steady, day.loads, period)
+    nominal = replace_runs(day)
+    failure = shift.cooler_failure(tank, nominal, limit=limits.bath)
+    own, core, gap = _own(case, bodies, tank, nominal, bath, given.coupled)
+    volume = np.ones(len(factors))
+    occupied = np.maximum(
+        baths.level_volume(tank, day.first, day.loads, volume).max(axis=0),
+        baths.level_volume(tank, day.steady, day.loads, volume).max(axis=0),
+    )
+    floor = (given.length or 0.0) * (given.width or 0.0)
+    level = occupied / floor if floor else None
+    tell("size")
+    sized = sizing.size(
+        tank,
+        loads,
+        given,
+        limits,
+        period=period,
+        morning=morning,
+        repeats=bool(case.shift),
+        n_variant=len(factors),
+    )
+    hottest = float(max(run.hottest.max() for run in (day.first, day.steady)))
+    checks = tanksafety.checks(
+        fluid,
+        flash=flash,
+        limit=limits.bath,
+        hottest=hottest,
+        rise=float(max(row.rise.max() for row in rows)),
+        rise_limit=limits.rise,
+        at_next=float(max(row.at_next.max() for row in rows)),
+        ready=limits.ready,
+        level=float(level.max()) if level is not None else None,
+        lip=given.depth,
+        freeboard=FREEBOARD if given.freeboard is None else given.freeboard,
+        settled=day.settled,
+    )
+    cautions = list(tanksafety.cautions(fluid))
+    if failure and flash is not None and failure.hottest > flash - tanksafety.FLASH_MARGIN:
+        cautions.insert(
+            0,
+            "If the cooler fails as the worst load goes in, the bath comes within 50 K of the"
+            " flash point under that load alone.",
+        )
+    setups = [body.setup for kind in kinds for body in kind.bodies]
+    return TankAnswer(
+        case=case,
+        tank=tank,
+        fluid=fluid,
+        flash=flash,
+        limits=limits,
+        uncertainty_pct=band,
+        kinds=tuple(kinds),
+        own=own,
+        own_bodies=bodies,
+        day=day,
+        loads=rows,
+        level=level,
+        level_volume=occupied,
+        lip=given.depth,
+        failure=failure,
+        sizing=sized,
+        agitation=sizing.agitation(given, fluid),
+        core=core,
+        checks=checks,
+        rules=sizing.rules(
+            sum(body.mass for body in bodies), own.total, given.volume, fluid, bath
+        ),
+        cautions=tuple(dict.fromkeys([*cautions, *(known.cautions if known else ())])),
+        assumptions=(*told, *more, *_assumed(case, given)),
+        notes=_notes(fluid, day, known, [n for s in setups for n in s.notes]),
+        sources=_sources(fluid, [s for x in setups for s in x.sources]),
+        balance=max(gap, own.balance, float(day.steady.balance.max())),
+    )
+
+
+_ALONE = shift.ShiftInput(0.0)
+
+
+def replace_runs(day: Shift) -> Shift:
+    """The same day with the bath of the film as given alone."""
+
+    def first(run: baths.BathRun) -> baths.BathRun:
+        return replace(
+            run,
+            temp=run.temp[:, :1],
+            heat={name: values[:, :1] for name, values in run.heat.items()},
+            evaporated=run.evaporated[:, :1],
+            content=run.content[:, :1],
+            start_temp=run.start_temp[:, :1],
+            balance=run.balance[:1],
+        )
+
+    def alone(load: baths.Immersion) -> baths.Immersion:
+        whole = load.heat
+
+        def heat(seconds: Array, temp: Array) -> Array:
+            n = len(VARIANTS)
+            columns = [whole(seconds, np.full(n, t))[:, 0] for t in temp]
+            return np.array(columns).T
+
+        return replace(load, heat=heat)
+
+    loads = tuple(alone(load) for load in day.loads)
+    return replace(day, loads=loads, first=first(day.first), steady=first(day.steady))
+
+
+def tank_of(
+    given: TankInput, fluid: Fluid, bath: float, limit: float
+) -> tuple[Tank, tuple[str, ...]]:
+    """The tank as the march sees it, and what was taken where the case does not say."""
+    told = []
+    filled = AIR if given.filled_at is None else given.filled_at
+    if fluid.kind == "salt" and given.filled_at is None:
+        filled = bath
+    told.append(
+        f"{given.volume:g} m3 of {fluid.name} as filled at {filled - ZERO_DEGC:.4g} degC; the"
+        " mass stays, evaporation and drag-out are topped up."
+    )
+    if given.length and given.width:
+        area = given.length * given.width
+    else:
+        area = given.volume ** (2.0 / 3.0)
+        told.append(f"The open surface is taken as that of a cube, {area:.3g} m2.")
+    cooler = cooler_of(
+        given.cooler, bath_cp=float(fluid.heat_capacity_at(limit)), bath_limit=limit
+    )
+    start = bath
+    if given.cooler is not None:
+        start = bath if given.cooler.start is None else given.cooler.start
+        if given.cooler.coolant_in is None:
+            told.append("The coolant enters at 25 degC.")
+        told.append(f"The cooler opens from {start - ZERO_DEGC:.4g} degC over 4 K.")
+    mixing, n_layer = 0.0, 1
+    if given.flow is not None:
+        mixing = given.flow * float(fluid.density_at(bath))
+        if given.volume / given.flow > TURNED_OVER:
+            n_layer = 3
+            told.append(
+                f"One turnover takes {given.volume / given.flow:.0f} s, more than a minute:"
+                " three stacked layers."
+            )
+    n_layer = n_layer if given.layers is None else given.layers
+    air = AIR if given.air is None else given.air
+    density = float(fluid.density_at(filled))
+    tank = Tank(
+        fluid=fluid,
+        fill_mass=given.volume * density,
+        area=area,
+        air=air,
+        cooler=cooler,
+        cooler_start=start,
+        heater=given.heater or 0.0,
+        heater_set=bath if given.heater_set is None else given.heater_set,
+        agitator=given.agitator or 0.0,
+        mixing=mixing,
+        n_layer=n_layer,
+        lid=given.lid,
+        drag_out=(given.drag_out or 0.0) * density,
+    )
+    return tank, tuple(told)
+
+
+def _limits(
+    given: TankInput, fluid: Fluid, bath: float
+) -> tuple[Limits, float | None, tuple[str, ...]]:
+    told = []
+    limit = given.bath_limit
+    if limit is None:
+        limit = max(fluid.work_max, bath + 5.0)
+        told.append(
+            f"No bath_limit is given: {limit - ZERO_DEGC:.4g} degC is taken, the usual end of the"
+            f" working range of {fluid.name}."
+        )
+    if limit <= bath:
+        raise InputFault(
+            "tank.bath_limit",
+            f'"{limit - ZERO_DEGC:.4g} degC"',
+            f"above the bath of the route, {bath - ZERO_DEGC:.4g} degC",
+            "A load warms the bath: leave room.",
+        )
+    flash = given.flash_point if given.flash_point is not None else fluid.flash
+    if fluid.kind == "oil" and given.flash_point is None and flash is not None:
+        told.append(
+            f"No flash_point is given: {flash - ZERO_DEGC:.4g} degC is taken for {fluid.name};"
+            " take yours from the data sheet."
+        )
+    return Limits(limit, given.rise_limit, given.ready_at), flash, tuple(told)
+
+
+def _assumed(case: Case, given: TankInput) -> tuple[str, ...]:
+    lines = [
+        "All pieces of a load see the bath as one; the walls of the tank lose no heat.",
+    ]
+    if not given.coupled:
+        lines.append("Coupling is off: the load sees the bath of the route throughout.")
+    if case.load and not case.load.fixtures:
+        lines.append("No basket or fixture is given: nothing but the pieces warms the bath.")
+    if given.freeboard is None and given.depth is not None:
+        lines.append(f"Freeboard {1e3 * FREEBOARD:.0f} mm (an estimate; 250 mm is better).")
+    return tuple(lines)
+
+
+def _own(
+    case: Case,
+    bodies: tuple[Body, ...],
+    tank: Tank,
+    day: Shift,
+    bath: float,
+    coupled: bool,
+) -> tuple[Given, CoreEffect, float]:
+    """The case's own load in its first and its worst bath, and the gap of heats between."""
+    starts = [
+        float(run.start_temp[k, 0])
+        for run in (day.first, day.steady)
+        for k, load in enumerate(day.loads)
+        if load.name == OWN
+    ]
+    first, worst = (starts[0], max(starts)) if starts else (bath, bath)
+    solid = sum(body.mass for body in bodies) / shift.DENSITY
+
+    def in_bath(start: float) -> Given:
+        response = response_of(tank, start, solid) if coupled else None
+        return solve(bodies, bath=start if coupled else bath, response=response)
+
+    plain = solve(bodies, bath=bath, response=None)
+    one = in_bath(first)
+    run = response_of(tank, first, solid).run(one.time, one.heat)
+    gap = abs(float(run.heat["load"][-1, 0]) - one.total) / abs(one.total)
+    hv = [_core_hv(bodies[0], g) for g in (plain, one, in_bath(worst))]
+    return one, CoreEffect(*hv, worst), max(gap, float(run.balance[0]))
+
+
+def _core_hv(body: Body, given: Given) -> float:
+    value = worth(body.case, body.austenite, given.part).hardness_hv
+    at = place(body.cut, coordinates_of(body.cut.section, position("core")))
+    return float((value[at.node] * at.share).sum())
+
+
+def _notes(
+    fluid: Fluid, day: Shift, known: object, others: list[RangeNote]
+) -> tuple[RangeNote, ...]:
+    coldest = float(min(run.temp.min() for run in (day.first, day.steady)))
+    hottest = float(max(run.temp.max() for run in (day.first, day.steady)))
+    found = list(fluids.range_notes(fluid, coldest=coldest, hottest=hottest))
+    low, high = getattr(known, "holds_min", None), getattr(known, "holds_max", None)
+    if low is not None and high is not None and (coldest < low or hottest > high):
+        found.append(
+            RangeNote(
+                f"film coefficient in {fluid.name}",
+                "bath through the day",
+                f"{coldest - ZERO_DEGC:.3g} to {hottest - ZERO_DEGC:.3g} degC",
+                f"{low - ZERO_DEGC:.4g} to {high - ZERO_DEGC:.4g} degC",
+            )
+        )
+    return tuple(dict.fromkeys([*found, *others]))
+
+
+def _sources(fluid: Fluid, others: list[Source]) -> tuple[Source, ...]:
+    found = [fluid.source]
+    for module in (heatload, baths, bathcooler, bathloss, shift, sizing, tanksafety):
+        found += module.SOURCES
+    return tuple(dict.fromkeys([*found, *others]))
