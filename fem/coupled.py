@@ -201,6 +201,7 @@ class Run:
         until: Until | None = None,
         first_step: float | None = None,
         longest: float = np.inf,
+        carry_on: bool = False,
         tell: Callable[[float], None] | None = None,
     ) -> str:
         """March through one stage.
@@ -219,6 +220,9 @@ class Run:
             First time step [s]; by default from the finest cell.
         longest
             Longest time step [s].
+        carry_on
+            The surroundings go on smoothly from the stage before: steps and their
+            error control do too.
         tell
             Called with the simulated time [s] now and then.
 
@@ -254,8 +258,9 @@ class Run:
             limit_share=np.empty(0) if until is None else until.share,
             limit_temp=0.0 if until is None else until.temp,
         )
-        clock[march.STEP] = first_step if first_step is not None else self._first_step(skin)
-        clock[march.STEP_BEFORE] = 0.0
+        if not carry_on:
+            clock[march.STEP] = first_step if first_step is not None else self._first_step(skin)
+            clock[march.STEP_BEFORE] = 0.0
         while True:
             clock[march.HISTORY_ROW] = 0
             status = march.march(

@@ -197,9 +197,7 @@ def _fluids() -> dict[str, Fluid]:
 
 def _fluid(row: Mapping[str, str], points: Mapping[str, list[dict[str, str]]]) -> Fluid:
     name = row["fluid"]
-    made = Source(
-        f"properties of {name}", row["work"], row["locator"], cast(Status, row["status"])
-    )
+    made = Source(f"properties of {name}", row["work"], row["locator"], cast(Status, row["status"]))
     kelvin = {
         key: float(row[f"{key}_degC"]) + ZERO_DEGC if row[f"{key}_degC"] else None
         for key in ("flash", "work_min", "work_max")

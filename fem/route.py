@@ -222,7 +222,7 @@ def _through(
     last = begun + (LONGEST_STAGE if stage.duration is None else stage.duration)
     moments: list[float] = []
     heat: list[float] = []
-    ended, step = "time", None
+    ended = "time"
     for piece in (*stage.pieces, Piece(np.inf, stage.surfaces)):
         span = min(piece.duration, last - run.time)
         if span <= 1e-9 * last:
@@ -232,10 +232,9 @@ def _through(
             duration=span,
             tolerance=tolerance,
             until=until,
-            first_step=step,
+            carry_on=len(moments) > 0,
             tell=tell,
         )
-        step = max(float(run.progress.clock[march.STEP]), 1e-6)
         moments.append(run.time)
         heat.append(before - float(run.progress.zone_heat.sum()))
         if ended == "limit":

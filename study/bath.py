@@ -321,6 +321,25 @@ def level_volume(tank: Tank, run: BathRun, loads: Sequence[Immersion], volume: A
     return np.asarray(fluid + solid[:, None])
 
 
+def mixed_temp(
+    fluid: Fluid, mass: float, start: float, heat: Callable[[float], Array | float]
+) -> float:
+    """Where a bath ends that keeps all the heat of a load [K].
+
+    ``heat`` gives what the load gives off [J] until it is at a temperature [K]; ``mass``
+    [kg] of fluid at ``start`` [K].
+    """
+    low, high = start, 1100.0
+    first = mass * float(fluid.enthalpy(start))
+    for _ in range(60):
+        middle = 0.5 * (low + high)
+        if mass * float(fluid.enthalpy(middle)) - first < float(heat(middle)):
+            low = middle
+        else:
+            high = middle
+    return 0.5 * (low + high)
+
+
 def without_losses(tank: Tank) -> Tank:
     """The same tank without cooler, heater, agitator and surface: what a load alone does."""
     return replace(tank, cooler=None, heater=0.0, agitator=0.0, lid=True, drag_out=0.0)

@@ -45,13 +45,13 @@ def effectiveness(
     conductance: float, hot_capacity: float, cold_capacity: float, arrangement: str
 ) -> float:
     """Effectiveness [-] of an exchanger of UA [W/K] between two capacity flows [W/K]."""
-    import ht
+    from ht import effectiveness_from_NTU
 
     least, most = sorted((hot_capacity, cold_capacity))
-    found: float = ht.effectiveness_from_NTU(
+    share = effectiveness_from_NTU(  # type: ignore[no-untyped-call]
         NTU=conductance / least, Cr=least / most, subtype=_SUBTYPE[arrangement]
     )
-    return found
+    return float(share)
 
 
 def cooler_of(given: CoolerInput | None, *, bath_cp: float, bath_limit: float) -> Cooler | None:

@@ -224,9 +224,6 @@ class Asked:
     route: tuple[Stage, ...]
     outputs: Outputs
     needs: tuple[Need, ...] = ()
-    load: LoadInput | None = None
-    tank: TankInput | None = None
-    shift: tuple[ShiftInput, ...] = ()
     text: str = field(default="", compare=False, repr=False)
     path: Path | None = field(default=None, compare=False)
 
@@ -279,6 +276,9 @@ class Case(Asked):
 
     section: SectionInput
     grid: Grid = Grid()
+    load: LoadInput | None = None
+    tank: TankInput | None = None
+    shift: tuple[ShiftInput, ...] = ()
 
 
 ZONES: Mapping[str, tuple[str, ...]] = {

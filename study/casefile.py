@@ -135,7 +135,12 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
 def _series(
     top: Table, title: str, steel: SteelInput | None, text: str, path: Path | None
 ) -> SeriesCase:
-    for block, why in (("section", "Keep one of the two."), ("grid", "Nothing is solved on it.")):
+    load = "How much heat a load gives is known of a section only."
+    for block, why in (
+        ("section", "Keep one of the two."),
+        ("grid", "Nothing is solved on it."),
+        *((name, load) for name in ("load", "tank", "shift")),
+    ):
         if top.has(block):
             sentence = f"{block} does not go with temperatures, which come with their own nodes"
             top.refuse(block, sentence, why)

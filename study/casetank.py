@@ -70,7 +70,7 @@ def _load(table: Table, section: SectionInput | None) -> LoadInput | None:
             table.missing("length", f'given for form = "{section.form}"', "Or give piece_mass.")
         if section.form == "slab" and not table.has("piece_mass"):
             table.missing("piece_mass", 'given for form = "slab"', 'Such as piece_mass = "85 kg".')
-    fixtures = []
+    fixtures: list[FixtureInput] = []
     for key, value in table.items("fixture", "[[load.fixture]]"):
         if isinstance(value, dict):
             inner = Table(value, key, table.notes)

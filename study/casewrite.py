@@ -22,6 +22,7 @@ from .case import (
     with_unit,
 )
 from .steelfile import FileSteel
+from .tankwrite import tank_lines
 
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 
@@ -48,6 +49,7 @@ def dumps(case: Case) -> str:
         lines += ["", "[[need]]", *_need(need)]
     lines += ["", "[output]", *_outputs(case.outputs)]
     lines += ["", "[grid]", *_grid(case.grid)]
+    lines += tank_lines(case.load, case.tank, case.shift, folder)
     return "\n".join(lines) + "\n"
 
 

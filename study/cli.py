@@ -22,6 +22,7 @@ from midradius.study.cli_lever import lever
 from midradius.study.cli_mesh import mesh
 from midradius.study.cli_sources import described, sources, used_lines
 from midradius.study.cli_steels import steels
+from midradius.study.cli_tank import tank
 
 _EPILOG = """\b
 Exit codes:
@@ -99,6 +100,7 @@ cli.add_command(lever)
 cli.add_command(mesh)
 cli.add_command(sources)
 cli.add_command(steels)
+cli.add_command(tank)
 
 
 @cli.command(epilog=_RUN_EPILOG)

@@ -189,9 +189,7 @@ def stages_in(
     def surfaces(start: float, end: float | None) -> Mapping[str, Surface]:
         middle = start if end is None else 0.5 * (start + end)
         curve = _film_at(use, middle, stage.surfaces[same[0]].film, film_factor)
-        changed = {
-            zone: Surface(stage.surfaces[zone].label, curve, start, end) for zone in same
-        }
+        changed = {zone: Surface(stage.surfaces[zone].label, curve, start, end) for zone in same}
         return {**stage.surfaces, **changed}
 
     pieces = tuple(
@@ -238,7 +236,9 @@ def march_body(
             named[stage.until_place] = body.case.position(stage.until_place)
     named.setdefault("core", position("core"))
     section = body.cut.section
-    places = {name: forms.place(body.cut, coordinates_of(section, at)) for name, at in named.items()}
+    places = {
+        name: forms.place(body.cut, coordinates_of(section, at)) for name, at in named.items()
+    }
     carbon = body.case.steel.steel.composition.C
     start = body.case.route[0].at or 0.0
     return cool(
@@ -293,9 +293,10 @@ def solve(
         given = _give(bodies, path, number - 1, film_factor, round_number)
         if round_number > 1 and response is None:
             return given
-        grid = np.concatenate([[0.0], np.geomspace(FIRST_PIECE, 1.2 * given.stay, N_PIECE)])
-        if given.stay <= 2.0 * FIRST_PIECE:
-            grid = np.linspace(0.0, given.stay, 9)
+        # One piece ends with the stay itself; beyond it the bath is not known yet.
+        first = min(FIRST_PIECE, 0.25 * given.stay)
+        grid = np.geomspace(first, given.stay, N_PIECE)
+        grid = np.concatenate([[0.0], grid, [1.2 * given.stay]])
         if response is None:
             path = BathPath(grid, np.full(len(grid), bath))
             continue
@@ -319,8 +320,7 @@ def _give(
     ends = part.stages[: stage + 1]
     durations = {k: end.end - end.start for k, end in enumerate(ends)}
     histories = [part] + [
-        march_body(body, path, film_factor=film_factor, durations=durations)
-        for body in bodies[1:]
+        march_body(body, path, film_factor=film_factor, durations=durations) for body in bodies[1:]
     ]
     begun = ends[stage].start
     time = np.concatenate([[0.0], np.array(ends[stage].moments) - begun])

@@ -50,10 +50,10 @@ def solve(case: "Case | Path | str", *, tell: Tell | None = None) -> "Result":
     except InputFault as fault:
         if not asked.path:
             raise
-        raise CaseFaults((_placed(fault, asked.text, asked.path),)) from fault
+        raise CaseFaults((placed(fault, asked.text, asked.path),)) from fault
 
 
-def _placed(fault: InputFault, text: str, path: Path) -> Fault:
+def placed(fault: InputFault, text: str, path: Path) -> Fault:
     """A fault of the solver, which knows no file, with the line of the case that it means."""
     parts = re.findall(r"[^.\[\]]+", fault.quantity)
     key = tuple(int(part) if part.isdecimal() else part for part in parts)

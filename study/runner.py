@@ -33,6 +33,7 @@ from midradius.study.soaktext import (
     soak_warnings,
     stage_record,
 )
+from midradius.study.tanksetup import in_bath
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import conversion, diffusional, equilibrium, martensite, network, properties
 from midradius.thermo.arrays import Array
@@ -118,7 +119,7 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
     SolverFault
         The solver gave up.
     """
-    setup = prepare(case)
+    setup = in_bath(case, prepare(case))
     dim = setup.section.n_dim
     tolerance = TOLERANCE_PER_ACCURACY[dim] * case.grid.accuracy
     fine = _first(case, setup)

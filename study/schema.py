@@ -15,6 +15,7 @@ from midradius.thermo.units import Kind, example, pattern, show
 
 from . import casekeys as keys
 from .case import TRADE_TERMS, ZONES
+from .tankschema import blocks
 
 Schema = dict[str, Any]
 
@@ -34,6 +35,7 @@ def document() -> Schema:
             "need": _needs(),
             "output": _output(),
             "grid": _grid(),
+            **blocks(),
         },
         "required": ["steel", "section", "route"],
         "additionalProperties": False,

@@ -23,8 +23,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from midradius.study.bath import LONGEST_STEP, BathRun, Immersion, Tank, march
-from midradius.study.casefile import read
 from midradius.study.case import Case, Stage, SteelInput
+from midradius.study.casefile import read
 from midradius.study.casetank import tank_stage
 from midradius.study.heatload import BathPath, Body, Given, as_slab, bodies_of, solve
 from midradius.study.tankinput import LoadInput, ShiftInput
@@ -279,15 +279,12 @@ def loads_in(run: BathRun, loads: Sequence[Immersion], period: float) -> tuple[L
         temp = run.hottest[start : end + 1]
         before = run.at_load()[start]
         peak = temp.argmax(axis=0)
-        recovered = np.full(len(before), np.nan)
-        for k in range(len(before)):
-            back = np.nonzero(temp[peak[k] :, k] <= before[k] + 1.0)[0]
-            if len(back):
-                recovered[k] = run.time[start + peak[k] + back[0]] - load.time
+        cold = temp <= before[None, :] + 1.0
+        cold &= np.arange(len(temp))[:, None] > peak[None, :]
+        back = run.time[start + cold.argmax(axis=0)] - load.time
+        recovered = np.where(cold.any(axis=0), back, np.nan)
         hottest = temp.max(axis=0)
         found.append(
-            LoadInBath(
-                load.name, load.time, before, hottest, hottest - before, temp[-1], recovered
-            )
+            LoadInBath(load.name, load.time, before, hottest, hottest - before, temp[-1], recovered)
         )
     return tuple(found)

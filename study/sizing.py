@@ -26,7 +26,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from midradius.fem.fluids import Fluid
-from midradius.study.bath import Tank
+from midradius.study.bath import Tank, mixed_temp
 from midradius.study.bathcooler import COOLANT_IN, Cooler
 from midradius.study.shift import LoadKind, Shift, loads_in, through
 from midradius.study.tankinput import TankInput
@@ -38,7 +38,9 @@ SOURCES = (
     Source("propellers by power", "MacKenzie, quench tank columns", "420 rpm", "read"),
     Source("flow number of a marine propeller", "Q = 0.5 N D^3", "", "remembered"),
     Source("agitation power of quench tanks", "US Steel 1954", "0.005 HP per gallon", "remembered"),
-    Source("litres of oil per kg of load", "MacKenzie, sizing columns", "1 gal/lb, 10 l/kg", "read"),
+    Source(
+        "litres of oil per kg of load", "MacKenzie, sizing columns", "1 gal/lb, 10 l/kg", "read"
+    ),
 )
 
 N_VOLUME, N_COOLER = 13, 24
@@ -203,10 +205,11 @@ def rules(
     mass: float, energy: float, volume: float, fluid: Fluid, bath: float
 ) -> tuple[tuple[str, float, str], ...]:
     """Rules of thumb beside the answer: name, value, unit. Common practice, no answer."""
-    capacity = float(fluid.density_at(bath) * fluid.heat_capacity_at(bath))
+    fluid_mass = volume * float(fluid.density_at(bath))
+    rise = mixed_temp(fluid, fluid_mass, bath, lambda _: energy) - bath
     found = [
         ("this tank", 1e3 * volume / mass, "l per kg of parts and fixtures"),
-        ("rise of one load without any loss", energy / (volume * capacity), "K"),
+        ("rise of one load without any loss", rise, "K"),
         (f"usual limit of that rise in {fluid.name}", fluid.rise_usual, "K"),
     ]
     if fluid.kind == "oil":

@@ -12,7 +12,6 @@ from midradius.fem.section import place
 from midradius.study import bath as baths
 from midradius.study import bathcooler, bathloss, heatload, shift, sizing, tanksafety
 from midradius.study.bath import Tank
-from midradius.study.bathcooler import cooler_of
 from midradius.study.case import Case, position
 from midradius.study.casemedium import effective_bath
 from midradius.study.casetank import tank_stage
@@ -21,17 +20,18 @@ from midradius.study.setup import coordinates_of
 from midradius.study.shift import OWN, Failure, LoadInBath, LoadKind, Shift, response_of
 from midradius.study.sizing import Agitation, Limits, Sizing
 from midradius.study.tankfluid import fluid_of
-from midradius.study.tankinput import TankInput
+from midradius.study.tankinput import ShiftInput
 from midradius.study.tanksafety import FREEBOARD, Check
+from midradius.study.tanksetup import limits_of, tank_of
+from midradius.study.tanksetup import told as assumed
 from midradius.study.worth import worth
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
+from midradius.thermo.properties import DENSITY
 from midradius.thermo.source import RangeNote, Source
 
 ZERO_DEGC = 273.15
-AIR = 20.0 + ZERO_DEGC
 OWN_FILM_PCT = 30.0  # uncertainty of a film curve of the user's own [estimate]
-TURNED_OVER = 60.0  # s within which a bath counts as well mixed
 DAY = 86_400.0
 LEAST_WARMER = 10.0  # K between the two baths in which loads are solved
 VARIANTS = ("film as given", "stronger film", "weaker film")
@@ -83,6 +83,11 @@ class TankAnswer:
         return tanksafety.acceptable(self.checks)
 
     @property
+    def limit_is_safe(self) -> bool:
+        """Whether the limit of the bath is one that a size may be given for."""
+        return tanksafety.limit_is_safe(self.fluid, flash=self.flash, limit=self.limits.bath)
+
+    @property
     def hottest(self) -> Array:
         """Hottest bath by film variant [K], over the first and the periodic day."""
         runs = (self.day.first, self.day.steady)
@@ -113,7 +118,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
     if bath is None:
         raise InputFault(f"route[{number}].bath", "missing", "given for a tank")
     fluid = fluid_of(use, given.fluid_file)
-    limits, flash, told = _limits(given, fluid, bath)
+    limits, flash, told = limits_of(given, fluid, bath)
     tank, more = tank_of(given, fluid, bath, limits.bath)
     morning = bath if given.morning is None else given.morning
     known = medium(use.name) if use.name and use.film_file is None else None
@@ -206,18 +211,16 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         agitation=sizing.agitation(given, fluid),
         core=core,
         checks=checks,
-        rules=sizing.rules(
-            sum(body.mass for body in bodies), own.total, given.volume, fluid, bath
-        ),
+        rules=sizing.rules(sum(body.mass for body in bodies), own.total, given.volume, fluid, bath),
         cautions=tuple(dict.fromkeys([*cautions, *(known.cautions if known else ())])),
-        assumptions=(*told, *more, *_assumed(case, given)),
+        assumptions=(*told, *more, *assumed(case, given)),
         notes=_notes(fluid, day, known, [n for s in setups for n in s.notes]),
         sources=_sources(fluid, [s for x in setups for s in x.sources]),
         balance=max(gap, own.balance, float(day.steady.balance.max())),
     )
 
 
-_ALONE = shift.ShiftInput(0.0)
+_ALONE = ShiftInput(0.0)
 
 
 def replace_runs(day: Shift) -> Shift:
@@ -248,102 +251,6 @@ def replace_runs(day: Shift) -> Shift:
     return replace(day, loads=loads, first=first(day.first), steady=first(day.steady))
 
 
-def tank_of(
-    given: TankInput, fluid: Fluid, bath: float, limit: float
-) -> tuple[Tank, tuple[str, ...]]:
-    """The tank as the march sees it, and what was taken where the case does not say."""
-    told = []
-    filled = AIR if given.filled_at is None else given.filled_at
-    if fluid.kind == "salt" and given.filled_at is None:
-        filled = bath
-    told.append(
-        f"{given.volume:g} m3 of {fluid.name} as filled at {filled - ZERO_DEGC:.4g} degC; the"
-        " mass stays, evaporation and drag-out are topped up."
-    )
-    if given.length and given.width:
-        area = given.length * given.width
-    else:
-        area = given.volume ** (2.0 / 3.0)
-        told.append(f"The open surface is taken as that of a cube, {area:.3g} m2.")
-    cooler = cooler_of(
-        given.cooler, bath_cp=float(fluid.heat_capacity_at(limit)), bath_limit=limit
-    )
-    start = bath
-    if given.cooler is not None:
-        start = bath if given.cooler.start is None else given.cooler.start
-        if given.cooler.coolant_in is None:
-            told.append("The coolant enters at 25 degC.")
-        told.append(f"The cooler opens from {start - ZERO_DEGC:.4g} degC over 4 K.")
-    mixing, n_layer = 0.0, 1
-    if given.flow is not None:
-        mixing = given.flow * float(fluid.density_at(bath))
-        if given.volume / given.flow > TURNED_OVER:
-            n_layer = 3
-            told.append(
-                f"One turnover takes {given.volume / given.flow:.0f} s, more than a minute:"
-                " three stacked layers."
-            )
-    n_layer = n_layer if given.layers is None else given.layers
-    air = AIR if given.air is None else given.air
-    density = float(fluid.density_at(filled))
-    tank = Tank(
-        fluid=fluid,
-        fill_mass=given.volume * density,
-        area=area,
-        air=air,
-        cooler=cooler,
-        cooler_start=start,
-        heater=given.heater or 0.0,
-        heater_set=bath if given.heater_set is None else given.heater_set,
-        agitator=given.agitator or 0.0,
-        mixing=mixing,
-        n_layer=n_layer,
-        lid=given.lid,
-        drag_out=(given.drag_out or 0.0) * density,
-    )
-    return tank, tuple(told)
-
-
-def _limits(
-    given: TankInput, fluid: Fluid, bath: float
-) -> tuple[Limits, float | None, tuple[str, ...]]:
-    told = []
-    limit = given.bath_limit
-    if limit is None:
-        limit = max(fluid.work_max, bath + 5.0)
-        told.append(
-            f"No bath_limit is given: {limit - ZERO_DEGC:.4g} degC is taken, the usual end of the"
-            f" working range of {fluid.name}."
-        )
-    if limit <= bath:
-        raise InputFault(
-            "tank.bath_limit",
-            f'"{limit - ZERO_DEGC:.4g} degC"',
-            f"above the bath of the route, {bath - ZERO_DEGC:.4g} degC",
-            "A load warms the bath: leave room.",
-        )
-    flash = given.flash_point if given.flash_point is not None else fluid.flash
-    if fluid.kind == "oil" and given.flash_point is None and flash is not None:
-        told.append(
-            f"No flash_point is given: {flash - ZERO_DEGC:.4g} degC is taken for {fluid.name};"
-            " take yours from the data sheet."
-        )
-    return Limits(limit, given.rise_limit, given.ready_at), flash, tuple(told)
-
-
-def _assumed(case: Case, given: TankInput) -> tuple[str, ...]:
-    lines = [
-        "All pieces of a load see the bath as one; the walls of the tank lose no heat.",
-    ]
-    if not given.coupled:
-        lines.append("Coupling is off: the load sees the bath of the route throughout.")
-    if case.load and not case.load.fixtures:
-        lines.append("No basket or fixture is given: nothing but the pieces warms the bath.")
-    if given.freeboard is None and given.depth is not None:
-        lines.append(f"Freeboard {1e3 * FREEBOARD:.0f} mm (an estimate; 250 mm is better).")
-    return tuple(lines)
-
-
 def _own(
     case: Case,
     bodies: tuple[Body, ...],
@@ -360,7 +267,7 @@ def _own(
         if load.name == OWN
     ]
     first, worst = (starts[0], max(starts)) if starts else (bath, bath)
-    solid = sum(body.mass for body in bodies) / shift.DENSITY
+    solid = sum(body.mass for body in bodies) / DENSITY
 
     def in_bath(start: float) -> Given:
         response = response_of(tank, start, solid) if coupled else None
@@ -370,8 +277,8 @@ def _own(
     one = in_bath(first)
     run = response_of(tank, first, solid).run(one.time, one.heat)
     gap = abs(float(run.heat["load"][-1, 0]) - one.total) / abs(one.total)
-    hv = [_core_hv(bodies[0], g) for g in (plain, one, in_bath(worst))]
-    return one, CoreEffect(*hv, worst), max(gap, float(run.balance[0]))
+    held, own_bath, hot = (_core_hv(bodies[0], g) for g in (plain, one, in_bath(worst)))
+    return one, CoreEffect(held, own_bath, hot, worst), max(gap, float(run.balance[0]))
 
 
 def _core_hv(body: Body, given: Given) -> float:

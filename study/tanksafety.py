@@ -130,9 +130,7 @@ def checks(
     else:
         value = max(limit, hottest)
         why = "the salt decomposes"
-        found.append(
-            _below("salt", value - ZERO_DEGC, SALT_HIGHEST - ZERO_DEGC, "degC", why)
-        )
+        found.append(_below("salt", value - ZERO_DEGC, SALT_HIGHEST - ZERO_DEGC, "degC", why))
     if level is None or lip is None:
         why = "give length, width and depth of the tank: the level is not judged"
         found.append(Check("level at the worst moment", None, None, "mm", None, why))
@@ -154,6 +152,13 @@ def checks(
 def acceptable(checks: tuple[Check, ...]) -> bool:
     """Whether nothing that can be judged is missed."""
     return all(check.met is not False for check in checks)
+
+
+def limit_is_safe(fluid: Fluid, *, flash: float | None, limit: float) -> bool:
+    """Whether a bath at its limit [K] keeps its distance to flash point, boiling, decay."""
+    if fluid.kind == "oil":
+        return flash is not None and limit < flash - FLASH_MARGIN
+    return limit <= (100.0 - BOILING_MARGIN + ZERO_DEGC if fluid.aqueous else SALT_HIGHEST)
 
 
 def _below(name: str, value: float, limit: float, unit: str, why: str) -> Check:
