@@ -24,21 +24,22 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from midradius.fem import section as forms
+from midradius.fem.cutting import AnyCut, AnySection
 from midradius.fem.media import ZERO_DEGC, medium
+from midradius.fem.meshcut import cut_mesh
+from midradius.fem.meshsection import MeshSection
+from midradius.fem.place import Place
 from midradius.fem.route import CoolingStage, History, Piece, Surface, cool
-from midradius.fem.section import Cut
+from midradius.fem.section import Section
 from midradius.fem.surface import Film, film
-from midradius.study.case import Case, MediumUse, SectionInput, SteelInput, position
+from midradius.study.begin import Begun, begin
+from midradius.study.case import Case, MediumUse, SectionInput, Stage, SteelInput, position
 from midradius.study.casetank import tank_stage
 from midradius.study.setup import Setup, coordinates_of, prepare, uses_of
 from midradius.study.tankinput import LoadInput
-from midradius.thermo import austenite as soaking
 from midradius.thermo import properties
 from midradius.thermo.arrays import Array
-from midradius.thermo.assemble import initial_state, steel_tables
-from midradius.thermo.austenite import Austenite
 from midradius.thermo.errors import SolverFault
-from midradius.thermo.kinetics import Tables
 from midradius.thermo.source import Source
 
 SOURCES = (
@@ -50,6 +51,7 @@ SETTLED = 0.01  # K between two bath paths
 MOST_ROUNDS = 15
 N_PIECE = 60
 FIRST_PIECE = 0.5  # s
+HOT_THROUGHOUT = 3600.0  # s, soak of a fixture where the case ends its own by temperature
 GROWTH = 1.3  # of the pieces of the first round, whose length is not known yet
 
 
@@ -68,9 +70,8 @@ class Body:
     name: str
     case: Case
     setup: Setup
-    cut: Cut
-    austenite: Austenite
-    tables: Tables
+    cut: AnyCut
+    begun: Begun
     mass: float
 
     @property
@@ -143,9 +144,11 @@ def bodies_of(case: Case) -> tuple[Body, ...]:
 
 
 def as_slab(case: Case, thickness: float, steel: SteelInput) -> Case:
-    """The same route for a slab of that thickness [m], both faces in each stage's medium."""
-    stages = []
-    for stage in case.route:
+    """The same cooling for a slab of that thickness [m] that is hot throughout, both faces
+    in each stage's medium."""
+    hot = max(stage.at or 0.0 for stage in (*case.heating, case.soak))
+    stages = [Stage("soak", at=hot, time=case.soak.time or HOT_THROUGHOUT)]
+    for stage in case.cooling:
         use = stage.medium or next(iter(stage.faces.values()), None)
         until = replace(stage.until, position="core") if stage.until else None
         stages.append(replace(stage, medium=use, faces={}, until=until))
@@ -162,25 +165,45 @@ def as_slab(case: Case, thickness: float, steel: SteelInput) -> Case:
 
 def _body(name: str, case: Case, mass: float) -> Body:
     setup = prepare(case)
-    soak = case.route[0]
-    left = soaking.soak(
-        case.steel.steel, soak.at or 0.0, soak.time or 0.0, grain_astm=case.steel.grain_astm
-    )
-    cells = tuple(4 * int(np.ceil(n / 4)) for n in forms.cells_for(setup.section, 1.0))
-    cut = forms.cut(setup.section, cells, strongest_film=setup.strongest_film)
-    if len(setup.section.spans) > 1:
-        cut = cut.coarser()
-    tables = steel_tables(case.steel.steel, left, case.steel.shifts)
-    return Body(name, case, setup, cut, left, tables, mass)
+    cut = _cut(setup)
+    places = _places(case, cut)
+    begun = begin(case, setup.furnace, cut, places=places, watched=("core",), tolerance=TOLERANCE)
+    return Body(name, case, setup, cut, begun, mass)
+
+
+def _cut(setup: Setup) -> AnyCut:
+    """A grid fine enough for the heat: in two and three dimensions the coarser one."""
+    section: AnySection = setup.section
+    if isinstance(section, MeshSection):
+        return cut_mesh(section, 0)
+    assert isinstance(section, Section), "a section is a form or a mesh"
+    cells = tuple(4 * int(np.ceil(n / 4)) for n in forms.cells_for(section, 1.0))
+    cut = forms.cut(section, cells, strongest_film=setup.strongest_film)
+    return (cut.coarser() or cut) if len(cells) > 1 else cut
+
+
+def _places(case: Case, cut: AnyCut) -> dict[str, Place]:
+    named = {place.name: place for place in case.outputs.positions}
+    for stage in (*case.heating, *case.cooling):
+        if stage.until and stage.until.position not in named:
+            named[stage.until.position] = case.position(stage.until.position)
+    named.setdefault("core", position("core"))
+    return {name: cut.place(coordinates_of(cut.section, at)) for name, at in named.items()}
+
+
+def tank_index(case: Case) -> int:
+    """Which of the cooling stages happens in the tank."""
+    number = tank_stage(case.route)
+    assert number is not None, "the reader checked that a quench is in a liquid"
+    return case.cooling.index(case.route[number])
 
 
 def stages_in(
     setup: Setup, case: Case, path: BathPath, film_factor: float = 1.0
 ) -> tuple[CoolingStage, ...]:
     """The stages of a case, that in the tank with the bath on a path."""
-    number = tank_stage(case.route)
-    assert number is not None, "the reader checked that a quench is in a liquid"
-    stage, given = setup.stages[number - 1], case.route[number]
+    index = tank_index(case)
+    stage, given = setup.stages[index], case.cooling[index]
     use = given.medium
     assert use is not None
     uses = uses_of(setup.section, case.section, given)
@@ -200,7 +223,7 @@ def stages_in(
     )
     rest = surfaces(float(path.temp[-1]), None)
     changed = replace(stage, surfaces=rest, pieces=pieces)
-    return tuple(changed if k == number - 1 else s for k, s in enumerate(setup.stages))
+    return tuple(changed if k == index else s for k, s in enumerate(setup.stages))
 
 
 def _same(seen: MediumUse, tank: MediumUse) -> bool:
@@ -230,29 +253,21 @@ def march_body(
         stages[k] = replace(stages[k], duration=seconds, until_place=None, until_temp=None)
     if durations is not None:
         stages = stages[: len(durations)]
-    named = {place.name: place for place in body.case.outputs.positions}
-    for stage in stages:
-        if stage.until_place and stage.until_place not in named:
-            named[stage.until_place] = body.case.position(stage.until_place)
-    named.setdefault("core", position("core"))
-    section = body.cut.section
-    places = {
-        name: forms.place(body.cut, coordinates_of(section, at)) for name, at in named.items()
-    }
-    carbon = body.case.steel.steel.composition.C
-    start = body.case.route[0].at or 0.0
+    places = _places(body.case, body.cut)
     return cool(
         body.cut,
-        body.tables,
+        body.begun.tables,
         tuple(stages),
         density=properties.DENSITY,
-        start_temp=start,
-        state=initial_state(body.austenite, carbon, start, body.cut.body.n_node),
-        carbon_pct=carbon,
+        start_temp=body.begun.temp,
+        state=body.begun.state,
+        carbon_pct=body.case.steel.steel.composition.C,
         places=places,
         watched=("core",),
         field_times=np.zeros(1),
         tolerance=TOLERANCE,
+        scale=body.begun.scale,
+        first_number=len(body.case.heating) + 1,
     )
 
 
@@ -285,12 +300,11 @@ def solve(
     SolverFault
         Bath and load do not settle.
     """
-    number = tank_stage(bodies[0].case.route)
-    assert number is not None
-    begin = np.concatenate([[0.0], np.cumsum(FIRST_PIECE * GROWTH ** np.arange(40))])
-    path = BathPath(begin, np.full(len(begin), bath))
+    index = tank_index(bodies[0].case)
+    begin_at = np.concatenate([[0.0], np.cumsum(FIRST_PIECE * GROWTH ** np.arange(40))])
+    path = BathPath(begin_at, np.full(len(begin_at), bath))
     for round_number in range(1, MOST_ROUNDS + 1):
-        given = _give(bodies, path, number - 1, film_factor, round_number)
+        given = _give(bodies, path, index, film_factor, round_number)
         if round_number > 1 and response is None:
             return given
         # One piece ends with the stay itself; beyond it the bath is not known yet.

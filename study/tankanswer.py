@@ -8,7 +8,6 @@ import numpy as np
 from midradius.fem import fluids
 from midradius.fem.fluids import Fluid
 from midradius.fem.media import medium
-from midradius.fem.section import place
 from midradius.study import bath as baths
 from midradius.study import bathcooler, bathloss, heatload, shift, sizing, tanksafety
 from midradius.study.bath import Tank
@@ -282,8 +281,8 @@ def _own(
 
 
 def _core_hv(body: Body, given: Given) -> float:
-    value = worth(body.case, body.austenite, given.part).hardness_hv
-    at = place(body.cut, coordinates_of(body.cut.section, position("core")))
+    value = worth(body.case, body.begun.soaked, given.part).hardness_hv
+    at = body.cut.place(coordinates_of(body.cut.section, position("core")))
     return float((value[at.node] * at.share).sum())
 
 

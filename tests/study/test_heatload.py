@@ -94,7 +94,9 @@ piece_mass = "1000 kg"
     )
     tank = without_losses(Tank(fluid, 8000.0, 1.0, 333.15))
     found = solve(
-        (replace(body, tables=inert),), bath=333.15, response=response_of(tank, 333.15, 0.1)
+        (replace(body, begun=replace(body.begun, tables=inert)),),
+        bath=333.15,
+        response=response_of(tank, 333.15, 0.1),
     )
     assert_allclose(found.part.temp - 273.15, 223.659, rtol=0.0, atol=0.1)
     seen = np.interp(20.0, found.path.time, found.path.temp)
