@@ -38,7 +38,12 @@ KINDS: tuple[FluidKind, ...] = ("oil", "water", "brine", "polymer", "salt")
 AQUEOUS: tuple[FluidKind, ...] = ("water", "brine", "polymer")
 
 SOURCES = (
-    Source("density and heat of mineral oil", "Cragoe, NBS Misc. Publ. 97, 1929", "", "remembered"),
+    Source(
+        "density and heat of mineral oil",
+        "Cragoe 1929, NBS Misc. Publ. 97",
+        "cp, k, density",
+        "remembered",
+    ),
     Source("density and heat of water", "IAPWS formulation, by CoolProp 8.0", "1 atm", "derived"),
     Source("density and heat of brine", "Melinder 2010, by CoolProp 8.0", "10 % NaCl", "derived"),
     Source("density and heat of polymer and salt baths", "fluids.csv", "by row", "remembered"),

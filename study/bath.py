@@ -36,7 +36,9 @@ from midradius.thermo.source import Source
 
 SOURCES = (
     Source("bath of a quench tank", "energy balance", "theta method", "derived"),
-    Source("stacked layers of a weakly mixed bath", "1 to 3 plane layers", "", "estimate"),
+    Source(
+        "stacked layers of a weakly mixed bath", "1 to 3 plane layers", "own judgement", "estimate"
+    ),
 )
 
 BAND = 4.0  # K over which a thermostat opens

@@ -33,7 +33,7 @@ SOURCES = (
     Source("losses of open water tanks", "Engineering ToolBox", "still air 15.6 degC", "read"),
     Source("convection of a bath surface", "McAdams 1954", "hot plate facing up", "remembered"),
     Source("vapour pressure of water", "Alduchov & Eskridge 1996", "Magnus form", "remembered"),
-    Source("heat of evaporation", "IAPWS formulation, by CoolProp 8.0", "", "derived"),
+    Source("heat of evaporation", "IAPWS formulation, by CoolProp 8.0", "saturation", "derived"),
 )
 
 ZERO_DEGC = 273.15

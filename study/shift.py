@@ -33,7 +33,9 @@ from midradius.thermo.errors import InputFault
 from midradius.thermo.properties import DENSITY
 from midradius.thermo.source import Source
 
-SOURCES = (Source("periodic state of a bath", "pulses in a first-order system", "", "derived"),)
+SOURCES = (
+    Source("periodic state of a bath", "pulses in a first-order system", "closed form", "derived"),
+)
 
 SAME_DAY = 0.02  # K between start and end of the periodic day
 MOST_DAYS = 40

@@ -36,7 +36,7 @@ from midradius.thermo.source import Source
 SOURCES = (
     Source("sizing of a quench tank", "energy balance", "periodic day", "derived"),
     Source("propellers by power", "MacKenzie, quench tank columns", "420 rpm", "read"),
-    Source("flow number of a marine propeller", "Q = 0.5 N D^3", "", "remembered"),
+    Source("flow number of a marine propeller", "Q = 0.5 N D^3", "common practice", "remembered"),
     Source("agitation power of quench tanks", "US Steel 1954", "0.005 HP per gallon", "remembered"),
     Source(
         "litres of oil per kg of load", "MacKenzie, sizing columns", "1 gal/lb, 10 l/kg", "read"

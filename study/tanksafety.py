@@ -20,8 +20,18 @@ from midradius.fem.fluids import Fluid
 from midradius.thermo.source import Source
 
 SOURCES = (
-    Source("flash point about 50 K above the bath", "MacKenzie, base oils column", "", "read"),
-    Source("freeboard of 150 mm at the worst level", "engineering estimate", "", "estimate"),
+    Source(
+        "flash point about 50 K above the bath",
+        "MacKenzie, base oils column",
+        "rule of use",
+        "read",
+    ),
+    Source(
+        "freeboard of 150 mm at the worst level",
+        "engineering estimate",
+        "own judgement",
+        "estimate",
+    ),
 )
 
 ZERO_DEGC = 273.15
