@@ -30,10 +30,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from midradius.fem.coupled import NEVER_MARKED
+from midradius.fem.drawing import Drawing
 from midradius.fem.follow import carry, end_slopes, slopes
 from midradius.fem.march import N_MARK
 from midradius.fem.remains import Remains, remains
-from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.errors import InputFault
 from midradius.thermo.kinetics import CARBON_AUSTENITE, COLDEST, KIND, N_SCALE, Tables
 from midradius.thermo.source import Source
@@ -63,12 +64,25 @@ class GivenMesh:
 
 
 @dataclass(frozen=True)
+class Drawn:
+    """What a person sees: the drawing, and the nodes of a profile by depth [m] and name."""
+
+    drawing: Drawing
+    depth: Array
+    node: IntArray
+    label: str
+
+
+@dataclass(frozen=True)
 class Histories:
     """Temperatures of nodes over time.
 
     ``times`` (n_time,) [s] rise; ``samples()`` yields n_time arrays (n_node,) [K], anew
-    at every call. ``names`` (n_node,) where the nodes have them, else empty; ``mesh`` where
-    the file has one. ``text`` says what was read, for a person.
+    at every call. ``text`` says what was read, for a person. Where the file has them:
+    ``names`` (n_node,) of the nodes, ``points`` (n_node, n_dim) [m] of which at least
+    ``least_dim`` coordinates tell a place, ``depth`` (n_node,) [m] below the surface,
+    ``places`` by name, the ``mesh``, what is ``drawn`` and its ``sense`` as sections have
+    it. ``remarks`` say what was left out in reading.
     """
 
     times: Array
@@ -76,16 +90,22 @@ class Histories:
     samples: Samples
     text: str
     names: tuple[str, ...] = ()
+    points: Array | None = None
+    least_dim: int = 0
+    depth: Array | None = None
+    places: Mapping[str, int] = field(default_factory=dict)
     mesh: GivenMesh | None = None
+    drawn: Drawn | None = None
+    sense: str = "nodes"
     remarks: tuple[str, ...] = ()
 
     def called(self, node: int) -> str:
         """A node in words."""
         if self.names:
             return f'"{self.names[node]}"'
-        if self.mesh is None:
+        if self.points is None:
             return f"node {node}"
-        at = ", ".join(f"{1e3 * x:.4g}" for x in self.mesh.points[node])
+        at = ", ".join(f"{1e3 * x:.4g}" for x in self.points[node])
         return f"node {node} at ({at}) mm"
 
 
@@ -95,8 +115,8 @@ class Followed:
 
     ``lines``, ``halved``, ``cubic`` as the module says; ``times`` (n_time,) [s] since the
     start and ``watched`` (n_time, n_watch) [K]; ``first`` and ``last`` (n_node,) [K];
-    ``widest`` (n_node,): index of the sample before the largest fall [K], ``fall``, while
-    the node could transform, -1 where there was none.
+    ``widest`` (n_node,): index of the sample before the largest fall while the node could
+    transform, -1 where there was none; ``high`` and ``fall`` [K]: from where, and how far.
     """
 
     lines: Remains
@@ -108,6 +128,7 @@ class Followed:
     last: Array
     coldest: Array
     widest: IntArray
+    high: Array
     fall: Array
 
 
@@ -202,7 +223,8 @@ def follow(
     start_of_martensite = _martensite_start(state, tables)
     watched = np.empty((last + 1, len(watch)))
     watched[0] = first[watch]
-    widest, fall = np.full(given.n_node, -1), np.zeros(given.n_node)
+    widest = np.full(given.n_node, -1)
+    high, fall = np.zeros(given.n_node), np.zeros(given.n_node)
     at = times - times[0]
     older, old = first, first  # the samples before the present one
     slope = first
@@ -211,7 +233,8 @@ def follow(
         _refuse_strange(given, temp, times[k])
         watched[k] = temp[watch]
         left = lines.states[:, :5].sum(axis=1)
-        _note_fall(old, temp, left, k - 1, (start_of_martensite, tables.top), widest, fall)
+        larger = _larger_fall(old, temp, left, (start_of_martensite, tables.top), fall)
+        widest[larger], high[larger], fall[larger] = k - 1, old[larger], (old - temp)[larger]
         lines.go(at[k - 1], spans[k - 1], (old, temp))
         seen = lines.states[:, COLDEST]
         _refuse_reheated(given, temp, seen, left - before, ae1, times[k])
@@ -243,6 +266,7 @@ def follow(
         last=old,
         coldest=coldest,
         widest=widest,
+        high=high,
         fall=fall,
     )
 
@@ -297,19 +321,12 @@ def _trimmed(given: Histories, starts: float | None) -> tuple[Array, Iterator[Ar
     return kept, rows()
 
 
-def _note_fall(
-    old: Array,
-    temp: Array,
-    present: Array,
-    k: int,
-    within: tuple[float, float],
-    widest: IntArray,
-    fall: Array,
-) -> None:
+def _larger_fall(
+    old: Array, temp: Array, present: Array, within: tuple[float, float], fall: Array
+) -> BoolArray:
+    """Where a node that can still transform falls farther than before."""
     inside = np.minimum(old, within[1]) - np.maximum(temp, within[0])
-    larger = (inside > 0.0) & (old - temp > fall) & (present < 1.0 - TRANSFORMED)
-    widest[larger] = k
-    fall[larger] = (old - temp)[larger]
+    return (inside > 0.0) & (old - temp > fall) & (present < 1.0 - TRANSFORMED)
 
 
 def _refuse_strange(given: Histories, temp: Array, time: float) -> None:

@@ -116,10 +116,10 @@ cli.add_command(tank)
 @click.option("--sources", "with_sources", is_flag=True, help="Print the works it rests on.")
 def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_sources: bool) -> None:
     """Solve CASE and write a result folder."""
-    from midradius.study.casefile import read
+    from midradius.study.casefile import read_any
 
     with _answered():
-        asked = read(case)
+        asked = read_any(case)
         from midradius.study import job
 
         target = folder if folder is not None else _folder_of(case)
@@ -157,10 +157,10 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_source
 @click.argument("case", type=click.Path(path_type=Path))
 def check(case: Path) -> None:
     """Read CASE, name all its faults, and solve nothing."""
-    from midradius.study.casefile import read
+    from midradius.study.casefile import read_any
 
     with _answered():
-        asked = read(case)
+        asked = read_any(case)
     click.echo(f"{_printable(case)}: sound ({asked.title})")
 
 

@@ -9,7 +9,7 @@ from pathlib import Path
 from threading import Thread
 from typing import TYPE_CHECKING
 
-from midradius.study.casefile import CaseFaults, Fault, read
+from midradius.study.casefile import CaseFaults, Fault, read_any
 from midradius.study.caselines import locate
 from midradius.study.folder import ResultFolder, shown
 from midradius.thermo.errors import InputFault
@@ -17,6 +17,7 @@ from midradius.thermo.errors import InputFault
 if TYPE_CHECKING:
     from midradius.study.case import Case
     from midradius.study.result import Result
+    from midradius.study.seriescase import SeriesCase
 
 Tell = Callable[[float, float], None]
 
@@ -29,7 +30,7 @@ _WRITERS = (
 )
 
 
-def solve(case: "Case | Path | str", *, tell: Tell | None = None) -> "Result":
+def solve(case: "Case | SeriesCase | Path | str", *, tell: Tell | None = None) -> "Result":
     """Solve a case, given as such or as the path of its file, and return the result.
 
     Raises
@@ -42,10 +43,13 @@ def solve(case: "Case | Path | str", *, tell: Tell | None = None) -> "Result":
     SolverFault
         The solver gave up.
     """
-    from midradius.study import runner
+    from midradius.study import runner, seriesrun
+    from midradius.study.seriescase import SeriesCase
 
-    asked = read(case) if isinstance(case, Path | str) else case
+    asked = read_any(case) if isinstance(case, Path | str) else case
     try:
+        if isinstance(asked, SeriesCase):
+            return seriesrun.run(asked, tell=tell)
         return runner.run(asked, tell=tell)
     except InputFault as fault:
         if not asked.path:
@@ -75,7 +79,7 @@ def write(result: "Result", folder: Path | str) -> Path:
     return target
 
 
-def run(case: "Case | Path | str", folder: Path | str, *, tell: Tell | None = None) -> "Result":
+def run(case: "Case | SeriesCase | Path | str", folder: Path | str, *, tell: Tell | None = None) -> "Result":
     """Solve a case and write its result folder; refuses a bad folder before solving.
 
     Raises
@@ -83,7 +87,7 @@ def run(case: "Case | Path | str", folder: Path | str, *, tell: Tell | None = No
     CaseFaults, InputFault, SolverFault
         As `solve` and `write`.
     """
-    asked = read(case) if isinstance(case, Path | str) else case
+    asked = read_any(case) if isinstance(case, Path | str) else case
     with _written(Path(folder)) as work:
         with _meanwhile(_load_writers):
             result = solve(asked, tell=tell)

@@ -6,7 +6,7 @@ symmetry allows it); ``view`` draws the whole part from them.
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +14,9 @@ from numpy.typing import NDArray
 from midradius.fem.place import along
 from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.source import RangeNote, Source
+
+if TYPE_CHECKING:
+    from midradius.fem.given import GivenMesh
 
 
 @dataclass(frozen=True)
@@ -184,6 +187,27 @@ class Verdict:
 
 
 @dataclass(frozen=True)
+class Resampling:
+    """What the time between given samples costs.
+
+    Errors of every node (n_node,): of the hardness after and before the tempers [HV], and
+    the largest over the constituents [-]. ``halved_hv`` and ``cubic_hv``: how far hardness
+    before the tempers moves at most without every second sample, and along a cubic.
+    ``largest_fall_K`` is that between two samples while a node could transform.
+    """
+
+    hardness_error_hv: Array
+    as_quenched_error_hv: Array
+    phase_error: Array
+    halved_hv: float
+    cubic_hv: float
+    worst_hardness: str
+    worst_phase: str
+    largest_fall_K: float
+    n_sample: int
+
+
+@dataclass(frozen=True)
 class Result:
     """One run of the main job.
 
@@ -241,3 +265,5 @@ class Result:
     cautions: tuple[str, ...] = ()
     inputs: Mapping[str, object] = field(default_factory=dict)
     case_text: str = ""
+    resampling: Resampling | None = None
+    mesh: "GivenMesh | None" = None

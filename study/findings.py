@@ -1,0 +1,117 @@
+"""What a run found, in the units of a result: of every node, and at one place."""
+
+from collections.abc import Mapping
+from typing import TypedDict
+
+import numpy as np
+
+from midradius.fem.media import ZERO_DEGC
+from midradius.fem.remains import Remains
+from midradius.fem.section import Place
+from midradius.study.case import Asked
+from midradius.study.result import Position
+from midradius.study.worth import Worth
+from midradius.thermo import conversion, diffusional, equilibrium, martensite, network
+from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.austenite import Austenite
+from midradius.thermo.phases import PHASE_NAMES
+
+
+class Fields(TypedDict):
+    """The fields of a `Result` that belong to nodes at the end."""
+
+    phases: Array
+    hardness_hv: Array
+    hardness_as_quenched_hv: Array
+    yield_mpa: Array
+    time_800_500_s: Array
+    rate_700_K_per_s: Array
+    austenite_carbon_pct: Array
+    pearlite_formed_at_degC: Array
+    ferrite_grain_um: Array
+    pearlite_spacing_um: Array
+    cementite_film_um: Array
+    cementite_network: IntArray
+    impact_transition_degC: Array
+
+
+def fields(left: Remains, value: Worth) -> Fields:
+    """What is known of every node."""
+    return Fields(
+        phases=value.phases,
+        hardness_hv=value.hardness_hv,
+        hardness_as_quenched_hv=value.as_quenched_hv,
+        yield_mpa=value.yield_mpa,
+        time_800_500_s=left.time_800_500,
+        rate_700_K_per_s=left.rate_700,
+        austenite_carbon_pct=left.carbon_austenite_pct,
+        pearlite_formed_at_degC=left.pearlite_temp - ZERO_DEGC,
+        ferrite_grain_um=1e6 * value.scales.ferrite_grain,
+        pearlite_spacing_um=1e6 * value.scales.pearlite_spacing,
+        cementite_film_um=_film_um(value),
+        cementite_network=value.scales.network,
+        impact_transition_degC=value.scales.impact_transition - ZERO_DEGC,
+    )
+
+
+def position(
+    name: str,
+    left: Remains,
+    value: Worth,
+    at: Place,
+    *,
+    time_error_hv: float,
+    grid_error_hv: float,
+) -> Position:
+    """What is known of one place."""
+
+    def here(values: Array) -> float:
+        return float((values[at.node] * at.share).sum())
+
+    hv, sizes, film = here(value.hardness_hv), value.scales, here(_film_um(value))
+    return Position(
+        name=name,
+        depth_mm=at.depth * 1e3,
+        coordinates_mm=tuple(each * 1e3 for each in at.coordinates),
+        hardness_hv=hv,
+        hardness_hrc=_known(float(conversion.hv_to_hrc(np.array(hv)))),
+        hardness_hb=_known(float(conversion.hv_to_hb(np.array(hv)))),
+        hardness_as_quenched_hv=here(value.as_quenched_hv),
+        tensile_mpa=_known(float(conversion.hv_to_uts(np.array(hv)))),
+        yield_mpa=_known(here(value.yield_mpa)),
+        phases={phase: here(value.phases[k]) for k, phase in enumerate(PHASE_NAMES)},
+        time_800_500_s=_known(here(left.time_800_500)),
+        rate_700_K_per_s=_known(here(left.rate_700)),
+        austenite_carbon_pct=here(left.carbon_austenite_pct),
+        ferrite_grain_um=_known(1e6 * here(sizes.ferrite_grain)),
+        pearlite_spacing_um=_known(1e6 * here(sizes.pearlite_spacing)),
+        cementite_film_um=_known(film),
+        cementite_network=(
+            network.NAMES[int(network.network(np.array(1e-6 * film)))] if film == film else None
+        ),
+        impact_transition_degC=_known(here(sizes.impact_transition) - ZERO_DEGC),
+        hardness_time_error_hv=time_error_hv,
+        hardness_grid_error_hv=grid_error_hv,
+    )
+
+
+def critical_degC(case: Asked, left: Austenite) -> Mapping[str, float]:
+    """The critical temperatures of the steel and of its austenite [degC]."""
+    eq = equilibrium.equilibrium(case.steel.steel.composition)
+    rich = np.isfinite(eq.acm) and eq.acm > eq.ae1
+    start = float(martensite.start(left.composition, left.carbon_pct))
+    return {
+        "Acm" if rich else "Ae3": (eq.acm if rich else eq.ae3) - ZERO_DEGC,
+        "Ae1": eq.ae1 - ZERO_DEGC,
+        "Bs": diffusional.bainite_start(left.composition) - ZERO_DEGC,
+        "Ms": start + (case.steel.shifts.martensite_start - ZERO_DEGC),
+    }
+
+
+def _film_um(value: Worth) -> Array:
+    film = 1e6 * value.scales.cementite_film
+    return film if value.scales.hypereutectoid else np.full_like(film, np.nan)
+
+
+def _known(value: float) -> float | None:
+    return value if np.isfinite(value) else None
