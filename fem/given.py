@@ -9,8 +9,10 @@ Model
 -----
 What straight lines between samples cost falls with the square of the time between them,
 so that a third of what leaving out every second sample changes is the error left
-(Richardson). Where a curve bends so fast that this does not hold yet, the difference to
-the cubic tells it as well; the larger of the two is stated.
+(Richardson); so it is for constituents. Hardness also follows the cooling rate at 700 degC,
+the slope of a line, whose error falls with the time itself: all that the leaving out changes
+is stated. Where a curve bends so fast that neither holds yet, the difference to the cubic
+tells it as well; the larger of the two is taken.
 
 Source
 ------
@@ -55,12 +57,13 @@ Samples = Callable[[], Iterator[Array]]
 @dataclass(frozen=True)
 class GivenMesh:
     """The mesh of a file: ``points`` (n_node, 3) [m]; cells by meshio's names of kinds, in
-    the order of the file; the arrays of its last sample as they were."""
+    the order of the file; arrays of its last sample as they were, those of cells (n_cell,
+    ...) over all blocks."""
 
     points: Array
     cells: tuple[tuple[str, IntArray], ...]
     point_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
-    cell_data: Mapping[str, list[NDArray[np.generic]]] = field(default_factory=dict)
+    cell_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)

@@ -69,7 +69,8 @@ class ExodusFile:
         elif magic in (b"CDF\x01", b"CDF\x02"):
             from scipy.io import netcdf_file
 
-            self._file = netcdf_file(path, "r", mmap=False)
+            # mapped: a series of many steps is not read to get at one of them
+            self._file = netcdf_file(path, "r", mmap=True)
             self._variables = self._file.variables
         else:
             raise refuse(
@@ -82,6 +83,7 @@ class ExodusFile:
         return self
 
     def __exit__(self, *_: object) -> None:
+        self._variables = {}  # what still points into a mapped file would keep it open
         self._file.close()
 
     def names(self) -> list[str]:

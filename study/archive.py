@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from midradius.fem.fields import write_series
+from midradius.fem.givenfields import write_on_mesh
 from midradius.fem.record import Quantity, provenance, write_record
 from midradius.fem.volumes import EXTENT
 from midradius.study.result import Result
@@ -25,9 +26,17 @@ CODES = "cementite network: " + ", ".join(f"{k} {name}" for k, name in enumerate
 _EXTENT: Mapping[str, str] = EXTENT
 
 
-def write_fields(result: Result, folder: Path) -> Path:
-    """Write the PVD series into an existing folder; returns the index's path."""
+def write_fields(result: Result, folder: Path) -> Path | None:
+    """Write the PVD series into an existing folder; returns the index's path.
+
+    Temperatures that came on a mesh leave one file on that mesh; those of thermocouples,
+    which have no points, leave none.
+    """
     node = result.view.node
+    if result.mesh:
+        node = np.arange(result.n_node)
+    elif not len(node):
+        return None
     at_end = {
         f"{name}_fraction": values[node]
         for name, values in zip(PHASE_NAMES, result.phases, strict=True)
@@ -56,6 +65,10 @@ def write_fields(result: Result, folder: Path) -> Path:
     if np.isfinite(result.cementite_film_um).any():
         at_end["cementite_film_um"] = result.cementite_film_um[node]
         at_end["cementite_network_code"] = result.cementite_network[node].astype(np.float64)
+    if result.resampling:
+        at_end["hardness_resampling_error_HV"] = result.resampling.hardness_error_hv[node]
+    if result.mesh:
+        return write_on_mesh(folder, result.mesh, at_end)
     return write_series(
         folder,
         points_mm=result.view.points_mm,
@@ -172,6 +185,13 @@ def _numbers(result: Result) -> dict[str, Quantity]:
             data[f"given/{_plain(name)}"] = many(given, "1", "array of the mesh file, as it was")
     for name, temp in r.critical_degC.items():
         data[f"critical/{_plain(name)}"] = one(temp, "degC", f"critical temperature {name}")
+    if r.resampling:
+        data["errors/resampling_hardness"] = many(
+            r.resampling.hardness_error_hv, "HV", "hardness error of the given samples"
+        )
+        data["errors/resampling_phase"] = many(
+            r.resampling.phase_error, "1", "largest error of a phase fraction, given samples"
+        )
     for key, units, long_name in _POSITION_COLUMNS:
         values = [getattr(p, key) for p in r.positions]
         column = np.array([np.nan if v is None else v for v in values], dtype=np.float64)

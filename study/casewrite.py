@@ -21,36 +21,72 @@ from .case import (
     position,
     with_unit,
 )
+from .seriescase import GivenInput, SeriesCase
 from .steelfile import FileSteel
 from .tankwrite import tank_lines
 
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 
 
-def dumps(case: Case) -> str:
+def dumps(case: Case | SeriesCase) -> str:
     """The TOML text of a case, every quantity exact to the last digit.
 
     A film curve inside the folder of ``case.path`` is written relative to it.
     """
     folder = case.path.parent if case.path else Path()
     lines = [f"title = {_quoted(case.title)}", "", "[steel]", *_steel(case.steel, folder)]
-    lines += ["", "[section]", f'form = "{case.section.form}"']
-    for name in keys.ALL_DIMENSIONS:
-        size = getattr(case.section, name)
-        if size is not None:
-            lines.append(f"{name} = {_length(size)}")
-    if case.section.bore_medium:
-        lines.append(f"bore_medium = {_inline(case.section.bore_medium, folder)}")
-    if case.section.emissivity != SectionInput("slab").emissivity:
-        lines.append(f"emissivity = {case.section.emissivity!r}")
+    if isinstance(case, SeriesCase):
+        lines += ["", "[temperatures]", *_temperatures(case.temperatures, folder)]
+    else:
+        lines += ["", "[section]", *_section(case.section, folder)]
     for stage in case.route:
         lines += ["", "[[route]]", *_stage(stage, folder)]
     for need in case.needs:
         lines += ["", "[[need]]", *_need(need)]
+    if isinstance(case, SeriesCase):
+        points = ", ".join(_point(place) for place in case.outputs.positions)
+        lines += ["", "[output]", f"positions = [{points}]"] if points else []
+        return "\n".join(lines) + "\n"
     lines += ["", "[output]", *_outputs(case.outputs)]
     lines += ["", "[grid]", *_grid(case.grid)]
     lines += tank_lines(case.load, case.tank, case.shift, folder)
     return "\n".join(lines) + "\n"
+
+
+def _section(section: SectionInput, folder: Path) -> list[str]:
+    lines = [f'form = "{section.form}"']
+    for name in keys.ALL_DIMENSIONS:
+        size = getattr(section, name)
+        if size is not None:
+            lines.append(f"{name} = {_length(size)}")
+    if section.bore_medium:
+        lines.append(f"bore_medium = {_inline(section.bore_medium, folder)}")
+    if section.emissivity != SectionInput("slab").emissivity:
+        lines.append(f"emissivity = {section.emissivity!r}")
+    return lines
+
+
+def _temperatures(given: GivenInput, folder: Path) -> list[str]:
+    lines = [f"file = {_quoted(_beside(given.file, folder))}"]
+    for name in ("time_unit", "temperature_unit", "length_unit", "array"):
+        value = getattr(given, name)
+        if value is not None:
+            lines.append(f"{name} = {_quoted(value)}")
+    if given.time_column is not None:
+        places = ", ".join(f"{_key(name)} = {_quoted(at)}" for name, at in given.columns.items())
+        more = f", places = {{ {places} }}" if places else ""
+        lines.append(f"columns = {{ time = {_quoted(given.time_column)}{more} }}")
+    if given.decimal != "point":
+        lines.append(f"decimal = {_quoted(given.decimal)}")
+    if given.starts_at is not None:
+        lines.append(f'starts_at = "{show(given.starts_at, "duration")}"')
+    return lines
+
+
+def _point(place: PositionInput) -> str:
+    if place.node is not None:
+        return f"{{ name = {_quoted(place.name)}, node = {place.node} }}"
+    return _quoted(place.name) if place.coordinates is None else _place(place)
 
 
 def _steel(steel: SteelInput, folder: Path) -> list[str]:

@@ -19,6 +19,8 @@ if TYPE_CHECKING:
     from midradius.study.result import Result
     from midradius.study.seriescase import SeriesCase
 
+    AnyCase = Case | SeriesCase | Path | str
+
 Tell = Callable[[float, float], None]
 
 _WRITERS = (
@@ -30,7 +32,7 @@ _WRITERS = (
 )
 
 
-def solve(case: "Case | SeriesCase | Path | str", *, tell: Tell | None = None) -> "Result":
+def solve(case: "AnyCase", *, tell: Tell | None = None) -> "Result":
     """Solve a case, given as such or as the path of its file, and return the result.
 
     Raises
@@ -79,7 +81,7 @@ def write(result: "Result", folder: Path | str) -> Path:
     return target
 
 
-def run(case: "Case | SeriesCase | Path | str", folder: Path | str, *, tell: Tell | None = None) -> "Result":
+def run(case: "AnyCase", folder: Path | str, *, tell: Tell | None = None) -> "Result":
     """Solve a case and write its result folder; refuses a bad folder before solving.
 
     Raises

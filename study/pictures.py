@@ -78,12 +78,15 @@ _LEAST_SHARE = 0.005  # of a constituent: less is thinner than a line
 
 
 def write_pictures(result: Result, folder: Path) -> tuple[Path, ...]:
-    """Draw the three pictures into an existing folder and return their paths."""
-    drawn = (
-        (COOLING, cooling(result)),
-        (PROFILE, profile(result)),
-        (SECTION, section(result)),
-    )
+    """Draw the pictures into an existing folder and return their paths.
+
+    Temperatures from elsewhere may have no profile and no section to draw.
+    """
+    drawn = [(COOLING, cooling(result))]
+    if len(result.profile.node):
+        drawn.append((PROFILE, profile(result)))
+    if len(result.view.quads) + len(result.view.triangles):
+        drawn.append((SECTION, section(result)))
     for name, figure in drawn:
         _save(figure, folder / name)
     return tuple(folder / name for name, _ in drawn)
@@ -334,6 +337,9 @@ def _triangles(view: SectionView) -> IntArray:
 
 def _place_of(result: Result, coordinates_mm: tuple[float, ...]) -> tuple[float, float]:
     """Where the drawing shows a position: along a radius of a disc, at mid-height of a slab."""
+    if len(coordinates_mm) == 3:  # of a mesh that may lie in any plane
+        first, second = _plane(result.view.points_mm)
+        return coordinates_mm[first], coordinates_mm[second]
     if len(coordinates_mm) > 1:
         return coordinates_mm[0], coordinates_mm[1]
     heights = result.view.points_mm[:, _plane(result.view.points_mm)[1]]

@@ -14,6 +14,7 @@ from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS
 from midradius.thermo.units import Kind, example, pattern, show
 
 from . import casekeys as keys
+from . import seriescase as series
 from .case import TRADE_TERMS, ZONES
 from .tankschema import blocks
 
@@ -31,13 +32,21 @@ def document() -> Schema:
             "title": _text("What the part is called.", keys.LONGEST_TITLE),
             "steel": _steel(),
             "section": _section(),
+            "temperatures": _temperatures(),
             "route": _route(),
             "need": _needs(),
-            "output": _output(),
+            "output": {"type": "object", "description": "Where and when the answer is wanted."},
             "grid": _grid(),
             **blocks(),
         },
-        "required": ["steel", "section", "route"],
+        "required": ["steel", "route"],
+        "oneOf": [
+            {
+                "properties": {"output": _output(), "route": {"minItems": 2}},
+                "required": ["section"],
+            },
+            {"properties": {"output": _places_of_file()}, "required": ["temperatures"]},
+        ],
         "additionalProperties": False,
         "definitions": {
             "medium": {
@@ -114,6 +123,36 @@ def _section() -> Schema:
     }
 
 
+def _temperatures() -> Schema:
+    """Histories from elsewhere; which keys a kind of file takes, the reader says."""
+
+    def unit(known: Mapping[str, object], meaning: str) -> Schema:
+        return {"enum": list(known), "description": meaning}
+
+    columns = {
+        "time": _text("Heading of the times.", keys.LONGEST_TITLE),
+        "places": {
+            "type": "object",
+            "description": "Heading of the temperatures by name of the place.",
+        },
+    }
+    return _table(
+        {
+            "file": _text(f"Beside the case file: {', '.join(series.KINDS)}.", 1000),
+            "time_unit": unit(series.TIME_UNITS, "Of the times in the file."),
+            "temperature_unit": unit(series.TEMPERATURE_UNITS, "Of the temperatures."),
+            "length_unit": unit(series.LENGTH_UNITS, "Of the points of a mesh."),
+            "array": _text("Name of the temperature in a mesh file.", keys.LONGEST_TITLE),
+            "columns": _table(columns, ("time",)),
+            "decimal": {"enum": list(series.DECIMALS), "description": "Decimal sign of a CSV."},
+            "starts_at": _quantity(
+                "duration", keys.FIELD_TIME_RANGE, "Time in the file at which the soak ends."
+            ),
+        },
+        ("file",),
+    )
+
+
 def _route() -> Schema:
     time = _quantity("duration", keys.STAGE_TIME_RANGE, "How long the stage lasts.")
     at = _quantity("temperature", keys.SOAK_RANGE, "Furnace temperature, above Ae1.")
@@ -156,7 +195,7 @@ def _route() -> Schema:
     return {
         "type": "array",
         "description": "What heats, one soak, the stages that cool in their order, tempers last.",
-        "minItems": 2,
+        "minItems": 1,
         "maxItems": keys.STAGES_MOST,
         "items": {
             "type": "object",
@@ -250,6 +289,32 @@ def _output() -> Schema:
         },
         (),
     ) | {"not": {"required": ["fields", "times"]}}
+
+
+def _places_of_file() -> Schema:
+    """``[output]`` beside temperatures from elsewhere."""
+    reach = (-keys.DIMENSION_RANGE[1], keys.DIMENSION_RANGE[1])
+    along = _quantity("length", reach, "Coordinate.")
+    point = _table(
+        {
+            "name": _text("A name of your own.", keys.LONGEST_NAME),
+            "node": {"type": "integer", "minimum": 0, "description": "Of the mesh, from 0."},
+            "at": {"type": "array", "items": along, "minItems": 1, "maxItems": 3},
+        },
+        ("name",),
+    ) | {"oneOf": [{"required": ["node"]}, {"required": ["at"]}]}
+    place = _text("A place that [temperatures] names.", keys.LONGEST_NAME)
+    return _table(
+        {
+            "positions": {
+                "type": "array",
+                "items": {"anyOf": [place, point]},
+                "minItems": 1,
+                "maxItems": keys.PLACES_MOST,
+            }
+        },
+        (),
+    )
 
 
 def _grid() -> Schema:

@@ -100,21 +100,21 @@ def run(case: SeriesCase, *, tell: Tell | None = None) -> Result:
 
 
 def _error(value: float, halved: float, cubic: float) -> float:
-    return max(HALVED * abs(value - halved), abs(value - cubic))
+    return max(abs(value - halved), abs(value - cubic))
 
 
 def _resampling(
     given: Histories, found: Followed, lines: Worth, halved: Worth, cubic: Worth
 ) -> Resampling:
-    def error(what: Callable[[Worth], Array]) -> Array:
+    def error(what: Callable[[Worth], Array], factor: float) -> Array:
         value = what(lines)
-        return np.fmax(HALVED * np.abs(value - what(halved)), np.abs(value - what(cubic)))
+        return np.fmax(factor * np.abs(value - what(halved)), np.abs(value - what(cubic)))
 
-    before = error(lambda value: value.as_quenched_hv)
-    phases = error(lambda value: value.phases).max(axis=0)
+    before = error(lambda value: value.as_quenched_hv, 1.0)
+    phases = error(lambda value: value.phases, HALVED).max(axis=0)
     worst, worst_phase = int(np.argmax(before)), int(np.argmax(phases))
     return Resampling(
-        hardness_error_hv=error(lambda value: value.hardness_hv),
+        hardness_error_hv=error(lambda value: value.hardness_hv, 1.0),
         as_quenched_error_hv=before,
         phase_error=phases,
         halved_hv=float(np.abs(lines.as_quenched_hv - halved.as_quenched_hv).max()),
@@ -189,7 +189,7 @@ def _result(
         title=case.title,
         steel=case.steel.steel.name,
         composition_pct={k: v for k, v in vars(case.steel.steel.composition).items() if v},
-        section=f"none: {given.text}",
+        section=given.text,
         sense=given.sense,
         points_mm=points * 1e3,
         volume=np.full(given.n_node, np.nan),

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any, Literal
 from midradius.study.lengthtable import lengths, remark
 from midradius.study.needs import shown
 from midradius.study.result import Position, Result, StageRecord, Verdict
+from midradius.study.seriestext import resampling_document, resampling_rows
 from midradius.study.soaktable import soaks, uneven
 from midradius.thermo.phases import PHASE_NAMES
 
@@ -102,6 +103,7 @@ def document(result: Result) -> dict[str, Any]:
         "heat_balance_relative": result.heat_balance_relative,
         "time_error_K": result.time_error_K,
         "grid_error_K": result.grid_error_K,
+        "resampling": resampling_document(result.resampling),
         "needs": [asdict(verdict) for verdict in result.verdicts],
         "positions": [_position(p) for p in result.positions],
         "stages": [asdict(stage) for stage in result.stages],
@@ -213,6 +215,9 @@ def _head(result: Result) -> list[tuple[str, str]]:
         ("soak", result.soak),
         ("grid", f"{result.n_node} nodes, {result.n_step} time steps"),
     ]
+    if result.resampling:
+        rows[-3] = ("taken from", result.section)
+        rows[-1] = ("nodes", f"{result.n_node}, {result.resampling.n_sample} samples each")
     return [(key, value) for key, value in rows if value]
 
 
@@ -237,7 +242,7 @@ def _properties(result: Result) -> "Table":
     rows = [
         [
             p.name,
-            f"{p.depth_mm:.1f}",
+            _number(p.depth_mm, 1),
             f"{p.hardness_hv:.0f}",
             _number(p.hardness_hrc, 1),
             _number(p.hardness_hb, 0),
@@ -281,15 +286,18 @@ def _phases(result: Result) -> "Table":
 def _honesty(result: Result) -> list[tuple[str, str]]:
     remembered = sum(source.status == "remembered" for source in result.sources)
     estimated = sum(source.status == "estimate" for source in result.sources)
-    rows = [
-        ("heat balance closes to", f"{_closure(result)} of the heat given"),
-        ("temperature, time steps", _error(result.time_error_K, "K")),
-        ("temperature, grid", _error(result.grid_error_K, "K")),
-    ]
-    for label, key in (
-        ("hardness, time steps", "hardness_time_error_hv"),
-        ("hardness, grid", "hardness_grid_error_hv"),
-    ):
+    keys = {"hardness, time steps": "hardness_time_error_hv"}
+    if result.resampling:
+        rows = resampling_rows(result.resampling)
+        keys = {"hardness, samples": "hardness_time_error_hv"}
+    else:
+        keys["hardness, grid"] = "hardness_grid_error_hv"
+        rows = [
+            ("heat balance closes to", f"{_closure(result)} of the heat given"),
+            ("temperature, time steps", _error(result.time_error_K, "K")),
+            ("temperature, grid", _error(result.grid_error_K, "K")),
+        ]
+    for label, key in keys.items():
         known = [(getattr(p, key), p.name) for p in result.positions]
         known = [(error, name) for error, name in known if math.isfinite(error)]
         worst = max(known, default=(math.nan, ""))

@@ -40,9 +40,12 @@ def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
     """Write the tables into an existing folder and return their paths.
 
     ``needs.csv`` is written only where the case asks for something, ``heating.csv`` only
-    where the part was heated from cold.
+    where the part was heated from cold, ``profile.csv`` only where there is a line from
+    surface to core.
     """
-    tables = {HISTORIES: _histories, PROFILE: _profile, POSITIONS: _positions}
+    tables = {HISTORIES: _histories, POSITIONS: _positions}
+    if len(result.profile.node):  # a file of temperatures may have none
+        tables[PROFILE] = _profile
     if result.verdicts:
         tables[NEEDS] = _needs
     if result.heating is not None:
