@@ -9,7 +9,8 @@ from midradius.fem.media import ZERO_DEGC
 from midradius.fem.remains import Remains
 from midradius.fem.section import Place
 from midradius.study.case import Asked
-from midradius.study.result import Position
+from midradius.study.result import Position, SoakFields
+from midradius.study.soaktext import soak_fields
 from midradius.study.worth import Worth
 from midradius.thermo import conversion, diffusional, equilibrium, martensite, network
 from midradius.thermo.arrays import Array, IntArray
@@ -33,6 +34,7 @@ class Fields(TypedDict):
     cementite_film_um: Array
     cementite_network: IntArray
     impact_transition_degC: Array
+    soaked: SoakFields
 
 
 def fields(left: Remains, value: Worth) -> Fields:
@@ -51,7 +53,14 @@ def fields(left: Remains, value: Worth) -> Fields:
         cementite_film_um=_film_um(value),
         cementite_network=value.scales.network,
         impact_transition_degC=value.scales.impact_transition - ZERO_DEGC,
+        soaked=soak_fields(value.soaked),
     )
+
+
+def here(values: Array, at: Place) -> float:
+    """A field at a place."""
+    used = at.share != 0.0  # a neighbour that does not count may have no value
+    return float((values[at.node[used]] * at.share[used]).sum())
 
 
 def position(
@@ -65,10 +74,11 @@ def position(
 ) -> Position:
     """What is known of one place."""
 
-    def here(values: Array) -> float:
-        return float((values[at.node] * at.share).sum())
+    def read(values: Array) -> float:
+        return here(values, at)
 
-    hv, sizes, film = here(value.hardness_hv), value.scales, here(_film_um(value))
+    hv, sizes, soaked = read(value.hardness_hv), value.scales, value.soaked
+    film = read(_film_um(value))
     return Position(
         name=name,
         depth_mm=at.depth * 1e3,
@@ -76,20 +86,26 @@ def position(
         hardness_hv=hv,
         hardness_hrc=_known(float(conversion.hv_to_hrc(np.array(hv)))),
         hardness_hb=_known(float(conversion.hv_to_hb(np.array(hv)))),
-        hardness_as_quenched_hv=here(value.as_quenched_hv),
+        hardness_as_quenched_hv=read(value.as_quenched_hv),
         tensile_mpa=_known(float(conversion.hv_to_uts(np.array(hv)))),
-        yield_mpa=_known(here(value.yield_mpa)),
-        phases={phase: here(value.phases[k]) for k, phase in enumerate(PHASE_NAMES)},
-        time_800_500_s=_known(here(left.time_800_500)),
-        rate_700_K_per_s=_known(here(left.rate_700)),
-        austenite_carbon_pct=here(left.carbon_austenite_pct),
-        ferrite_grain_um=_known(1e6 * here(sizes.ferrite_grain)),
-        pearlite_spacing_um=_known(1e6 * here(sizes.pearlite_spacing)),
+        yield_mpa=_known(read(value.yield_mpa)),
+        phases={phase: read(value.phases[k]) for k, phase in enumerate(PHASE_NAMES)},
+        time_800_500_s=_known(read(left.time_800_500)),
+        rate_700_K_per_s=_known(read(left.rate_700)),
+        austenite_carbon_pct=read(left.carbon_austenite_pct),
+        ferrite_grain_um=_known(1e6 * read(sizes.ferrite_grain)),
+        pearlite_spacing_um=_known(1e6 * read(sizes.pearlite_spacing)),
         cementite_film_um=_known(film),
         cementite_network=(
             network.NAMES[int(network.network(np.array(1e-6 * film)))] if film == film else None
         ),
-        impact_transition_degC=_known(here(sizes.impact_transition) - ZERO_DEGC),
+        impact_transition_degC=_known(read(sizes.impact_transition) - ZERO_DEGC),
+        soak_degC=read(soaked.hottest) - ZERO_DEGC,
+        carbon_in_solution_pct=read(soaked.carbon_pct),
+        undissolved_ferrite=read(soaked.ferrite),
+        undissolved_cementite=read(soaked.cementite),
+        austenite_grain_astm=_known(read(soaked.grain_astm)),
+        austenite_grain_um=_known(1e6 * read(soaked.grain_mean_intercept)),
         hardness_time_error_hv=time_error_hv,
         hardness_grid_error_hv=grid_error_hv,
     )

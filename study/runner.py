@@ -15,6 +15,7 @@ from midradius.fem.section import Section
 from midradius.study.basis import inputs_of, notes_of, sources_of
 from midradius.study.begin import Begun, begin
 from midradius.study.case import Case
+from midradius.study.findings import critical_degC, fields, here, position
 from midradius.study.meshrun import first_level, mesh_notes, mesh_statements, with_grid
 from midradius.study.needs import judge
 from midradius.study.result import (
@@ -28,16 +29,14 @@ from midradius.study.setup import Setup, coordinates_of, prepare
 from midradius.study.soaktext import (
     heating_record,
     hottest_kind,
-    soak_fields,
     soak_text,
     soak_warnings,
     stage_record,
 )
 from midradius.study.tanksetup import in_bath
 from midradius.study.worth import Worth, tempers_of, worth
-from midradius.thermo import conversion, diffusional, equilibrium, martensite, network, properties
+from midradius.thermo import properties
 from midradius.thermo.arrays import Array
-from midradius.thermo.phases import PHASE_NAMES
 
 # By dimension: error of one step against the asked accuracy of the run, and the
 # grid error against it above which the run is repeated on twice the cells. In two
@@ -234,7 +233,6 @@ def _result(
     positions = tuple(
         _position(name, main, at_fine[name], rough, sharp, at_coarse[name]) for name in case.watched
     )
-    eq = equilibrium.equilibrium(composition)
     left = hottest_kind(main.worth.soaked)
     return Result(
         title=case.title,
@@ -247,20 +245,7 @@ def _result(
         view=SectionView(view.points * 1e3, view.cells, view.node, view.point_data, view.cell_data),
         times_s=history.times,
         temp_degC=history.field - ZERO_DEGC,
-        phases=main.worth.phases,
-        hardness_hv=main.worth.hardness_hv,
-        hardness_as_quenched_hv=main.worth.as_quenched_hv,
-        yield_mpa=main.worth.yield_mpa,
-        time_800_500_s=history.time_800_500,
-        rate_700_K_per_s=history.rate_700,
-        austenite_carbon_pct=history.carbon_austenite_pct,
-        pearlite_formed_at_degC=history.pearlite_temp - ZERO_DEGC,
-        ferrite_grain_um=1e6 * main.worth.scales.ferrite_grain,
-        pearlite_spacing_um=1e6 * main.worth.scales.pearlite_spacing,
-        cementite_film_um=_film_um(main.worth),
-        cementite_network=main.worth.scales.network,
-        impact_transition_degC=main.worth.scales.impact_transition - ZERO_DEGC,
-        soaked=soak_fields(main.worth.soaked),
+        **fields(history, main.worth),
         history_times_s=history.step_times,
         history_temp_degC=history.watch_temp - ZERO_DEGC,
         positions=positions,
@@ -270,16 +255,7 @@ def _result(
             for stage, went in zip(setup.stages, history.stages, strict=True)
         ),
         tempers=tuple(TemperRecord(t.temp - ZERO_DEGC, t.time) for t in tempers_of(case)),
-        critical_degC={
-            ("Acm" if np.isfinite(eq.acm) and eq.acm > eq.ae1 else "Ae3"): (
-                eq.acm if np.isfinite(eq.acm) and eq.acm > eq.ae1 else eq.ae3
-            )
-            - ZERO_DEGC,
-            "Ae1": eq.ae1 - ZERO_DEGC,
-            "Bs": diffusional.bainite_start(left.composition) - ZERO_DEGC,
-            "Ms": float(martensite.start(left.composition, left.carbon_pct))
-            + (case.steel.shifts.martensite_start - ZERO_DEGC),
-        },
+        critical_degC=critical_degC(case, left),
         soak=soak_text(case, main.begun),
         heat_given_J_per_kg=history.heat_given / mass,
         heat_extent=extent,
@@ -312,54 +288,17 @@ def _result(
 def _position(
     name: str, main: _Attempt, at: Place, rough: _Attempt, sharp: _Attempt, at_coarse: Place
 ) -> Position:
-    def here(values: Array, place: Place) -> float:
-        used = place.share != 0.0  # a neighbour that does not count may have no value
-        return float((values[place.node[used]] * place.share[used]).sum())
-
-    hv = here(main.worth.hardness_hv, at)
-    hv_rough = here(rough.worth.hardness_hv, at_coarse)
-    hv_sharp = here(sharp.worth.hardness_hv, at_coarse)
-    history, sizes, soaked = main.history, main.worth.scales, main.worth.soaked
-    film = here(_film_um(main.worth), at)
-    phases = {phase: here(main.worth.phases[k], at) for k, phase in enumerate(PHASE_NAMES)}
-    return Position(
-        name=name,
-        depth_mm=at.depth * 1e3,
-        coordinates_mm=tuple(value * 1e3 for value in at.coordinates),
-        hardness_hv=hv,
-        hardness_hrc=_known(float(conversion.hv_to_hrc(np.array(hv)))),
-        hardness_hb=_known(float(conversion.hv_to_hb(np.array(hv)))),
-        hardness_as_quenched_hv=here(main.worth.as_quenched_hv, at),
-        tensile_mpa=_known(float(conversion.hv_to_uts(np.array(hv)))),
-        yield_mpa=_known(here(main.worth.yield_mpa, at)),
-        phases=phases,
-        time_800_500_s=_known(here(history.time_800_500, at)),
-        rate_700_K_per_s=_known(here(history.rate_700, at)),
-        austenite_carbon_pct=here(history.carbon_austenite_pct, at),
-        ferrite_grain_um=_known(1e6 * here(sizes.ferrite_grain, at)),
-        pearlite_spacing_um=_known(1e6 * here(sizes.pearlite_spacing, at)),
-        cementite_film_um=_known(film),
-        cementite_network=(
-            network.NAMES[int(network.network(np.array(1e-6 * film)))] if film == film else None
-        ),
-        impact_transition_degC=_known(here(sizes.impact_transition, at) - ZERO_DEGC),
-        soak_degC=here(soaked.hottest, at) - ZERO_DEGC,
-        carbon_in_solution_pct=here(soaked.carbon_pct, at),
-        undissolved_ferrite=here(soaked.ferrite, at),
-        undissolved_cementite=here(soaked.cementite, at),
-        austenite_grain_astm=_known(here(soaked.grain_astm, at)),
-        austenite_grain_um=_known(1e6 * here(soaked.grain_mean_intercept, at)),
-        hardness_time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
-        hardness_grid_error_hv=(
+    hv, hv_rough, hv_sharp = (
+        here(each.worth.hardness_hv, place)
+        for each, place in ((main, at), (rough, at_coarse), (sharp, at_coarse))
+    )
+    return position(
+        name,
+        main.history,
+        main.worth,
+        at,
+        time_error_hv=TIME_FACTOR * abs(hv_sharp - hv_rough),
+        grid_error_hv=(
             GRID_FACTOR * abs(hv - hv_rough) if rough.cut is not main.cut else float("nan")
         ),
     )
-
-
-def _film_um(value: Worth) -> Array:
-    film = 1e6 * value.scales.cementite_film
-    return film if value.scales.hypereutectoid else np.full_like(film, np.nan)
-
-
-def _known(value: float) -> float | None:
-    return value if np.isfinite(value) else None

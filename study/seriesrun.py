@@ -16,6 +16,7 @@ from midradius.fem.media import ZERO_DEGC
 from midradius.fem.remains import Remains
 from midradius.fem.section import Place
 from midradius.study.basis import inputs_of, notes_of, sources_of
+from midradius.study.begin import Begun
 from midradius.study.findings import critical_degC, fields, position
 from midradius.study.needs import judge_given
 from midradius.study.result import (
@@ -26,16 +27,17 @@ from midradius.study.result import (
     StageRecord,
     TemperRecord,
 )
-from midradius.study.runner import soak_text
 from midradius.study.seriescase import SeriesCase
 from midradius.study.seriesopen import histories, places
+from midradius.study.soaktext import soak_text, soak_warnings
 from midradius.study.worth import Worth, tempers_of, worth
 from midradius.thermo import austenite as soaking
 from midradius.thermo import equilibrium
 from midradius.thermo.arrays import Array
-from midradius.thermo.assemble import initial_state, steel_tables
+from midradius.thermo.assemble import initial_state, stacked, steel_tables
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.errors import InputFault
+from midradius.thermo.soaked import alike
 from midradius.thermo.source import RangeNote
 
 MOST_SHARE = 0.05  # of the hardness
@@ -74,29 +76,44 @@ def run(case: SeriesCase, *, tell: Tell | None = None) -> Result:
     """
     given = histories(case.temperatures)
     at = places(case, given)
-    steel, soak = case.steel.steel, case.route[0]
-    assert soak.at is not None and soak.time is not None, "the first stage is a soak"
-    left = soaking.soak(steel, soak.at, soak.time, grain_astm=case.steel.grain_astm)
-    eq = equilibrium.equilibrium(steel.composition)
+    begun, left = _begin(case, given.n_node)
+    eq = equilibrium.equilibrium(case.steel.steel.composition)
     small = given.n_node * len(given.times) <= WHOLE and given.mesh is None
     nodes = np.array([place.node[0] for place in at.values()], dtype=np.int64)
     found = follow(
         given,
-        steel_tables(steel, left, case.steel.shifts),
-        state=initial_state(left, steel.composition.C, soak.at, 1)[0],
+        begun.tables,
+        state=begun.state[0],
         starts=case.temperatures.starts_at,
         ae1=eq.ae1,
         watch=np.concatenate([nodes, np.arange(given.n_node if small else 0)]),
         tell=tell,
     )
     lines, halved, cubic = (
-        _Solution(each, worth(case, left, each))
+        _Solution(each, worth(case, begun.soaked, each))
         for each in (found.lines, found.halved, found.cubic)
     )
     cost = _resampling(given, found, lines.worth, halved.worth, cubic.worth)
     _refuse_coarse(case, given, found, cost, lines.worth.as_quenched_hv)
-    begins = _begins(found, soak.at, case)
-    return _result(case, given, at, left, found, (lines, halved, cubic), cost, begins)
+    begins = _begins(found, float(begun.temp[0]), case)
+    return _result(case, given, at, begun, left, found, (lines, halved, cubic), cost, begins)
+
+
+def _begin(case: SeriesCase, n_node: int) -> tuple[Begun, Austenite]:
+    """Every node as the soak leaves it, and the one austenite of all."""
+    steel, at, time = case.steel.steel, case.soak.at, case.soak.time
+    assert at is not None and time is not None, "a soak has both"
+    left = soaking.soak(steel, at, time, grain_astm=case.steel.grain_astm)
+    soaked = alike(left, at, time, n_node)
+    begun = Begun(
+        temp=np.full(n_node, at),
+        state=initial_state(left, steel.composition.C, at, 1),
+        scale=soaked.scale,
+        tables=stacked([steel_tables(steel, left, case.steel.shifts)]),
+        soaked=soaked,
+        heating=None,
+    )
+    return begun, left
 
 
 def _error(value: float, halved: float, cubic: float) -> float:
@@ -173,6 +190,7 @@ def _result(
     case: SeriesCase,
     given: Histories,
     at: Mapping[str, Place],
+    begun: Begun,
     left: Austenite,
     found: Followed,
     ways: tuple[_Solution, _Solution, _Solution],
@@ -223,7 +241,7 @@ def _result(
         ),
         tempers=tuple(TemperRecord(t.temp - ZERO_DEGC, t.time) for t in tempers_of(case)),
         critical_degC=critical_degC(case, left),
-        soak=soak_text(case, left),
+        soak=soak_text(case, begun),
         heat_given_J_per_kg=float("nan"),
         heat_extent="",
         heat_balance_relative=float("nan"),
@@ -233,7 +251,6 @@ def _result(
         n_node=given.n_node,
         verdicts=judge_given(
             case,
-            left,
             *((way, at) for way in ways),
             error=_error,
             called=given.called,
@@ -241,7 +258,6 @@ def _result(
         notes=notes_of(
             case,
             begins,
-            left,
             lines.left,
             lines.worth,
             seen=np.array([found.coldest.min(), found.first.max()]),
@@ -249,7 +265,8 @@ def _result(
         ),
         sources=sources_of(case, giving.SOURCES),
         assumptions=_assumptions(case, given),
-        cautions=lines.worth.cautions,
+        cautions=soak_warnings(begun.soaked, case.soak.at or 0.0, np.ones(given.n_node))
+        + lines.worth.cautions,
         inputs=inputs_of(case),
         case_text=case.text,
         resampling=cost,

@@ -6,7 +6,7 @@ from midradius.fem.heatup import HeatingStage
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.route import CoolingStage, StageEnd
 from midradius.study.begin import Begun
-from midradius.study.case import Case
+from midradius.study.case import Asked
 from midradius.study.heatsetup import HeatSetup
 from midradius.study.result import HeatingRecord, SoakFields, StageRecord
 from midradius.thermo.arrays import Array
@@ -73,7 +73,7 @@ def heating_record(
     )
 
 
-def soak_text(case: Case, begun: Begun) -> str:
+def soak_text(case: Asked, begun: Begun) -> str:
     """One line: how it was soaked, and what that left."""
     soaked = begun.soaked
     at = (case.soak.at or 0.0) - ZERO_DEGC
