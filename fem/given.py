@@ -35,6 +35,7 @@ from midradius.fem.coupled import NEVER_MARKED
 from midradius.fem.drawing import Drawing
 from midradius.fem.follow import carry, end_slopes, slopes
 from midradius.fem.march import N_MARK
+from midradius.fem.place import Line
 from midradius.fem.remains import Remains, remains
 from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.errors import InputFault
@@ -67,16 +68,6 @@ class GivenMesh:
 
 
 @dataclass(frozen=True)
-class Drawn:
-    """What a person sees: the drawing, and the nodes of a profile by depth [m] and name."""
-
-    drawing: Drawing
-    depth: Array
-    node: IntArray
-    label: str
-
-
-@dataclass(frozen=True)
 class Histories:
     """Temperatures of nodes over time.
 
@@ -84,8 +75,8 @@ class Histories:
     at every call. ``text`` says what was read, for a person. Where the file has them:
     ``names`` (n_node,) of the nodes, ``points`` (n_node, n_dim) [m] of which at least
     ``least_dim`` coordinates tell a place, ``depth`` (n_node,) [m] below the surface,
-    ``places`` by name, the ``mesh``, what is ``drawn`` and its ``sense`` as sections have
-    it. ``remarks`` say what was left out in reading.
+    ``places`` by name, the ``mesh``, a ``drawing``, the ``line`` of a profile and the
+    ``sense`` as sections have them. ``remarks`` say what was left out in reading.
     """
 
     times: Array
@@ -98,7 +89,8 @@ class Histories:
     depth: Array | None = None
     places: Mapping[str, int] = field(default_factory=dict)
     mesh: GivenMesh | None = None
-    drawn: Drawn | None = None
+    drawing: Drawing | None = None
+    line: Line | None = None
     sense: str = "nodes"
     remarks: tuple[str, ...] = ()
 

@@ -7,7 +7,6 @@ refined on the way has no histories at its nodes.
 A PVD index opens only VTU files of its own folder and below; it may define no entities.
 """
 
-import re
 from collections.abc import Callable, Iterator
 from contextlib import AbstractContextManager
 from dataclasses import dataclass, replace
@@ -18,14 +17,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from midradius.fem.drawing import Drawing
-from midradius.fem.given import Drawn, GivenMesh, Histories
+from midradius.fem.given import GivenMesh, Histories
 from midradius.fem.meshguard import guarded, read_mesh
-from midradius.fem.meshraw import RawMesh
+from midradius.fem.meshraw import SHAPES, RawMesh, family
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
 
 LARGEST_INDEX = 50_000_000  # bytes of a PVD
-FLAT = 1e-9  # of the size: a mesh thinner than this is a drawing
 
 
 class Series(Protocol):
@@ -105,7 +103,7 @@ def read_given_mesh(
         points=points,
         least_dim=2,
         mesh=GivenMesh(points, last.cells, last.point_data, last.cell_data),
-        drawn=_drawn(points, last.cells),
+        drawing=_drawing(points, last.cells),
         sense="mesh",
         remarks=tuple(f"{path.name}: {note}" for note in last.notes),
     )
@@ -150,26 +148,14 @@ def _refuse_array(array: str, on_points: list[str], on_cells: list[str]) -> None
 _LISTED = "Name it as the viewer lists it."
 
 
-def _drawn(points: Array, cells: tuple[tuple[str, IntArray], ...]) -> Drawn | None:
-    """A flat mesh as its own drawing; None for a solid."""
-    blocks: dict[str, list[IntArray]] = {"triangle": [], "quad": []}
-    for kind, block in cells:
-        name = re.sub(r"\d+$", "", kind)
-        if name in blocks:
-            blocks[name].append(block[:, : 3 if name == "triangle" else 4])
-        elif name not in ("vertex", "line"):
-            return None
-    extent = np.sort(np.ptp(points, axis=0))
-    if not extent[1] > 0.0 or extent[0] > FLAT * extent[2]:
-        return None
-    nothing = np.empty((0, 4), dtype=np.int64)
-    quads = np.concatenate([nothing, *blocks["quad"]])
-    triangles = np.concatenate([nothing[:, :3], *blocks["triangle"]])
-    if not len(quads) + len(triangles):
-        return None
-    none = np.empty(0, dtype=np.int64)
-    drawing = Drawing(points, quads, triangles, np.arange(len(points), dtype=np.int64))
-    return Drawn(drawing, np.empty(0), none, "")
+def _drawing(points: Array, cells: tuple[tuple[str, IntArray], ...]) -> Drawing:
+    """The mesh as its own drawing: cells by their corners, without edges and points."""
+    kept = [
+        (family(kind), block[:, : SHAPES[family(kind)].n_corner])
+        for kind, block in cells
+        if SHAPES[family(kind)].dim > 1
+    ]
+    return Drawing(points, tuple(kept), np.arange(len(points), dtype=np.int64))
 
 
 @dataclass(frozen=True)

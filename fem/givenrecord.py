@@ -5,13 +5,16 @@ is stated. Everything the record says of units and places is taken from it.
 """
 
 import json
+import re
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 
 import numpy as np
 
 from midradius.fem.drawing import Drawing
-from midradius.fem.given import Drawn, Histories
+from midradius.fem.given import Histories
+from midradius.fem.meshraw import SHAPES
+from midradius.fem.place import Line
 from midradius.fem.record import Record, read_record
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
@@ -51,10 +54,10 @@ def read_given_record(path: Path) -> Histories:
     def samples() -> Iterator[Array]:
         return iter(temps)
 
-    depth = np.full(len(points), np.nan)
-    nodes = record.data["profile/node"].values
-    depth[nodes] = 1e-3 * record.data["profile/depth"].values
-    label = record.data["profile/depth"].long_name.removeprefix("depth, ")
+    line, depth = _line(record), None
+    if line.share is None:
+        depth = np.full(len(points), np.nan)
+        depth[line.node] = line.depth
     return Histories(
         times=times,
         n_node=len(points),
@@ -64,18 +67,33 @@ def read_given_record(path: Path) -> Histories:
         least_dim=points.shape[1],
         depth=depth,
         places=_places(record, points),
-        drawn=Drawn(drawing, depth[nodes], nodes, label),
+        drawing=drawing,
+        line=line,
         sense=record.text.get("sense", "nodes"),
     )
 
 
 def _drawing(record: Record) -> Drawing:
-    data = record.data
-    return Drawing(
-        points=1e-3 * data["view/points"].values,
-        quads=data["view/quads"].values.reshape(-1, 4),
-        triangles=data["view/triangles"].values.reshape(-1, 3),
-        node=data["view/node"].values,
+    found = record.data["view/connectivity"]
+    numbers, cells = found.values, []
+    for kind, count in re.findall(r"(\w+) x (\d+)", found.long_name):
+        tail = re.search(r"\d+$", kind)
+        size = int(tail[0]) if tail else SHAPES[kind].n_corner
+        used = int(count) * size
+        cells.append((kind, numbers[:used].reshape(-1, size)))
+        numbers = numbers[used:]
+    points = 1e-3 * record.data["view/points"].values
+    return Drawing(points, tuple(cells), record.data["view/node"].values)
+
+
+def _line(record: Record) -> Line:
+    depth = record.data["profile/depth"]
+    share = record.data.get("profile/share")
+    return Line(
+        depth=1e-3 * depth.values,
+        node=record.data["profile/node"].values,
+        label=depth.long_name.removeprefix("depth, "),
+        share=None if share is None else share.values,
     )
 
 

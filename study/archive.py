@@ -105,7 +105,7 @@ def _numbers(result: Result) -> dict[str, Quantity]:
         "view/quads": many(view.quads, "1", "corner points of quadrilateral cells"),
         "view/triangles": many(view.triangles, "1", "corner points of triangular cells"),
         "view/connectivity": many(
-            np.concatenate([block.ravel() for _, block in view.cells]),
+            np.concatenate([np.empty(0, np.int64), *(block.ravel() for _, block in view.cells)]),
             "1",
             f"corner points of all cells in turn, of the types {_types(view.cells)}",
         ),

@@ -85,7 +85,7 @@ def write_pictures(result: Result, folder: Path) -> tuple[Path, ...]:
     drawn = [(COOLING, cooling(result))]
     if len(result.profile.node):
         drawn.append((PROFILE, profile(result)))
-    if len(result.view.quads) + len(result.view.triangles):
+    if _flat(result.view):
         drawn.append((SECTION, section(result)))
     for name, figure in drawn:
         _save(figure, folder / name)
@@ -328,6 +328,14 @@ def _plane(points_mm: Array) -> tuple[int, int]:
     flat = int(np.argmin(np.ptp(points_mm, axis=0)))
     first, second = (k for k in range(3) if k != flat)
     return first, second
+
+
+def _flat(view: SectionView) -> bool:
+    """Whether the view is a sheet of cells that a plane picture can show."""
+    if not len(view.quads) + len(view.triangles):
+        return False
+    extent = np.ptp(view.points_mm, axis=0)
+    return bool(extent.min() <= 1e-9 * extent.max())
 
 
 def _triangles(view: SectionView) -> IntArray:

@@ -275,17 +275,16 @@ def _result(
 
 
 def _view(given: Histories) -> SectionView:
-    if given.drawn is None:
-        none = np.empty(0, dtype=np.int64)
-        return SectionView(np.empty((0, 3)), none.reshape(0, 4), none.reshape(0, 3), none)
-    drawing = given.drawn.drawing
-    return SectionView(drawing.points * 1e3, drawing.quads, drawing.triangles, drawing.node)
+    if given.drawing is None:
+        return SectionView(np.empty((0, 3)), (), np.empty(0, dtype=np.int64))
+    return SectionView(given.drawing.points * 1e3, given.drawing.cells, given.drawing.node)
 
 
 def _profile(given: Histories) -> Profile:
-    if given.drawn is None:
+    if given.line is None:
         return Profile(np.empty(0), np.empty(0, dtype=np.int64), "")
-    return Profile(given.drawn.depth * 1e3, given.drawn.node, given.drawn.label)
+    line = given.line
+    return Profile(line.depth * 1e3, line.node, line.label, line.share)
 
 
 def _assumptions(case: SeriesCase, given: Histories) -> tuple[str, ...]:

@@ -70,7 +70,7 @@ def test_the_record_of_a_run_gives_the_structure_of_the_run(shaft: tuple[Path, R
     assert error is not None and error.max() < 6.0
     assert (np.abs(found.hardness_hv - own.hardness_hv) <= error + 1.5).all()
     assert_allclose(found.points_mm, own.points_mm, rtol=1e-14, atol=0.0)
-    assert found.profile.depth_mm.tolist() == own.profile.depth_mm.tolist()
+    assert_allclose(found.profile.depth_mm, own.profile.depth_mm, rtol=1e-14, atol=0.0)
 
 
 def test_the_table_of_histories_gives_the_structure_at_its_places(
