@@ -80,8 +80,7 @@ def test_one_product_at_a_constant_cooling_rate_meets_the_integral_of_additivity
         ae3=eq.ae3,
         ae1=eq.ae1,
     )
-    clock = known.pearlite if phase == PEARLITE else known.bainite
-    ticks = np.trapezoid(clock, -temp)
+    ticks = np.trapezoid(known.pearlite if phase == PEARLITE else known.bainite, -temp)
     for exact in (0.05, 0.3, 0.6, 0.9):
         rate = ticks / clock(exact)
         times = np.linspace(0.0, (SOAK - 620.0) / rate, 30)
