@@ -43,9 +43,9 @@ def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
     where the part was heated from cold, ``profile.csv`` only where there is a line from
     surface to core.
     """
-    tables = {HISTORIES: _histories, POSITIONS: _positions}
-    if len(result.profile.node):  # a file of temperatures may have none
-        tables[PROFILE] = _profile
+    tables = {HISTORIES: _histories, PROFILE: _profile, POSITIONS: _positions}
+    if not len(result.profile.node):  # a file of temperatures may have none
+        del tables[PROFILE]
     if result.verdicts:
         tables[NEEDS] = _needs
     if result.heating is not None:
