@@ -9,34 +9,45 @@ from typing import Any
 
 import numpy as np
 
-from midradius.thermo import clocks, diffusional, equilibrium, martensite, properties
+from midradius.thermo import clocks, diffusional, equilibrium, martensite, properties, ratesets
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.clocks import Shape
 from midradius.thermo.kinetics import Tables
+from midradius.thermo.ratechoice import DEFAULT, Kinetics
 from midradius.thermo.steel import Steel
 
 COLDEST_K, HOTTEST_K, GRID_K = 230.0, 1500.0, 1.0
+_CLOCKED = ("ferrite", "pearlite", "bainite", "cementite")  # as the kernel counts them
 NEVER_K = 0.0  # a martensite start that no temperature reaches
 
 
-def _clocks(shapes: Sequence[Shape]) -> dict[str, Any]:
-    """The clocks of ferrite, pearlite and bainite as fields of ``Tables``."""
+def _clocks(shapes: Sequence[Shape], measured: Sequence[str] = ()) -> dict[str, Any]:
+    """The clocks of ferrite, pearlite and bainite as fields of ``Tables``; those
+    ``measured`` have an exponent instead."""
     distinct = list(dict.fromkeys(shapes))
     found = [clocks.tables(shape, kin.LAST) for shape in distinct]
     first = [k * (kin.LAST + 1) for k in range(len(found))]
-    rows = [distinct.index(shape) for shape in shapes]
+    rows = [*(distinct.index(shape) for shape in shapes), 0]
     return {
         "clock": np.concatenate([fraction for fraction, _, _ in found]),
         "back": np.concatenate([cell + k for k, (_, cell, _) in zip(first, found, strict=True)]),
         "per": np.array([kin.LAST / whole for *_, whole in found]),
-        "shape": np.array([*rows, 0], dtype=np.int64),
+        "shape": np.array(
+            [
+                kin.AVRAMI if name in measured else row
+                for name, row in zip(_CLOCKED, rows, strict=True)
+            ],
+            dtype=np.int64,
+        ),
     }
 
 
-def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> Tables:
+def steel_tables(
+    steel: Steel, austenite: Austenite, shifts: Shifts = NONE, chosen: Kinetics = DEFAULT
+) -> Tables:
     """Tables of one heat of steel after its soak.
 
     Parameters
@@ -47,6 +58,8 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
         What the soak left: carbon in solution and grain.
     shifts
         What distinguishes this heat from its grade.
+    chosen
+        The rates: a published set, measured curves before it.
     """
     composition = steel.composition
     temp = np.arange(COLDEST_K, HOTTEST_K + 0.5 * GRID_K, GRID_K)
@@ -68,14 +81,7 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
     # Rates and martensite belong to the austenite as it is: without the chromium
     # that undissolved carbide holds.
     soaked = equilibrium.equilibrium(austenite.composition)
-    rates = diffusional.rates(
-        austenite.composition,
-        temp,
-        carbon_pct=carbon,
-        grain_astm=austenite.grain_astm,
-        ae3=soaked.ae3,
-        ae1=soaked.ae1,
-    )
+    rates = ratesets.rates(chosen, austenite, temp, soaked)
     value[:, kin.RATE_FERRITE] = rates.ferrite / shifts.diffusional_time
     value[:, kin.RATE_PEARLITE] = rates.pearlite / shifts.diffusional_time
     value[:, kin.RATE_BAINITE] = rates.bainite / shifts.bainite_time
@@ -85,19 +91,23 @@ def steel_tables(steel: Steel, austenite: Austenite, shifts: Shifts = NONE) -> T
     value[:, kin.LIMIT_FERRITE] = equilibrium.ferrite_limit(eq, composition.C, temp)
     value[:, kin.LIMIT_CEMENTITE] = equilibrium.cementite_limit(eq, composition.C, temp)
     value[:, kin.CARBON_FERRITE] = eq.ferrite_solubility(temp)
+    measured = ratesets.put_measured(chosen, temp, value)
     active = (
         (value[:, kin.RATE_FERRITE] * value[:, kin.LIMIT_FERRITE] > 0.0)
         | (value[:, kin.RATE_PEARLITE] > 0.0)
+        | (value[:, kin.RATE_BAINITE] > 0.0)
         | (value[:, kin.LIMIT_CEMENTITE] > 0.0)
     )
+    start, rate = ratesets.martensite_shift(chosen, austenite)
     return Tables(
         value=value[None],
         first=COLDEST_K,
         step=GRID_K,
-        **_clocks((clocks.LI,) * 3),
+        **_clocks(ratesets.shapes(chosen, composition), measured),
         start=np.array([martensite.start_coefficients(austenite.composition)])
-        + np.array([shifts.martensite_start, 0.0, 0.0]),
-        rate=np.array([martensite.rate_coefficients(austenite.composition)]),
+        + np.array([shifts.martensite_start + start, 0.0, 0.0]),
+        rate=np.array([martensite.rate_coefficients(austenite.composition)])
+        + np.array([rate, 0.0, 0.0]),
         top=float(temp[active].max() + GRID_K),
         transforms=True,
     )
