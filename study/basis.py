@@ -15,7 +15,6 @@ from midradius.thermo import austenite as soaking
 from midradius.thermo import (
     calibration,
     conversion,
-    diffusional,
     embrittlement,
     equilibrium,
     hardness,
@@ -23,6 +22,7 @@ from midradius.thermo import (
     martensite,
     network,
     properties,
+    ratesets,
     soaked,
     steel,
     strength,
@@ -32,7 +32,6 @@ from midradius.thermo import (
 from midradius.thermo.arrays import Array
 from midradius.thermo.soaked import Soaked
 from midradius.thermo.source import RangeNote, Source
-from midradius.thermo.steel import Composition
 
 # Above it bainite could still form on the way to room temperature [estimate].
 ENDS_HOT = 200.0 + ZERO_DEGC
@@ -61,7 +60,7 @@ def notes_of(
         *steel.range_notes(composition),
         *equilibrium.range_notes(composition),
         *left.notes,
-        *(note for each in ends for note in _of_austenite(composition, left, each)),
+        *(note for each in ends for note in _of_austenite(case.steel, left, each)),
         *hardness.range_notes(composition, history.phases, history.rate_700),
         *value.notes,
         *properties.range_notes(seen, composition.C),
@@ -81,12 +80,12 @@ def notes_of(
     return tuple(dict.fromkeys(found))
 
 
-def _of_austenite(composition: Composition, left: Soaked, node: int) -> list[RangeNote]:
+def _of_austenite(given: SteelInput, left: Soaked, node: int) -> list[RangeNote]:
     if not left.austenitised[node]:
         return []
     carbon, grain = float(left.carbon_pct[node]), float(left.grain_astm[node])
     return [
-        *diffusional.range_notes(composition, carbon, grain),
+        *ratesets.range_notes(given.kinetics, given.steel.composition, carbon, grain),
         *martensite.range_notes(left.kinds[int(left.kind[node])].composition),
     ]
 
@@ -115,7 +114,7 @@ def calibration_notes(given: SteelInput, soak: CalibratedSoak) -> tuple[RangeNot
 def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     """The works that a run of the case rests on."""
     found: list[Source] = [source_of(case.steel.steel)]
-    used = [equilibrium, soaking, diffusional, martensite, properties, hardness, conversion]
+    used = [equilibrium, soaking, martensite, properties, hardness, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
     composition = case.steel.steel.composition
     rich = equilibrium.equilibrium(composition).eutectoid_carbon_pct < composition.C
@@ -124,6 +123,7 @@ def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     used += [soaked, heatup] if case.heating else []
     used += [calibration] if case.steel.calibration else []
     used += [uncertainty] if case.needs else []
+    found += ratesets.sources(case.steel.kinetics)
     for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]
     return tuple(dict.fromkeys([*found, *more]))

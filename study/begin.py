@@ -19,6 +19,7 @@ from midradius.thermo.austenite import Austenite
 from midradius.thermo.calibration import Shifts
 from midradius.thermo.heatup import heating_tables
 from midradius.thermo.kinetics import Tables
+from midradius.thermo.ratechoice import Kinetics
 from midradius.thermo.soaked import Paths, Soaked, alike, initial_states
 from midradius.thermo.steel import Composition, Steel
 
@@ -63,7 +64,7 @@ def begin(
             temp=np.full(n_node, at),
             state=initial_state(left, steel.composition.C, at, n_node),
             scale=soaked.scale,
-            tables=_tables(steel, soaked.kinds, case.steel.shifts),
+            tables=_tables(steel, soaked.kinds, case.steel.shifts, case.steel.kinetics),
             soaked=soaked,
             heating=None,
         )
@@ -85,7 +86,7 @@ def begin(
         temp=heating.temp,
         state=initial_states(soaked, heating.temp, ae1),
         scale=soaked.scale,
-        tables=_tables(steel, soaked.kinds, case.steel.shifts),
+        tables=_tables(steel, soaked.kinds, case.steel.shifts, case.steel.kinetics),
         soaked=soaked,
         heating=heating,
     )
@@ -93,8 +94,8 @@ def begin(
 
 # The runs of one case on several grids share their tables.
 @lru_cache(maxsize=8)
-def _tables(steel: Steel, kinds: tuple[Austenite, ...], shifts: Shifts) -> Tables:
-    return stacked([steel_tables(steel, kind, shifts) for kind in kinds])
+def _tables(steel: Steel, kinds: tuple[Austenite, ...], shifts: Shifts, chosen: Kinetics) -> Tables:
+    return stacked([steel_tables(steel, kind, shifts, chosen) for kind in kinds])
 
 
 @lru_cache(maxsize=8)

@@ -40,6 +40,7 @@ from midradius.thermo.arrays import BoolArray
 from midradius.thermo.austenitizing import SOAK_TIME, austenitizing
 from midradius.thermo.calibration import NAMES, NONE, Calibration, calibrate
 from midradius.thermo.errors import InputFault
+from midradius.thermo.ratechoice import LI
 from midradius.thermo.steel import Steel
 
 SCATTER_HRC = 1.0
@@ -65,6 +66,7 @@ class Fitted:
     diagrams: tuple[DiagramFit, ...]
     files: tuple[tuple[str, str], ...]
     notes: tuple[str, ...]
+    kinetics: str = LI
 
 
 def fitted(
@@ -95,10 +97,17 @@ def fitted(
     SolverFault
         The solver gave up.
     """
+    if given.kinetics.measured is not None:
+        raise InputFault(
+            "steel",
+            f"one with transformation = {given.kinetics.measured.name}",
+            "one without measured transformation curves",
+            "Shifts move the formulas; measured curves need none. Leave that key out.",
+        )
     rule = austenitizing(given.steel)
     at, reason = (rule.temp, rule.reason) if temp is None else (temp, "as asked")
     plain = replace(given, shifts=NONE, calibration=None)
-    heat = Heat(given.steel, at, time, given.grain_astm)
+    heat = Heat(given.steel, at, time, given.grain_astm, given.kinetics)
     curves = [item for item in measured if isinstance(item, MeasuredCurve)]
     drawn = [item for item in measured if isinstance(item, MeasuredDiagram)]
     if len(curves) > 1:
@@ -152,6 +161,7 @@ def fitted(
         ),
         files=tuple((item.name, item.sha256) for item in measured),
         notes=_notes(given, test, drawn, taken, fit),
+        kinetics=given.kinetics.name,
     )
 
 

@@ -103,6 +103,7 @@ def document(found: Fitted) -> dict[str, Any]:
         "grain_astm": found.grain_astm,
         "measured": ", ".join(name for name, _ in found.files),
         "measured_sha256": ", ".join(digest for _, digest in found.files),
+        "kinetics": found.kinetics,
         "shifts": {key: getattr(found.fit.shifts, item[0]) for key, item in KEYS.items()},
         "standard_errors": dict(zip(KEYS, found.fit.error, strict=True)),
         "held": found.fit.held,
@@ -224,6 +225,7 @@ def saved(found: Fitted, path: Path) -> HeatCalibration:
         soak=CalibratedSoak(
             found.austenitize - ZERO_DEGC, found.time, found.grain_left_astm, found.carbon_pct
         ),
+        kinetics=found.kinetics,
     )
 
 

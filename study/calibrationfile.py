@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from midradius.thermo.errors import InputFault
+from midradius.thermo.ratechoice import LI, NAMES
 from midradius.thermo.steel import ELEMENTS, Composition, Steel
 
 if TYPE_CHECKING:
@@ -71,6 +72,7 @@ class HeatCalibration:
     measured_sha256: str
     program: str
     soak: CalibratedSoak | None = None
+    kinetics: str = LI
 
     @property
     def text(self) -> str:
@@ -128,6 +130,23 @@ def refuse_other_steel(calibration: HeatCalibration, steel: Steel) -> None:
         )
 
 
+def refuse_other_rates(calibration: HeatCalibration, kinetics: str) -> None:
+    """Shifts serve the set of rates that they were fitted to.
+
+    Raises
+    ------
+    InputFault
+        Another set.
+    """
+    if calibration.kinetics != kinetics:
+        raise InputFault(
+            "calibration",
+            f'"{calibration.path.name}"',
+            f'one fitted to kinetics = "{kinetics}" (it is to "{calibration.kinetics}")',
+            "Calibrate the heat with these rates, or leave the calibration out.",
+        )
+
+
 def read_calibration(path: Path) -> HeatCalibration:
     """The calibration of a file.
 
@@ -153,6 +172,9 @@ def read_calibration(path: Path) -> HeatCalibration:
         _number(f"calibration.composition.{element}", amount, 0.0, 100.0)
     if "C" not in amounts:
         raise _fault("calibration.composition.C", None, "given")
+    kinetics = head.get("kinetics", LI)
+    if kinetics not in NAMES:
+        raise _fault("calibration.kinetics", kinetics, " or ".join(NAMES))
     shifts = _table(data, "shifts")
     errors = _table(data, "standard_errors")
     for name, table in (("shifts", shifts), ("standard_errors", errors)):
@@ -171,6 +193,7 @@ def read_calibration(path: Path) -> HeatCalibration:
         shifts=Shifts(**values),
         error=tuple(widths),
         soak=_soak(data),
+        kinetics=str(kinetics),
         **{key: str(text) for key, text in texts.items()},
     )
 
@@ -214,6 +237,8 @@ def dumps(calibration: HeatCalibration, remarks: tuple[str, ...] = ()) -> str:
     lines += [f"# {line}" for line in remarks]
     lines += ["", "[calibration]", f"format = {FORMAT}"]
     lines += [f"{key} = {_quoted(getattr(calibration, key))}" for key in TEXTS]
+    if calibration.kinetics != LI:
+        lines.append(f"kinetics = {_quoted(calibration.kinetics)}")
     lines += [f"composition = {{ {written} }}", "", "[shifts]"]
     for key, (attribute, _, _) in KEYS.items():
         lines.append(f"{key} = {float(getattr(calibration.shifts, attribute))!r}")

@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Literal
 
 from midradius.thermo.errors import InputFault
+from midradius.thermo.ratechoice import DEFAULT, Kinetics
 from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Steel
 from midradius.thermo.units import parse
@@ -94,7 +95,8 @@ class SteelInput:
 
     ``file`` is where a certificate was read; ``notes`` say where it leaves the limits
     of the grade that was ordered. ``shifts`` are those of ``calibration`` where it is
-    given: what distinguishes this heat from its grade.
+    given: what distinguishes this heat from its grade. ``kinetics`` are the rates it
+    transforms with, measured ones from the file ``transformation`` first.
     """
 
     steel: Steel
@@ -103,6 +105,8 @@ class SteelInput:
     notes: tuple[RangeNote, ...] = ()
     shifts: "Shifts" = field(default_factory=_no_shifts)
     calibration: HeatCalibration | None = None
+    kinetics: Kinetics = DEFAULT
+    transformation: Path | None = None
 
 
 @dataclass(frozen=True)

@@ -13,9 +13,10 @@ from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS, Composition, Steel, ch
 from midradius.thermo.units import show
 
 from . import casekeys as keys
-from .calibrationfile import read_calibration, refuse_other_steel
+from .calibrationfile import read_calibration, refuse_other_rates, refuse_other_steel
 from .case import Form, Grid, SectionInput, SteelInput
 from .casemedium import medium_use
+from .caserates import with_rates
 from .casetable import Table, one_of
 from .steelfile import FileSteel, notes_of, pick
 
@@ -26,7 +27,7 @@ _STRANGE = "No model here knows this element: leave it out."
 def steel_input(table: Table) -> SteelInput | None:
     """``[steel]``: a grade of the table, a composition, or a steel of a file; calibrated."""
     table.only(keys.STEEL)
-    steel = _steel(table)
+    steel = with_rates(table, _steel(table))
     return _calibrated(table, steel) if table.has("calibration") else steel
 
 
@@ -40,6 +41,7 @@ def _calibrated(table: Table, steel: SteelInput | None) -> SteelInput | None:
         if steel is None:
             return None
         refuse_other_steel(found, steel.steel)
+        refuse_other_rates(found, steel.kinetics.name)
     except InputFault as fault:
         if fault.quantity in ("file", "calibration"):
             table.fault("calibration", fault.allowed, fault.remedy)

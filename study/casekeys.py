@@ -17,7 +17,10 @@ TOP = (
     *("title", "steel", "section", "temperatures", "route", "need", "output", "grid"),
     *("load", "tank", "shift"),
 )
-STEEL = ("grade", "composition", "file", "heat", "name", "austenite_grain", "calibration")
+STEEL = (
+    *("grade", "composition", "file", "heat", "name", "austenite_grain", "calibration"),
+    *("kinetics", "transformation"),
+)
 STEEL_FROM = ("grade", "composition", "file")
 DIMENSIONS: Mapping[Form, tuple[str, ...]] = {
     "slab": ("thickness",),

@@ -5,6 +5,7 @@ from pathlib import Path
 
 from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import grade
+from midradius.thermo.ratechoice import DEFAULT
 from midradius.thermo.units import show
 
 from . import casekeys as keys
@@ -93,6 +94,10 @@ def _steel(steel: SteelInput, folder: Path) -> list[str]:
     lines = _of_file(steel.file, folder) if steel.file else [_grade(steel)]
     if steel.grain_astm is not None:
         lines.append(f'austenite_grain = "ASTM {_number(steel.grain_astm)}"')
+    if steel.kinetics.name != DEFAULT.name:
+        lines.append(f"kinetics = {_quoted(steel.kinetics.name)}")
+    if steel.transformation is not None:
+        lines.append(f"transformation = {_quoted(_beside(steel.transformation, folder))}")
     if steel.calibration is not None:
         lines.append(f"calibration = {_quoted(_beside(steel.calibration.path, folder))}")
     return lines

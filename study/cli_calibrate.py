@@ -50,6 +50,7 @@ pictures and calibration.json.
     "--grain", help='"ASTM 7", or "soak" for the grain it grows. Default: the file\'s, or ASTM 7.'
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
+@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
 @click.option("--scatter", default="1 HRC", show_default=True, help="Of one point of the curve.")
 @click.option("--save", type=click.Path(path_type=Path), help="Write the calibration, TOML.")
 @click.option("--out", "folder", type=click.Path(path_type=Path), help="Write files there.")
@@ -61,6 +62,7 @@ def calibrate(
     soak_time: str,
     grain: str | None,
     heat: str,
+    kinetics: str | None,
     scatter: str,
     save: Path | None,
     folder: Path | None,
@@ -77,7 +79,7 @@ def calibrate(
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
         from midradius.study.measured import read_measured
 
-        named = steelgiven.given(steel, heat=heat)
+        named = steelgiven.with_kinetics(steelgiven.given(steel, heat=heat), kinetics)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         assert time is not None, "it has a default"

@@ -44,6 +44,7 @@ The folder holds a table and a picture, named after the kind of diagram.
     help='"ASTM 7", or "soak" for what it grows. Default: the result\'s or file\'s, or ASTM 7.',
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
+@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
 @click.option(
     "--calibration",
     type=click.Path(path_type=Path),
@@ -61,6 +62,7 @@ def diagram(
     soak_time: str | None,
     grain: str | None,
     heat: str,
+    kinetics: str | None,
     calibration: Path | None,
     folder: Path | None,
     as_json: bool,
@@ -74,7 +76,8 @@ def diagram(
         from midradius.study import steelgiven
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
 
-        named = steelgiven.calibrated(steelgiven.given(steel, heat=heat), calibration)
+        named = steelgiven.with_kinetics(steelgiven.given(steel, heat=heat), kinetics)
+        named = steelgiven.calibrated(named, calibration)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         asked_grain = None if grain is None else (steelgiven.grain_of(grain),)
@@ -99,7 +102,12 @@ def diagram(
         if time is None:
             time = curves.soak_time if curves else SOAK_TIME
         metal = solver.soaked(
-            named.steel, temp=temp, time=time, grain_astm=grain_astm, shifts=named.shifts
+            named.steel,
+            temp=temp,
+            time=time,
+            grain_astm=grain_astm,
+            shifts=named.shifts,
+            kinetics=named.kinetics,
         )
         found = solver.isothermal(metal) if kind == "isothermal" else solver.cooling(metal)
         target = folder
@@ -166,6 +174,8 @@ def _document(metal: "Soaked", found: "Isothermal | Cooling", notes: list[str]) 
         "austenitize_degC": round(metal.soak_temp - ZERO_DEGC, 6),
         "soak_time_s": metal.soak_time,
         "grain_astm": metal.austenite.grain_astm,
+        "kinetics": metal.kinetics.name,
+        "transformation": metal.kinetics.measured and metal.kinetics.measured.name,
         "critical_degC": {name: t - ZERO_DEGC for name, t in metal.critical.items()},
         "critical_rates_K_per_s": getattr(found, "critical", None),
         "table": {str(h): [row[k] for row in rows] for k, h in enumerate(heads)},
@@ -185,6 +195,7 @@ def _summary(metal: "Soaked", found: "Isothermal | Cooling") -> list[str]:
         f"{metal.soak_time / 60.0:.3g} min, {left.carbon_pct:.3f} % C in solution, "
         f"grain ASTM {left.grain_astm:.1f}",
         f"{critical} degC",
+        printable(metal.kinetics.text),
     ]
     if isinstance(found, Cooling):
         for name, rate in found.critical.items():

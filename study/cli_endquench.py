@@ -34,6 +34,7 @@ The folder holds end-quench.csv, end-quench.png and end-quench.json.
     "--grain", help='"ASTM 7", or "soak" for the grain it grows. Default: the file\'s, or ASTM 7.'
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
+@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
 @click.option(
     "--calibration",
     type=click.Path(path_type=Path),
@@ -52,6 +53,7 @@ def endquench(
     soak_time: str,
     grain: str | None,
     heat: str,
+    kinetics: str | None,
     calibration: Path | None,
     section: Path | None,
     folder: Path | None,
@@ -66,7 +68,8 @@ def endquench(
         from midradius.study import steelgiven
         from midradius.study.casekeys import SOAK_RANGE, STAGE_TIME_RANGE
 
-        named = steelgiven.calibrated(steelgiven.given(steel, heat=heat), calibration)
+        named = steelgiven.with_kinetics(steelgiven.given(steel, heat=heat), kinetics)
+        named = steelgiven.calibrated(named, calibration)
         temp = steelgiven.quantity("--austenitize", austenitize, "temperature", SOAK_RANGE)
         time = steelgiven.quantity("--time", soak_time, "duration", STAGE_TIME_RANGE)
         assert time is not None, "it has a default"
@@ -132,6 +135,7 @@ def _head(test: "EndQuench") -> list[str]:
         f"End-quench test of {printable(test.steel.name)} ({mass} % by mass)",
         f"austenitised at {test.austenitize - ZERO_DEGC:.0f} degC ({test.reason})",
         f"soak: {test.result.soak}",
+        f"rates: {test.kinetics.name}",
         *(printable(line) for line in test.result.assumptions if line.startswith("calibration ")),
     ]
 

@@ -24,7 +24,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from midradius.thermo import diffusional, equilibrium, hardness, martensite
+from midradius.thermo import equilibrium, hardness, martensite, ratesets
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import fractions, initial_state, steel_tables
@@ -33,6 +33,7 @@ from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.errors import InputFault
 from midradius.thermo.kinetics import Tables, advance_node
 from midradius.thermo.phases import PHASE_NAMES
+from midradius.thermo.ratechoice import DEFAULT, Kinetics
 from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Steel, range_notes
 from midradius.thermo.walk import walk
@@ -60,6 +61,7 @@ class Soaked:
     critical: Mapping[str, float]
     top: float
     notes: tuple[RangeNote, ...]
+    kinetics: Kinetics = DEFAULT
 
 
 @dataclass(frozen=True)
@@ -108,10 +110,11 @@ def soaked(
     time: float,
     grain_astm: float | None,
     shifts: Shifts = NONE,
+    kinetics: Kinetics = DEFAULT,
 ) -> Soaked:
     """A steel ready for its diagrams; ``temp`` [K], ``time`` [s] and grain of its soak.
 
-    ``shifts`` are those of a calibrated heat.
+    ``shifts`` are those of a calibrated heat, ``kinetics`` the rates.
 
     Raises
     ------
@@ -125,21 +128,23 @@ def soaked(
     critical = {
         name: float(line),
         "Ae1": float(eq.ae1),
-        "Bs": diffusional.bainite_start(left.composition),
-        "Ms": float(martensite.start(left.composition, left.carbon_pct)) + shifts.martensite_start,
+        "Bs": ratesets.bainite_start(kinetics, left.composition),
+        "Ms": ratesets.martensite_start(kinetics, left) + shifts.martensite_start,
     }
-    tables = steel_tables(steel, left, shifts)
+    tables = steel_tables(steel, left, shifts, kinetics)
     top = min(temp, max(critical.values()))
     notes = [
         *range_notes(steel.composition),
         *equilibrium.range_notes(steel.composition),
         *left.notes,
-        *diffusional.range_notes(steel.composition, left.carbon_pct, left.grain_astm),
+        *ratesets.range_notes(kinetics, steel.composition, left.carbon_pct, left.grain_astm),
         *martensite.range_notes(left.composition),
     ]
     if not critical["Ms"] < top:
         raise InputFault("steel", steel.name, "a steel whose martensite starts below Ae3")
-    return Soaked(steel, temp, time, left, tables, critical, top, tuple(dict.fromkeys(notes)))
+    return Soaked(
+        steel, temp, time, left, tables, critical, top, tuple(dict.fromkeys(notes)), kinetics
+    )
 
 
 def isothermal(metal: Soaked) -> Isothermal:

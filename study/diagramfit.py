@@ -30,6 +30,7 @@ from midradius.study.measureddiagram import ALL, MeasuredDiagram, Point
 from midradius.thermo.arrays import Array, BoolArray
 from midradius.thermo.assemble import fractions
 from midradius.thermo.calibration import NAMES, NONE, Shifts
+from midradius.thermo.ratechoice import DEFAULT, Kinetics
 from midradius.thermo.steel import Steel
 
 SCATTER = {"held": 0.3, "cooled": 10.0, "hardness": 10.0}  # relative, K, HV
@@ -48,11 +49,17 @@ class Heat:
     temp: float
     time: float
     grain_astm: float | None
+    kinetics: Kinetics = DEFAULT
 
     def soaked(self, shifts: Shifts) -> Soaked:
         """The heat ready for its diagram."""
         return diagram.soaked(
-            self.steel, temp=self.temp, time=self.time, grain_astm=self.grain_astm, shifts=shifts
+            self.steel,
+            temp=self.temp,
+            time=self.time,
+            grain_astm=self.grain_astm,
+            shifts=shifts,
+            kinetics=self.kinetics,
         )
 
 

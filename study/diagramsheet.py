@@ -45,6 +45,7 @@ def isothermal_picture(
         for k in (2, 1, 0):
             _road(axes, diagram.times[name][k], degc, name, k)
         _name_start(axes, diagram.times[name][0], degc, name)
+    _measured_points(axes, metal)
     low = metal.critical["Ms"] - ZERO_DEGC
     rate = _martensite_rate(metal)
     for share in (0.5, 0.9):
@@ -65,6 +66,26 @@ def isothermal_picture(
     axes.set_xlabel(f"time at temperature [s]{own}", fontsize=SIZE)
     _finish(figure, axes, metal, curves)
     return figure
+
+
+def _measured_points(axes: "Axes", metal: Soaked) -> None:
+    """The points that measured curves were drawn through, in the colour of their product."""
+    measured = metal.kinetics.measured
+    every = measured.points if measured else ()
+    for name in DIFFUSIONAL:
+        points = [(time, temp) for own, temp, time, _ in every if own == name]
+        if points:
+            time, temp = np.array(points).T
+            axes.plot(
+                *(time, temp - ZERO_DEGC),
+                ls="none",
+                marker="o",
+                ms=4.5,
+                mfc=PHASE[name],
+                mec=BLACK,
+                mew=0.7,
+                zorder=5,
+            )
 
 
 def cooling_picture(metal: Soaked, diagram: Cooling, curves: SectionCurves | None) -> "Figure":
@@ -261,5 +282,7 @@ def _known(times: Array) -> Array:
 
 def _martensite_rate(metal: Soaked) -> float:
     from midradius.thermo.martensite import rate
+    from midradius.thermo.ratesets import martensite_shift
 
-    return float(rate(metal.austenite.composition, metal.austenite.carbon_pct))
+    formula = float(rate(metal.austenite.composition, metal.austenite.carbon_pct))
+    return formula + martensite_shift(metal.kinetics, metal.austenite)[1]

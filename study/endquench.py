@@ -46,6 +46,7 @@ from midradius.thermo.austenitizing import SOAK_TIME, austenitizing
 from midradius.thermo.bands import Band, band
 from midradius.thermo.calibration import NONE, Shifts
 from midradius.thermo.phases import PHASE_NAMES
+from midradius.thermo.ratechoice import DEFAULT, Kinetics
 from midradius.thermo.steel import Composition, Steel
 
 ZERO_DEGC = 273.15
@@ -89,6 +90,7 @@ class EndQuench:
     cooling_time: Array
     notes: tuple[str, ...]
     result: Result
+    kinetics: Kinetics = DEFAULT
 
     def column(self, name: str) -> Array:
         """An attribute of every position, or a phase fraction, (n_distance,)."""
@@ -187,6 +189,7 @@ def endquench(
         cooling_time=spent[rising],
         notes=tuple(dict.fromkeys(notes)),
         result=result,
+        kinetics=given.kinetics,
     )
 
 
@@ -209,7 +212,9 @@ def equivalent_distance(result: Result, test: EndQuench | None = None) -> Array:
     """
     if test is None:
         steel = Steel(result.steel, Composition(**result.composition_pct), "the result", "given")
-        test = endquench(SteelInput(steel, GRAIN_ASTM, shifts=_shifts_of(result)))
+        test = endquench(
+            SteelInput(steel, GRAIN_ASTM, shifts=_shifts_of(result), kinetics=_set_of(result))
+        )
     return distance_of(result.time_800_500_s, test)
 
 
@@ -217,6 +222,13 @@ def _shifts_of(result: Result) -> Shifts:
     """The shifts that a result was computed with."""
     steel = result.inputs.get("steel")
     return Shifts(**steel["shifts"]) if isinstance(steel, dict) and "shifts" in steel else NONE
+
+
+def _set_of(result: Result) -> Kinetics:
+    """The set of rates of a result; curves that were measured are not in it."""
+    steel = result.inputs.get("steel")
+    found = steel.get("kinetics") if isinstance(steel, dict) else None
+    return Kinetics(found["name"]) if isinstance(found, dict) else DEFAULT
 
 
 def distance_of(time_800_500: Array, test: EndQuench) -> Array:

@@ -59,6 +59,7 @@ def document(test: EndQuench) -> dict[str, Any]:
             "critical_rate_half_martensite_K_per_s": test.critical.half,
         },
         "band": _band(test),
+        "kinetics": test.kinetics.name,
         "critical_degC": test.result.critical_degC,
         "time_error_K": test.result.time_error_K,
         "grid_error_K": test.result.grid_error_K,

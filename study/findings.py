@@ -12,7 +12,7 @@ from midradius.study.case import Asked
 from midradius.study.result import Position, SoakFields
 from midradius.study.soaktext import soak_fields
 from midradius.study.worth import Worth
-from midradius.thermo import conversion, diffusional, equilibrium, martensite, network
+from midradius.thermo import conversion, equilibrium, network, ratesets
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.phases import PHASE_NAMES
@@ -115,11 +115,12 @@ def critical_degC(case: Asked, left: Austenite) -> Mapping[str, float]:
     """The critical temperatures of the steel and of its austenite [degC]."""
     eq = equilibrium.equilibrium(case.steel.steel.composition)
     rich = np.isfinite(eq.acm) and eq.acm > eq.ae1
-    start = float(martensite.start(left.composition, left.carbon_pct))
+    chosen = case.steel.kinetics
+    start = ratesets.martensite_start(chosen, left)
     return {
         "Acm" if rich else "Ae3": (eq.acm if rich else eq.ae3) - ZERO_DEGC,
         "Ae1": eq.ae1 - ZERO_DEGC,
-        "Bs": diffusional.bainite_start(left.composition) - ZERO_DEGC,
+        "Bs": ratesets.bainite_start(chosen, left.composition) - ZERO_DEGC,
         "Ms": start + (case.steel.shifts.martensite_start - ZERO_DEGC),
     }
 

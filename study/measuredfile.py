@@ -64,13 +64,16 @@ def read_file(path: Path, *, remedy: str) -> MeasuredFile:
         line = data.count(b"\n", 0, error.start) + 1
         value = f"byte {data[error.start]:#04x} is not UTF-8"
         raise one_fault(shown, value, "Save the file as UTF-8 text.", line) from None
-    rows = _rows(text, shown, remedy)
+    # a remark may hold semicolons
+    said = (line for line in text.splitlines() if not line.lstrip().startswith("#"))
+    divided = any(";" in line for line in said)
+    rows = _rows(text, shown, remedy, ";" if divided else ",")
     if not rows:
         raise one_fault(shown, "the file holds no rows", remedy)
     line, head = rows[0]
     plain = ["_".join(cell.casefold().replace("[", "").replace("]", "").split()) for cell in head]
     digest = hashlib.sha256(data).hexdigest()
-    return MeasuredFile(shown, path.name, digest, line, tuple(plain), tuple(rows[1:]), ";" in text)
+    return MeasuredFile(shown, path.name, digest, line, tuple(plain), tuple(rows[1:]), divided)
 
 
 def one_fault(shown: str, value: str, remedy: str, line: int | None = None) -> CaseFaults:
@@ -96,9 +99,9 @@ def _bytes(path: Path, name: str) -> bytes:
     return data
 
 
-def _rows(text: str, name: str, remedy: str) -> list[tuple[int, tuple[str, ...]]]:
+def _rows(text: str, name: str, remedy: str, delimiter: str) -> list[tuple[int, tuple[str, ...]]]:
     """Every row that says something, with its line."""
-    reader = csv.reader(io.StringIO(text, newline=""), delimiter=";" if ";" in text else ",")
+    reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter)
     try:
         found = [(reader.line_num, tuple(cell.strip() for cell in row)) for row in reader]
     except csv.Error as error:

@@ -276,6 +276,7 @@ def _result(
         sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
         + mesh_statements(cut)
+        + (case.steel.kinetics.text,)
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=soak_warnings(main.worth.soaked, case.soak.at or 0.0, cut.body.volume)
         + setup.cautions

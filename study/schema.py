@@ -10,6 +10,7 @@ from typing import Any
 from midradius.fem.furnace import furnace_names
 from midradius.fem.media import names
 from midradius.thermo.grades import all_grades
+from midradius.thermo.ratechoice import DEFAULT, NAMES
 from midradius.thermo.steel import ELEMENTS, HARD_BOUNDS
 from midradius.thermo.units import Kind, example, pattern, show
 
@@ -83,6 +84,11 @@ def _steel() -> Schema:
                 "pattern": r"^\s*[Aa][Ss][Tt][Mm]\s*-?[0-9]{1,2}(?:\.[0-9]{1,3})?\s*$",
                 "examples": ["ASTM 7"],
             },
+            "kinetics": {
+                "description": f"Set of rates; left out: {DEFAULT.name}.",
+                "enum": list(NAMES),
+            },
+            "transformation": _text("CSV of isothermal transformation of this heat.", 1000),
             "calibration": _text("File of `midradius calibrate --save`, of this heat.", 1000),
         },
         (),

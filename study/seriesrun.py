@@ -304,4 +304,5 @@ def _assumptions(case: SeriesCase, given: Histories) -> tuple[str, ...]:
         )
     if case.steel.calibration:
         lines.append(case.steel.calibration.text)
+    lines.append(case.steel.kinetics.text)
     return (*lines, *given.remarks)

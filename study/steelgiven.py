@@ -6,7 +6,11 @@ from dataclasses import replace
 from pathlib import Path
 
 from midradius.study import casekeys as keys
-from midradius.study.calibrationfile import read_calibration, refuse_other_steel
+from midradius.study.calibrationfile import (
+    read_calibration,
+    refuse_other_rates,
+    refuse_other_steel,
+)
 from midradius.study.case import SteelInput
 from midradius.study.caseblocks import steel_input
 from midradius.study.casefaults import Notebook
@@ -14,6 +18,7 @@ from midradius.study.caselines import locate
 from midradius.study.casetable import Table
 from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import grade
+from midradius.thermo.ratechoice import named
 from midradius.thermo.units import Kind, parse, show
 
 _SUFFIXES = (".toml", ".csv")
@@ -61,6 +66,14 @@ def calibrated(steel: SteelInput, file: Path | None) -> SteelInput:
         return steel
     found = read_calibration(file)
     refuse_other_steel(found, steel.steel)
+    refuse_other_rates(found, steel.kinetics.name)
+    if steel.transformation is not None:
+        raise InputFault(
+            "--calibration",
+            f'"{file}"',
+            "left out for a steel with measured transformation curves",
+            "A calibration was fitted to the formulas; measured curves need none.",
+        )
     return replace(steel, shifts=found.shifts, calibration=found)
 
 
@@ -113,6 +126,22 @@ def grain_of(text: str) -> float | None:
     if found and low <= float(found[1]) <= high:
         return float(found[1])
     raise InputFault("grain", f'"{text}"', f'"ASTM {low:g}" to "ASTM {high:g}", or "{SOAK}"')
+
+
+def with_kinetics(given: SteelInput, text: str | None) -> SteelInput:
+    """The steel with the set of rates that an option names; unchanged where it is not given.
+
+    Raises
+    ------
+    InputFault
+        No such set, or another one than that of the steel's calibration.
+    """
+    if text is None:
+        return given
+    name = named(text)
+    if given.calibration is not None:
+        refuse_other_rates(given.calibration, name)
+    return replace(given, kinetics=replace(given.kinetics, name=name))
 
 
 def quantity(name: str, text: str | None, kind: Kind, within: tuple[float, float]) -> float | None:

@@ -32,11 +32,13 @@ class MeasuredProduct:
 class Measured:
     """What was measured on a heat, from the file ``name``.
 
+    ``points`` are the measured ones: product, temperature [K], time [s] and share [-].
     ``martensite_start`` [K] and ``martensite_rate`` [1/K] are None where the formulas hold.
     """
 
     name: str
     products: tuple[MeasuredProduct, ...]
+    points: tuple[tuple[str, float, float, float], ...] = ()
     martensite_start: float | None = None
     martensite_rate: float | None = None
 

@@ -87,6 +87,12 @@ def martensite_shift(kinetics: Kinetics, austenite: Austenite) -> tuple[float, f
     return start, rate
 
 
+def martensite_start(kinetics: Kinetics, austenite: Austenite) -> float:
+    """Martensite start [K] of an austenite: measured, else by the formula."""
+    formula = float(martensite.start(austenite.composition, austenite.carbon_pct))
+    return formula + martensite_shift(kinetics, austenite)[0]
+
+
 def range_notes(
     kinetics: Kinetics, composition: Composition, carbon_pct: float, grain_astm: float
 ) -> list[RangeNote]:
