@@ -23,6 +23,9 @@ from midradius.thermo.ratechoice import Kinetics
 from midradius.thermo.soaked import Paths, Soaked, alike, initial_states
 from midradius.thermo.steel import Composition, Steel
 
+# Heating takes few steps; its error stays in the field that cooling starts from.
+FINER = 0.3
+
 
 @dataclass(frozen=True)
 class Begun:
@@ -77,7 +80,7 @@ def begin(
         start_temp=furnace.start_temp,
         places=places,
         watched=watched,
-        tolerance=tolerance,
+        tolerance=FINER * tolerance,
         follow=paths.follow,
     )
     soaked = paths.end(case.steel.grain_astm)

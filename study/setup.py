@@ -13,6 +13,7 @@ from midradius.fem.section import Section
 from midradius.fem.surface import beyond, film, film_from_csv
 from midradius.study.case import Case, MediumUse, PositionInput, SectionInput, Stage
 from midradius.study.heatsetup import HeatSetup, prepare_heating
+from midradius.thermo import heating
 from midradius.thermo.errors import InputFault
 from midradius.thermo.source import RangeNote, Source
 
@@ -200,6 +201,10 @@ def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
             " stage, set to the soak temperature at once; its time counts from the end of that"
             " stage. The steel takes up its heat of transformation at equilibrium."
         )
+        composition = case.steel.steel.composition
+        if not heating.range_notes(composition):
+            ac1, ac3 = (line(composition) - ZERO_DEGC for line in (heating.ac1, heating.ac3))
+            soaked += f" Andrews gives Ac1 {ac1:.0f} and Ac3 {ac3:.0f} degC for heating faster."
     lines = [
         soaked,
         "One part alone in the bath; every zone has one film over all of it. Packed loads cool"

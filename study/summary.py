@@ -293,7 +293,15 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
     else:
         keys["hardness, grid"] = "hardness_grid_error_hv"
         rows = [
-            ("heat balance closes to", f"{_closure(result)} of the heat given"),
+            (
+                "heat balance closes to",
+                f"{_closed(result.heat_balance_relative)} of the heat given",
+            ),
+            *(
+                [("in the furnace to", f"{_closed(result.heating.heat_balance_relative)} of it")]
+                if result.heating
+                else []
+            ),
             ("temperature, time steps", _error(result.time_error_K, "K")),
             ("temperature, grid", _error(result.grid_error_K, "K")),
         ]
@@ -314,11 +322,9 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
     return rows
 
 
-def _closure(result: Result) -> str:
+def _closed(relative: float) -> str:
     # Below it the digits are those of the last bit, not of the solver.
-    if result.heat_balance_relative < _LAST_BIT:
-        return f"better than {_LAST_BIT:.0e}"
-    return f"{result.heat_balance_relative:.1e}"
+    return f"better than {_LAST_BIT:.0e}" if relative < _LAST_BIT else f"{relative:.1e}"
 
 
 def _error(value: float, unit: str) -> str:
