@@ -1,13 +1,12 @@
 """From the heat stages of a case to what the solver takes, and what that assumes."""
 
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass
 
 from midradius.fem.convection import Geometry
 from midradius.fem.furnace import furnace_film, furnace_medium, rises
 from midradius.fem.heatup import HeatingStage
 from midradius.fem.media import ZERO_DEGC
-from midradius.fem.section import Section
 from midradius.fem.surface import Film
 from midradius.study.case import Case, Stage
 from midradius.thermo.source import RangeNote, Source
@@ -27,12 +26,18 @@ class HeatSetup:
 
 
 def prepare_heating(
-    case: Case, section: Section, *, length: float, geometry: Geometry
+    case: Case,
+    zones: tuple[str, ...],
+    *,
+    shut: Collection[str],
+    length: float,
+    geometry: Geometry,
 ) -> HeatSetup:
     """Everything the solver needs of a case up to the end of its soak.
 
-    ``length`` [m] and ``geometry`` are what the part looks like to a gas. A bore that
-    the case insulates stays insulated in the furnace.
+    ``length`` [m] and ``geometry`` are what the part looks like to a gas. The zones
+    ``shut`` see nothing of the furnace: those that every later stage insulates, such as
+    a plugged bore or a plane of symmetry.
     """
     if not case.heating:
         return HeatSetup()
@@ -59,7 +64,7 @@ def prepare_heating(
                 geometry=geometry,
                 emissivity=case.section.emissivity,
             )
-            films.append(_by_zone(case, section, film))
+            films.append(_by_zone(zones, shut, film))
             notes += left
         stages.append(
             HeatingStage(
@@ -85,8 +90,6 @@ def prepare_heating(
     )
 
 
-def _by_zone(case: Case, section: Section, film: Film) -> Mapping[str, Film]:
-    bore = case.section.bore_medium
-    shut = bore is not None and bore.name == "insulated"
+def _by_zone(zones: tuple[str, ...], shut: Collection[str], film: Film) -> Mapping[str, Film]:
     none = Film(film.temp, 0.0 * film.htc, film.name)
-    return {zone: none if shut and zone == "bore" else film for zone in section.zones}
+    return {zone: none if zone in shut else film for zone in zones}

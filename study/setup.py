@@ -85,7 +85,8 @@ def prepare(case: Case) -> Setup:
     strongest: dict[str, float] = dict.fromkeys(section.zones, 0.0)
     hottest = max(stage.at or 0.0 for stage in (*case.heating, case.soak))
     length, geometry = _size(section)
-    furnace = prepare_heating(case, section, length=length, geometry=geometry)
+    shut = {zone for zone in section.zones if all(_insulated(use[zone]) for use in uses)}
+    furnace = prepare_heating(case, section.zones, shut=shut, length=length, geometry=geometry)
     for stage, use in zip(case.cooling, uses, strict=True):
         surfaces = {}
         for zone, medium_use in use.items():
@@ -132,6 +133,10 @@ def uses_of(section: Section, given: SectionInput, stage: Stage) -> dict[str, Me
             )
         found[zone] = use
     return found
+
+
+def _insulated(use: MediumUse) -> bool:
+    return use.film_file is None and medium(use.name or "").name == "insulated"
 
 
 _GEOMETRY: Mapping[str, Geometry] = {
@@ -196,10 +201,11 @@ def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
     )
     if case.heating:
         soaked = (
-            "One part alone in the furnace, which keeps its temperature; every face but an"
-            " insulated bore sees it alike. The soak goes on in the furnace of the last heat"
-            " stage, set to the soak temperature at once; its time counts from the end of that"
-            " stage. The steel takes up its heat of transformation at equilibrium."
+            "One part alone in the furnace, which keeps its temperature; every face sees it"
+            " alike, but those that stay insulated from then on. The soak goes on in the"
+            " furnace of the last heat stage, set to the soak temperature at once; its time"
+            " counts from the end of that stage. The steel takes up its heat of transformation"
+            " at equilibrium."
         )
         composition = case.steel.steel.composition
         if not heating.range_notes(composition):
