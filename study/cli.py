@@ -202,8 +202,12 @@ def _write_new(file: Path, content: str) -> None:
 
 
 @cli.command(short_help="List the media and their bath temperatures.")
-def media() -> None:
-    """List the media and the bath temperatures they are known for."""
+@click.option("--heating", is_flag=True, help="List those that a part is heated in.")
+def media(*, heating: bool) -> None:
+    """List the media and the bath or furnace temperatures they are known for."""
+    if heating:
+        _heating_media()
+        return
     from midradius.fem.media import ZERO_DEGC, medium, names
 
     for name in names():
@@ -214,6 +218,16 @@ def media() -> None:
             f"film +-{found.uncertainty_pct:.0f} %" if found.uncertainty_pct else "no heat passes"
         )
         click.echo(f"{name:26} {bath:18} {sure}")
+
+
+def _heating_media() -> None:
+    from midradius.fem.furnace import ZERO_DEGC, furnace_medium, furnace_names
+
+    for name in furnace_names():
+        found = furnace_medium(name)
+        low, high = found.coldest - ZERO_DEGC, found.hottest - ZERO_DEGC
+        span = f"{low:.0f} to {high:.0f} degC"
+        click.echo(f"{name:28} {span:18} film +-{found.uncertainty_pct:.0f} %")
 
 
 @cli.command()

@@ -13,6 +13,7 @@ from pathlib import Path
 
 import pytest
 
+from midradius.fem.furnace import furnace_names
 from midradius.thermo.phases import PHASE_NAMES
 
 ESCAPE = "\x1b"
@@ -237,6 +238,12 @@ def test_check_says_sound_and_writes_nothing(call, case: Path) -> None:
     answer = call("check", "case.toml")
     assert (answer.code, answer.out, answer.err) == (0, "case.toml: sound (Stud HF-0001)\n", "")
     assert listing(case.parent) == before
+
+
+def test_media_that_heat_are_listed_with_the_furnaces_they_are_for(call) -> None:  # type: ignore[no-untyped-def]
+    lines = call("media", "--heating").out.splitlines()
+    assert [line[:28].strip() for line in lines] == list(furnace_names())
+    assert lines[3] == "vacuum furnace               300 to 1200 degC   film +-20 %"
 
 
 def test_media_and_steels_are_lists_of_what_a_case_may_name(call, case: Path, small: str) -> None:
