@@ -298,7 +298,12 @@ def _honesty(result: Result) -> list[tuple[str, str]]:
                 f"{_closed(result.heat_balance_relative)} of the heat given",
             ),
             *(
-                [("in the furnace to", f"{_closed(result.heating.heat_balance_relative)} of it")]
+                [
+                    (
+                        "balance in the furnace",
+                        f"{_closed(result.heating.heat_balance_relative)} of it",
+                    )
+                ]
                 if result.heating
                 else []
             ),
