@@ -108,8 +108,8 @@ class Run:
         self._body = Body(
             mass=body.volume * density,
             volume=np.ascontiguousarray(body.volume),
-            tail=np.ascontiguousarray(body.edge[:, 0]),
-            head=np.ascontiguousarray(body.edge[:, 1]),
+            tail=body.edge[:, 0].astype(np.uint32),
+            head=body.edge[:, 1].astype(np.uint32),
             conductance_length=np.ascontiguousarray(body.conductance_length),
             face_node=body.face_node,
             face_area=body.face_area,

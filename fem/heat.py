@@ -31,6 +31,9 @@ GAMMA = 2.0 - np.sqrt(2.0)  # where the first stage ends, as a share of the step
 IMPLICIT = 1.0 - np.sqrt(2.0) / 2.0  # weight of the newest rate in both stages
 EXPLICIT = np.sqrt(2.0) / 4.0  # weight of the two older rates in the second
 MOST_ITERATIONS = 12
+INEXACT = 0.005  # error of a move against the move itself
+CAREFUL = 0.3  # share of the tolerance that an extrapolated error may use
+SURELY_FALLS = 0.3  # ratio of two moves up to which Newton's method is trusted to go on so
 
 
 class Body(NamedTuple):
@@ -201,7 +204,8 @@ def stage(
 ) -> int:
     """One implicit stage by Newton's method; returns the iterations, 0 if it failed."""
     n = len(temp)
-    stored, capacity, move = work[0], work[1], work[2]
+    stored, capacity, move, rest = work[0], work[1], work[2], work[3]
+    before, enough = 0.0, False
     for iteration in range(MOST_ITERATIONS):
         for i in range(n):
             for column in range(N_STATE):  # assigning whole rows compiles error texts
@@ -219,17 +223,16 @@ def stage(
             # matrix keeps half the capacity so that it stays positive.
             capacity[i] = body.mass[i] * max(cp + slope, 0.5 * cp)
         heat_rate(temp, conductivity, body, skin, tables, now, rate, weight, stiff, zone_rate)
-        if iteration > 0 and work[3, 0] < tolerance:
+        if enough:
             return iteration
         for i in range(n):
-            work[4, i] = known[i] + share * rate[i] - stored[i]
+            rest[i] = known[i] + share * rate[i] - stored[i]
             capacity[i] = max(capacity[i] + share * stiff[i], 0.2 * capacity[i])
         for e in range(len(weight)):
             weight[e] *= share
-        # The first move is corrected by the second anyway: an iterative scheme may
-        # stop early on it.
-        accuracy = 5.0 * tolerance if iteration == 0 else 0.1 * tolerance
-        if solve(how, capacity, weight, work[4], move, accuracy) < 0:
+        # The second move corrects what an iterative scheme leaves of the first.
+        accuracy = tolerance if iteration == 0 else 0.01 * tolerance
+        if solve(how, capacity, weight, rest, move, accuracy, INEXACT) < 0:
             return 0
         most = 0.0
         for i in range(n):
@@ -237,5 +240,9 @@ def stage(
             most = max(most, abs(move[i]))
         if not most < 1e4:
             return 0
-        work[3, 0] = most
+        # What is left falls at least as fast from this move as this one fell.
+        falls = most / before if before > 0.0 else 1.0
+        left = most * falls / (1.0 - falls) if falls < SURELY_FALLS else most
+        enough = most < tolerance or left < CAREFUL * tolerance
+        before = most
     return 0

@@ -107,7 +107,7 @@ def march(
     weight, stiff = np.empty(len(body.tail)), np.empty(n)
     n_zone = len(skin.flux)
     zone0, zone1, zone2 = np.empty(n_zone), np.empty(n_zone), np.empty(n_zone)
-    known, work = np.empty(n), np.empty((5, n))
+    known, work = np.empty(n), np.empty((4, n))
     newton = min(NEWTON_SHARE * control.tolerance, NEWTON_MOST)
     n_watch = progress.history.shape[1]
 

@@ -6,6 +6,7 @@ materials: an inert one, and a transforming steel whose rates a method-of-lines
 peer integrates as further unknowns of the same system.
 """
 
+import time
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,7 +15,7 @@ from midradius.fem.coupled import Run, Surroundings, Watch
 from midradius.fem.grids import axis, line, rectangle
 from midradius.fem.volumes import ControlVolumes
 from midradius.thermo import kinetics as kin
-from midradius.thermo.arrays import Array
+from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.assemble import inert_tables, initial_state, steel_tables
 from midradius.thermo.austenite import soak
 from midradius.thermo.grades import grade
@@ -53,11 +54,18 @@ def enthalpy(temp: Array) -> Array:
 
 @dataclass(frozen=True)
 class Outcome:
-    """Stored temperatures (n_time, n_node) [K] and the counts."""
+    """Stored temperatures (n_time, n_node) [K] and the counts.
+
+    ``times`` of the steps, ``at_steps`` (n_step + 1,) the temperature of the watched
+    node then [K], ``seconds`` of processor time.
+    """
 
     field: Array
     n_step: int
     balance: float
+    times: Array
+    at_steps: Array
+    seconds: float
 
 
 def round_section(n_cell: int = 200) -> ControlVolumes:
@@ -70,6 +78,65 @@ def square_quarter(n_cell: int) -> ControlVolumes:
     """A quarter of a 200 mm square bar."""
     side = axis(0.0, 0.1, n_cell, fine="even", first=1.0, low=None, high="side")
     return rectangle(side, side, "plane")
+
+
+def block_corner(n_cell: int) -> ControlVolumes:
+    """The corner of a block, 100 mm each way: three faces cooled, three of symmetry."""
+    along = axis(0.0, 0.1, n_cell, fine="even", first=1.0, low=None, high="side")
+    nodes, size = along.nodes, np.diff(along.faces)
+    n = len(nodes)
+    number = np.arange(n**3).reshape(n, n, n)
+    area = size[:, None, None] * size[None, :, None]  # across the last direction
+    through = area / np.diff(nodes)[None, None, :]
+    edge, conductance, node, faces = [], [], [], []
+    for way in range(3):
+        turned = np.moveaxis(number, way, 2)
+        edge.append(np.stack([turned[:, :, :-1].ravel(), turned[:, :, 1:].ravel()], axis=1))
+        conductance.append(through.ravel())
+        node.append(turned[:, :, -1].ravel())
+        faces.append(np.broadcast_to(area, (n, n, 1)).ravel())
+    return ControlVolumes(
+        points=np.stack([x.ravel() for x in np.meshgrid(nodes, nodes, nodes, indexing="ij")], 1),
+        volume=(size[:, None, None] * size[None, :, None] * size[None, None, :]).ravel(),
+        edge=np.concatenate(edge),
+        conductance_length=np.concatenate(conductance),
+        face_node=np.concatenate(node),
+        face_area=np.concatenate(faces),
+        face_zone=np.zeros(3 * n * n, dtype=np.int64),
+        zones=("side",),
+        sense="plane",
+    )
+
+
+def of_triangles(points: Array, cells: IntArray) -> ControlVolumes:
+    """Linear triangles (n_cell, 3) of the quarter square: stiffness weights, lumped capacity."""
+    n = len(points)
+    corner = points[cells]
+    weight, pairs = [], []
+    for k in range(3):
+        a, b = corner[:, (k + 1) % 3] - corner[:, k], corner[:, (k + 2) % 3] - corner[:, k]
+        cross = a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0]
+        weight.append(0.5 * (a * b).sum(axis=1) / np.abs(cross))  # half the cotangent
+        pairs.append(np.sort(cells[:, [(k + 1) % 3, (k + 2) % 3]], axis=1))
+    key = np.concatenate(pairs) @ np.array([n, 1])
+    unique, inverse, count = np.unique(key, return_inverse=True, return_counts=True)
+    edge = np.stack([unique // n, unique % n], axis=1)
+    outer = edge[count == 1]
+    cooled = outer[np.isclose(points[outer], points.max()).all(axis=1).any(axis=1)]
+    length = np.linalg.norm(np.diff(points[cooled], axis=1)[:, 0], axis=1)
+    area = np.bincount(cooled.ravel(), np.repeat(0.5 * length, 2), n)
+    node = np.flatnonzero(area)
+    return ControlVolumes(
+        points=points,
+        volume=np.bincount(cells.ravel(), np.repeat(np.abs(cross) / 6.0, 3), n),
+        edge=edge,
+        conductance_length=np.bincount(inverse, np.concatenate(weight)),
+        face_node=node,
+        face_area=area[node],
+        face_zone=np.zeros(len(node), dtype=np.int64),
+        zones=("side",),
+        sense="plane",
+    )
 
 
 def inert() -> Tables:
@@ -96,6 +163,7 @@ def ours(
     duration: float = DURATION,
     start: Array | None = None,
     carbon_pct: float = 0.0,
+    watched: int = 0,
 ) -> Outcome:
     """Our solver on a section; ``start`` is one node's state."""
     n = body.n_node
@@ -110,7 +178,7 @@ def ours(
         temp=np.full(n, START),
         state=state,
         carbon_pct=carbon_pct,
-        watch=Watch(np.array([[0]]), np.ones((1, 1))),
+        watch=Watch(np.array([[watched]]), np.ones((1, 1))),
         field_times=STORED * duration / DURATION,
     )
     around = Surroundings(
@@ -120,10 +188,20 @@ def ours(
         moment=np.zeros(1),
         flux=np.zeros(1),
     )
+    begin = time.process_time()
     run.stage(around, duration=duration, tolerance=tolerance)
+    seconds = time.process_time() - begin
     lost = run.heat_at_start - run.heat()
     balance = abs(lost + float(run.progress.zone_heat.sum())) / lost
-    return Outcome(run.progress.field, int(run.progress.clock[3]), balance)
+    history = run.history
+    return Outcome(
+        run.progress.field,
+        int(run.progress.clock[3]),
+        balance,
+        history[:, 0, 0],
+        history[:, 1, 0],
+        seconds,
+    )
 
 
 def right_hand_side(body: ControlVolumes):  # type: ignore[no-untyped-def]

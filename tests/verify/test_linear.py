@@ -5,6 +5,8 @@ sweep on a line against a banded one. The systems are those of heat conduction:
 ``excess`` is the heat capacity over a step, in units of the conductance.
 """
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
@@ -79,6 +81,10 @@ BODIES = {
     "graded axisymmetric 32": (square(32, first=1 / 400, sense="axisymmetric"), 3.0, 47),
     "three times as long, 48": (square(48, first=0.0, aspect=3.0), 3.0, 28),
     "ten times as long, 48": (square(48, first=0.0, aspect=10.0), 3.0, 33),
+    "a hundred times as long, 48": (square(48, first=0.0, aspect=100.0), 3.0, 20),
+    "a hundred times as long, long steps": (square(48, first=0.0, aspect=100.0), 1e-3, 26),
+    "graded 128, strongly": (square(128, first=1 / 12_000), 3.0, 24),
+    "graded 128, strongly, long steps": (square(128, first=1 / 12_000), 1e-3, 29),
 }
 
 
@@ -120,6 +126,46 @@ def test_a_conductivity_that_jumps_a_thousandfold_takes_few_iterations() -> None
     out, iterations = solved(body, excess, weight, rhs)
     assert_allclose(out, spsolve(system, rhs), rtol=0.0, atol=10.0 * ACCURACY)
     assert 0 < iterations <= 44
+
+
+def obtuse(cells: int) -> ControlVolumes:
+    """Right triangles sheared by a cell and more: a third of the weights is negative."""
+    body = square(cells, first=0.0)
+    n = cells + 1
+    number = np.arange(n * n).reshape(n, n)
+    # stiffness of linear triangles on the parallelogram (1, 0), (shear, 1)
+    shear = 1.4
+    edge = [(number[:-1], number[1:], 1.0 + shear**2 - shear)]
+    edge += [
+        (number[:, :-1], number[:, 1:], 1.0 - shear),
+        (number[1:, :-1], number[:-1, 1:], shear),
+    ]
+    return replace(
+        body,
+        edge=np.concatenate([np.stack([a.ravel(), b.ravel()], axis=1) for a, b, _ in edge]),
+        conductance_length=np.concatenate([np.full(a.size, w) for a, _, w in edge]),
+    )
+
+
+@pytest.mark.parametrize("share", [1e-3, 3.0, 3e3])
+def test_obtuse_triangles_are_solved_though_some_weights_are_negative(share: float) -> None:
+    body = obtuse(64)
+    assert body.conductance_length.min() < 0.0
+    excess = share * body.volume
+    system = matrix(body, excess, body.conductance_length)
+    expected = np.random.default_rng(7).uniform(-10.0, 10.0, body.n_node)
+    out, iterations = solved(body, excess, body.conductance_length, np.asarray(system @ expected))
+    assert_allclose(out, expected, rtol=0.0, atol=10.0 * ACCURACY)
+    assert 0 < iterations <= 70  # 54 measured
+
+
+def test_no_heat_is_lost_however_early_the_iteration_stops() -> None:
+    body = square(64, first=1 / 800)
+    excess = 3.0 * body.volume
+    rhs = np.random.default_rng(8).uniform(0.0, 1.0, body.n_node)
+    out = np.empty(body.n_node)
+    assert solve(scheme(body), excess, body.conductance_length, rhs, out, 0.0, 0.3) < 5
+    assert_allclose((excess * out).sum(), rhs.sum(), rtol=1e-12, atol=0.0)
 
 
 def test_a_smooth_load_is_solved_as_well_as_a_rough_one() -> None:
