@@ -290,7 +290,9 @@ def advance(
                 states[node, COLDEST] = min(states[node, COLDEST], to_temp)
                 return slope
         reached = from_temp + (lap + 1.0) / n_pass * stride
-        if reached < states[node, COLDEST]:
+        if reached >= states[node, COLDEST]:
+            continue
+        if reached < start_of[0]:  # carbon only lowers it
             carbon = states[node, CARBON_AUSTENITE] / austenite
             start = start_of[0] - start_of[1] * (1.0 - np.exp(-start_of[2] * carbon))
             if reached < start:
@@ -304,7 +306,7 @@ def advance(
                 if lap == n_pass - 1:
                     h_martensite = value[row, H_MARTENSITE] + carbon * value[row, H_MARTENSITE_C]
                     slope += (h_austenite - h_martensite) * speed * austenite
-            states[node, COLDEST] = reached
+        states[node, COLDEST] = reached
     return slope
 
 
