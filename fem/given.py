@@ -1,9 +1,7 @@
 """Temperatures that come from elsewhere: another analysis, or thermocouples.
 
-`Histories` is what every reader makes of its file: times, and the samples one after the
-other, so that a million nodes need the memory of a few samples, not of all. `follow`
-carries every node along them three times: straight lines through all samples, straight
-lines through every second one, and a cubic through all.
+`follow` carries every node along its `Histories` three times: straight lines through all
+samples, straight lines through every second one, and a cubic through all.
 
 Model
 -----
@@ -24,18 +22,16 @@ Samples that show the curve. A peak or a plateau that falls between all samples 
 trace in them, and none in the estimate.
 """
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from midradius.fem.coupled import NEVER_MARKED
-from midradius.fem.drawing import Drawing
 from midradius.fem.follow import carry, end_slopes, slopes
+from midradius.fem.histories import Histories
 from midradius.fem.march import N_MARK
-from midradius.fem.place import Line
 from midradius.fem.remains import Remains, remains
 from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.errors import InputFault
@@ -51,57 +47,6 @@ COLDEST_K, HOTTEST_K = 250.0, 1500.0  # where the thermal properties are known
 REHEATED_K = 5.0  # above Ae1 and what was reached: beyond a thermocouple's noise [estimate]
 TRANSFORMED = 0.01  # of the mass, that must not turn back
 PER_THREAD = 20_000  # nodes below which a second thread costs more than it gives
-
-Samples = Callable[[], Iterator[Array]]
-
-
-@dataclass(frozen=True)
-class GivenMesh:
-    """The mesh of a file: ``points`` (n_node, 3) [m]; cells by meshio's names of kinds, in
-    the order of the file; arrays of its last sample as they were, those of cells (n_cell,
-    ...) over all blocks."""
-
-    points: Array
-    cells: tuple[tuple[str, IntArray], ...]
-    point_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
-    cell_data: Mapping[str, NDArray[np.generic]] = field(default_factory=dict)
-
-
-@dataclass(frozen=True)
-class Histories:
-    """Temperatures of nodes over time.
-
-    ``times`` (n_time,) [s] rise; ``samples()`` yields n_time arrays (n_node,) [K], anew
-    at every call. ``text`` says what was read, for a person. Where the file has them:
-    ``names`` (n_node,) of the nodes, ``points`` (n_node, n_dim) [m] of which at least
-    ``least_dim`` coordinates tell a place, ``depth`` (n_node,) [m] below the surface,
-    ``places`` by name, the ``mesh``, a ``drawing``, the ``line`` of a profile and the
-    ``sense`` as sections have them. ``remarks`` say what was left out in reading.
-    """
-
-    times: Array
-    n_node: int
-    samples: Samples
-    text: str
-    names: tuple[str, ...] = ()
-    points: Array | None = None
-    least_dim: int = 0
-    depth: Array | None = None
-    places: Mapping[str, int] = field(default_factory=dict)
-    mesh: GivenMesh | None = None
-    drawing: Drawing | None = None
-    line: Line | None = None
-    sense: str = "nodes"
-    remarks: tuple[str, ...] = ()
-
-    def called(self, node: int) -> str:
-        """A node in words."""
-        if self.names:
-            return f'"{self.names[node]}"'
-        if self.points is None:
-            return f"node {node}"
-        at = ", ".join(f"{1e3 * x:.4g}" for x in self.points[node])
-        return f"node {node} at ({at}) mm"
 
 
 @dataclass(frozen=True)

@@ -15,7 +15,7 @@ from pathlib import Path
 import numpy as np
 
 from midradius.fem.fields import FINAL, UNIT_ENDINGS
-from midradius.fem.given import GivenMesh
+from midradius.fem.histories import GivenMesh
 from midradius.fem.meshraw import SHAPES, family
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault

@@ -17,7 +17,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from midradius.fem.drawing import Drawing
-from midradius.fem.given import GivenMesh, Histories
+from midradius.fem.histories import GivenMesh, Histories
 from midradius.fem.meshguard import guarded, read_mesh
 from midradius.fem.meshraw import SHAPES, RawMesh, family
 from midradius.thermo.arrays import Array, IntArray

@@ -12,7 +12,7 @@ from pathlib import Path
 import numpy as np
 
 from midradius.fem.drawing import Drawing
-from midradius.fem.given import Histories
+from midradius.fem.histories import Histories
 from midradius.fem.meshraw import SHAPES
 from midradius.fem.place import Line
 from midradius.fem.record import Record, read_record

@@ -11,7 +11,7 @@ from pathlib import Path
 
 import numpy as np
 
-from midradius.fem.given import Histories
+from midradius.fem.histories import Histories
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 

@@ -161,6 +161,9 @@ def check(case: Path) -> None:
 
     with _answered():
         asked = read_any(case)
+        from midradius.study import job
+
+        job.look(asked)
     click.echo(f"{_printable(case)}: sound ({asked.title})")
 
 
@@ -173,11 +176,17 @@ def check(case: Path) -> None:
     show_default=True,
     help="Form of the section.",
 )
-def new(file: Path | None, form: str) -> None:
+@click.option(
+    "--temperatures",
+    "given",
+    is_flag=True,
+    help="No section: temperatures of a file, measured or computed elsewhere.",
+)
+def new(file: Path | None, form: str, given: bool) -> None:
     """Write a commented starter case to FILE, or to the screen without one."""
-    from midradius.study.starter import text
+    from midradius.study.starter import text, text_with_temperatures
 
-    content = text(form)
+    content = text_with_temperatures() if given else text(form)
     if file is None:
         click.echo(content, nl=False)
         return

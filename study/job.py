@@ -32,6 +32,28 @@ _WRITERS = (
 )
 
 
+def look(case: "Case | SeriesCase") -> None:
+    """Read what a case on thermocouples names, and solve nothing.
+
+    Raises
+    ------
+    CaseFaults
+        The file cannot be read, or lacks what the case names.
+    """
+    from midradius.study.seriescase import TABLE, SeriesCase
+
+    if not isinstance(case, SeriesCase) or case.temperatures.kind != TABLE:
+        return  # other files need numerics to be read
+    from midradius.study.seriesopen import histories, places
+
+    try:
+        places(case, histories(case.temperatures))
+    except InputFault as fault:
+        if not case.path:
+            raise
+        raise CaseFaults((placed(fault, case.text, case.path),)) from fault
+
+
 def solve(case: "AnyCase", *, tell: Tell | None = None) -> "Result":
     """Solve a case, given as such or as the path of its file, and return the result.
 

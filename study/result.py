@@ -16,7 +16,7 @@ from midradius.thermo.arrays import Array, BoolArray, IntArray
 from midradius.thermo.source import RangeNote, Source
 
 if TYPE_CHECKING:
-    from midradius.fem.given import GivenMesh
+    from midradius.fem.histories import GivenMesh
 
 
 @dataclass(frozen=True)

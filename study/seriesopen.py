@@ -4,7 +4,7 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from midradius.fem.given import Histories
+from midradius.fem.histories import Histories
 from midradius.fem.section import Place
 from midradius.study.case import PositionInput
 from midradius.study.casetable import nearest, one_of

@@ -11,7 +11,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from midradius.fem import given as giving
-from midradius.fem.given import HALVED, Followed, Histories, follow
+from midradius.fem.given import HALVED, Followed, follow
+from midradius.fem.histories import Histories
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.remains import Remains
 from midradius.fem.section import Place
@@ -292,7 +293,8 @@ def _assumptions(case: SeriesCase, given: Histories) -> tuple[str, ...]:
         "Temperatures are taken as given: neither heat nor the latent heat of what forms is"
         " balanced, and no grid is judged. Whoever computed or measured them answers for them.",
         "Every node has the austenite that the soak of the case leaves, when its history begins.",
-        "Between samples the temperature is a straight line; nothing is smoothed.",
+        "Between samples the temperature is a straight line. Nothing is smoothed: scatter of a"
+        " sensor enters the cooling rate at 700 degC, which is the slope between two samples.",
         "Phases and hardness are those at 20 degC: austenite left at the end of the file follows"
         " the martensite curve.",
     ]

@@ -1,4 +1,4 @@
-"""A commented case to start from, one for each form of section.
+"""A commented case to start from, one for each form of section, one on given temperatures.
 
 ``starter.toml`` is the case of a round; the other forms change its section and
 the place that only a round has. The part is invented.
@@ -59,6 +59,12 @@ def text(form: str = "round") -> str:
     if form != "ball":
         case = case.replace("or cells = 200", f"or cells = {_cells(form)}")
     return _SECTION.sub(lambda _: f'form = "{form}"\n{section}\n\n', case, count=1)
+
+
+def text_with_temperatures() -> str:
+    """The TOML text of a starter case on a file of temperatures, which it does not bring."""
+    file = files("midradius.study").joinpath("starter_temperatures.toml")
+    return file.read_text(encoding="utf-8")
 
 
 def _cells(form: str) -> str:

@@ -10,7 +10,8 @@ from scipy.integrate import quad
 from scipy.interpolate import PchipInterpolator
 
 from midradius.fem.follow import end_slopes, slopes
-from midradius.fem.given import Followed, Histories, follow
+from midradius.fem.given import Followed, follow
+from midradius.fem.histories import Histories
 from midradius.thermo import diffusional, kinetics
 from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import initial_state, steel_tables

@@ -15,9 +15,9 @@ from numpy.testing import assert_array_equal
 from vtkmodules.vtkIOExodus import vtkExodusIIReader, vtkExodusIIWriter
 from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridWriter
 
-from midradius.fem.given import Histories
 from midradius.fem.givenfields import write_on_mesh
 from midradius.fem.givenmesh import read_given_mesh
+from midradius.fem.histories import Histories
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 

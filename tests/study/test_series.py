@@ -15,6 +15,8 @@ from midradius.fem.record import read_record
 from midradius.study import job
 from midradius.study.casefile import CaseFaults, dumps, loads, loads_any, read_any
 from midradius.study.result import Result
+from midradius.study.schema import document
+from midradius.study.seriescase import ALL_KEYS
 from midradius.study.summary import terminal
 from midradius.thermo.phases import PHASE_NAMES
 
@@ -327,6 +329,54 @@ def test_the_command_writes_a_whole_folder_and_one_document(call: Any, tmp_path:
     kept = read_record(tmp_path / "out" / "record.h5")
     assert kept.data["errors/resampling_hardness"].values.shape == (2,)
     assert call("run", "case.toml", "--out", "out", "--quiet").code == 1
+
+
+def test_check_reads_the_columns_that_the_case_names_and_no_numerics(
+    call: Any, start: Any, tmp_path: Path
+) -> None:
+    record(tmp_path)
+    case(tmp_path, TABLE.replace("TC3", "TC9"))
+    said = call("check", "case.toml")
+    assert said.code == 2 and '"TC9", but must be headings of the file' in said.err
+    case(tmp_path, TABLE)
+    done = start("check", "case.toml", env={"PYTHONPROFILEIMPORTTIME": "1"})
+    _, imported = done.communicate()
+    assert done.returncode == 0
+    assert not {"numba", "scipy", "meshio", "h5py"} & {
+        line.rpartition("|")[2].strip() for line in imported.splitlines()
+    }
+
+
+SHIPPED = Path(__file__).resolve().parents[2] / "meshes" / "crank-block.toml"
+
+
+def test_the_shipped_record_answers_as_it_says(call: Any) -> None:
+    done = call("run", str(SHIPPED), "--out", "out", "--json")
+    assert done.code == 0
+    said = json.loads(done.out)
+    assert [p["name"] for p in said["positions"]] == ["10 mm below surface", "mid-radius", "core"]
+    # it begins at the end of the soak, not with the file
+    assert said["stages"][0]["end_s"] == 2160.0
+    assert said["resampling"]["hardness_as_quenched_error_hv"] < 5.0
+    assert {v["outcome"] for v in said["needs"]} == {"holds"}
+
+
+def test_a_starter_without_a_section_names_the_one_file_to_bring(call: Any, tmp_path: Path) -> None:
+    assert call("new", "--temperatures", "tc.toml").code == 0
+    said = call("check", "tc.toml")
+    assert said.code == 2
+    assert said.err.count("must be") == 1 and "thermocouples.csv" in said.err
+    rows = "\n".join(f"{t},{860 - t},{860 - t / 2}" for t in range(0, 700, 7))
+    (tmp_path / "thermocouples.csv").write_text(f"seconds,TC1,TC2\n{rows}\n")
+    assert call("check", "tc.toml").code == 0
+    assert call("run", "tc.toml", "--quiet").code == 0
+
+
+def test_every_series_case_fits_the_schema() -> None:
+    # the schema's own checks are those of test_case_roundtrip: here only its keys
+    known = document()["properties"]["temperatures"]["properties"]
+    assert set(known) == set(ALL_KEYS)
+    assert {"required": ["temperatures"]}.items() <= document()["oneOf"][1].items()
 
 
 def test_a_refusal_leaves_nothing_behind(call: Any, tmp_path: Path) -> None:
