@@ -277,7 +277,7 @@ def soak_and_tempers(top: Table, steel: SteelInput | None) -> tuple[Stage, ...]:
         kind = cast(StageKind | None, table.choice("stage", keys.STAGES))
         if not table.has("stage"):
             table.missing("stage", '"soak" first, then "temper"')
-        if kind in keys.COOLS:
+        if kind is not None and kind not in ("soak", "temper"):
             remedy = "Take the stage out, or describe the part by [section] instead."
             allowed = '"soak" or "temper": [temperatures] says how the part cools'
             table.fault("stage", allowed, remedy)

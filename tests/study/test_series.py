@@ -253,13 +253,14 @@ def test_faults_of_block_route_and_needs_come_together(tmp_path: Path) -> None:
         + TABLE.replace('"s"', '"sec"')
         + SOAK
         + '[[route]]\nstage = "quench"\nmedium = "still air"\n'
+        + '[[route]]\nstage = "heat"\nfurnace = "900 degC"\n'
         + '[[need]]\nquantity = "hardened depth"\nto = "50 HRC"\nat_least = "3 mm"\n'
     )
     (tmp_path / "tc.csv").write_text("")
     with pytest.raises(CaseFaults) as caught:
         loads_any(text, tmp_path / "case.toml")
     said = str(caught.value)
-    assert len(caught.value.faults) == 3
+    assert len(caught.value.faults) == 4
     assert "[temperatures] says how the part cools" in said
     assert "a hardened depth needs a section" in said
 
