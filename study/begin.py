@@ -18,7 +18,8 @@ from midradius.thermo.assemble import initial_state, stacked, steel_tables
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.calibration import Shifts
 from midradius.thermo.heatup import heating_tables
-from midradius.thermo.kinetics import Tables
+from midradius.thermo.kinetics import N_SCALE, Tables
+from midradius.thermo.nodeclocks import clock_factors
 from midradius.thermo.ratechoice import Kinetics
 from midradius.thermo.soaked import Paths, Soaked, alike, initial_states
 from midradius.thermo.steel import Composition, Steel
@@ -66,7 +67,7 @@ def begin(
         return Begun(
             temp=np.full(n_node, at),
             state=initial_state(left, steel.composition.C, at, n_node),
-            scale=soaked.scale,
+            scale=np.ones((n_node, N_SCALE)),
             tables=_tables(steel, soaked.kinds, case.steel.shifts, case.steel.kinetics),
             soaked=soaked,
             heating=None,
@@ -85,11 +86,12 @@ def begin(
     )
     soaked = paths.end(case.steel.grain_astm)
     ae1 = equilibrium.equilibrium(steel.composition).ae1
+    tables = _tables(steel, soaked.kinds, case.steel.shifts, case.steel.kinetics)
     return Begun(
         temp=heating.temp,
         state=initial_states(soaked, heating.temp, ae1),
-        scale=soaked.scale,
-        tables=_tables(steel, soaked.kinds, case.steel.shifts, case.steel.kinetics),
+        scale=clock_factors(soaked, tables, case.steel.shifts, case.steel.kinetics),
+        tables=tables,
         soaked=soaked,
         heating=heating,
     )

@@ -38,6 +38,7 @@ from midradius.thermo.arrays import Array
 from midradius.thermo.assemble import initial_state, stacked, steel_tables
 from midradius.thermo.austenite import Austenite
 from midradius.thermo.errors import InputFault
+from midradius.thermo.kinetics import N_SCALE
 from midradius.thermo.soaked import alike
 from midradius.thermo.source import RangeNote
 
@@ -109,8 +110,8 @@ def _begin(case: SeriesCase, n_node: int) -> tuple[Begun, Austenite]:
     begun = Begun(
         temp=np.full(n_node, at),
         state=initial_state(left, steel.composition.C, at, 1),
-        scale=soaked.scale,
-        tables=stacked([steel_tables(steel, left, case.steel.shifts)]),
+        scale=np.ones((n_node, N_SCALE)),
+        tables=stacked([steel_tables(steel, left, case.steel.shifts, case.steel.kinetics)]),
         soaked=soaked,
         heating=None,
     )

@@ -78,20 +78,10 @@ def steel_tables(
     value[:, kin.K_FERRITE] = properties.conductivity_ferrite(temp)
     value[:, kin.K_MARTENSITE] = properties.conductivity_martensite(temp)
     eq = equilibrium.equilibrium(composition)
-    # Rates and martensite belong to the austenite as it is: without the chromium
-    # that undissolved carbide holds.
-    soaked = equilibrium.equilibrium(austenite.composition)
-    rates = ratesets.rates(chosen, austenite, temp, soaked)
-    value[:, kin.RATE_FERRITE] = rates.ferrite / shifts.diffusional_time
-    value[:, kin.RATE_PEARLITE] = rates.pearlite / shifts.diffusional_time
-    value[:, kin.RATE_BAINITE] = rates.bainite / shifts.bainite_time
-    value[:, kin.RATE_CEMENTITE] = diffusional.cementite_rate(
-        temp, carbon_pct=carbon, grain_intercept=austenite.grain_mean_intercept
-    )
     value[:, kin.LIMIT_FERRITE] = equilibrium.ferrite_limit(eq, composition.C, temp)
     value[:, kin.LIMIT_CEMENTITE] = equilibrium.cementite_limit(eq, composition.C, temp)
     value[:, kin.CARBON_FERRITE] = eq.ferrite_solubility(temp)
-    measured = ratesets.put_measured(chosen, temp, value)
+    measured = put_rates(value, temp, austenite, shifts, chosen)
     active = (
         (value[:, kin.RATE_FERRITE] * value[:, kin.LIMIT_FERRITE] > 0.0)
         | (value[:, kin.RATE_PEARLITE] > 0.0)
@@ -111,6 +101,26 @@ def steel_tables(
         top=float(temp[active].max() + GRID_K),
         transforms=True,
     )
+
+
+def put_rates(
+    value: Array, temp: Array, austenite: Austenite, shifts: Shifts, chosen: Kinetics
+) -> tuple[str, ...]:
+    """Write the clock rates of an austenite; the products that have measured ones.
+
+    ``value`` (n_temp, n_column) changes in place, ``temp`` (n_temp,) [K].
+    """
+    # Rates and martensite belong to the austenite as it is: without the chromium
+    # that undissolved carbide holds.
+    soaked = equilibrium.equilibrium(austenite.composition)
+    rates = ratesets.rates(chosen, austenite, temp, soaked)
+    value[:, kin.RATE_FERRITE] = rates.ferrite / shifts.diffusional_time
+    value[:, kin.RATE_PEARLITE] = rates.pearlite / shifts.diffusional_time
+    value[:, kin.RATE_BAINITE] = rates.bainite / shifts.bainite_time
+    value[:, kin.RATE_CEMENTITE] = diffusional.cementite_rate(
+        temp, carbon_pct=austenite.carbon_pct, grain_intercept=austenite.grain_mean_intercept
+    )
+    return ratesets.put_measured(chosen, temp, value)
 
 
 def stacked(kinds: Sequence[Tables]) -> Tables:

@@ -36,7 +36,6 @@ from midradius.thermo.steel import Composition
 GAS_CAL = 1.987  # cal/(mol K), as printed
 KELVIN = 273.15
 CARBON_CAP_PCT = 0.77
-GRAIN_EXPONENTS = (0.41, 0.32, 0.29)  # of 2, per grain number: ferrite, pearlite, bainite
 RESIDUAL_MO_PCT = 0.03  # below it the square root of Mo would act on a residue
 
 SOURCES = (
@@ -135,9 +134,9 @@ def rates(
     )
     start = bainite_start(Composition(**{**vars(c), "C": carbon}))
     return Rates(
-        ferrite=_clock(temp, ae3, 3, 23500.0, GRAIN_EXPONENTS[0] * grain_astm, ferrite),
-        pearlite=_clock(temp, ae1, 3, 27500.0, GRAIN_EXPONENTS[1] * grain_astm, pearlite),
-        bainite=_clock(temp, start, 2, 27500.0, GRAIN_EXPONENTS[2] * grain_astm, bainite),
+        ferrite=_clock(temp, ae3, 3, 23500.0, 0.41 * grain_astm, ferrite),
+        pearlite=_clock(temp, ae1, 3, 27500.0, 0.32 * grain_astm, pearlite),
+        bainite=_clock(temp, start, 2, 27500.0, 0.29 * grain_astm, bainite),
     )
 
 

@@ -44,7 +44,6 @@ from midradius.thermo.austenite import (
     intercept_of,
     soak,
 )
-from midradius.thermo.diffusional import GRAIN_EXPONENTS
 from midradius.thermo.equilibrium import Equilibrium, equilibrium, slow_cooling
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Steel
@@ -55,6 +54,7 @@ SOURCES = (
 )
 
 ZERO_DEGC = 273.15
+BETWEEN = 4  # steps from one kind to the next
 MOST_KINDS = 12  # austenites that one section is given; nodes take the nearest in carbon
 KIND_SPACING = 5.0  # K: kinds lie on this lattice, so that grids of one part share them
 ALIKE_PCT = 1e-3  # carbon in solution that differs by less makes one kind
@@ -74,7 +74,8 @@ class Soaked:
     ``hottest`` [K] is the highest temperature reached, ``time`` [s] what the path was
     worth at its end temperature. ``regime`` is a place in `REGIMES`, -1 where the node
     was not austenitised: there ``grain_mean_intercept`` and ``grain_astm`` are nan and
-    ``pearlite`` is what it keeps. ``kind`` counts in ``kinds``.
+    ``pearlite`` is what it keeps. ``kind`` counts in ``kinds``; ``fine`` are the
+    ``kinds`` and more between them, in the same order.
     """
 
     hottest: Array
@@ -88,6 +89,7 @@ class Soaked:
     grain_astm: Array
     kind: IntArray
     kinds: tuple[Austenite, ...]
+    fine: tuple[Austenite, ...]
     notes: tuple[RangeNote, ...] = ()
 
     @property
@@ -99,18 +101,6 @@ class Soaked:
     def old_intercept(self) -> Array:
         """``grain_mean_intercept`` [m], the assumed one where there was no austenite."""
         return np.where(self.austenitised, self.grain_mean_intercept, intercept_of(OLD_GRAIN_ASTM))
-
-    @property
-    def scale(self) -> Array:
-        """Factors on the clocks of the kinds for each node's own grain, (n_node, N_SCALE)."""
-        of_kind = np.array([kind.grain_astm for kind in self.kinds])[self.kind]
-        radius = np.array([kind.grain_mean_intercept for kind in self.kinds])[self.kind]
-        finer = np.where(self.austenitised, self.grain_astm - of_kind, 0.0)
-        factors = np.empty((len(self.kind), kin.N_SCALE))
-        for column, exponent in enumerate(GRAIN_EXPONENTS):
-            factors[:, column] = 2.0 ** (exponent * finer)
-        factors[:, 3] = np.where(self.austenitised, radius / self.old_intercept, 1.0) ** 2
-        return factors
 
 
 def alike(austenite: Austenite, temp: float, time: float, n_node: int) -> Soaked:
@@ -131,6 +121,7 @@ def alike(austenite: Austenite, temp: float, time: float, n_node: int) -> Soaked
         grain_astm=all_of(austenite.grain_astm),
         kind=np.zeros(n_node, dtype=np.int64),
         kinds=(austenite,),
+        fine=(austenite,),
         notes=austenite.notes,
     )
 
@@ -187,7 +178,8 @@ class Paths:
             number = np.full(temp.shape, grain_astm)
         old_ferrite, old_cementite = slow_cooling(eq, composition.C)
         carbon = np.where(reached, left.carbon_pct, composition.C)
-        kinds = _kinds(self._steel, eq, temp[reached], left.carbon_pct[reached])
+        fine = _kinds(self._steel, eq, temp[reached], left.carbon_pct[reached])
+        kinds = fine[::BETWEEN]
         of_kind = np.array([kind.carbon_pct for kind in kinds])
         return Soaked(
             hottest=self.hottest.copy(),
@@ -201,6 +193,7 @@ class Paths:
             grain_astm=np.where(reached, number, np.nan),
             kind=np.abs(carbon[:, None] - of_kind).argmin(axis=1),
             kinds=kinds,
+            fine=fine,
             notes=_notes(eq, temp, time, reached, measured=grain_astm is not None),
         )
 
@@ -222,7 +215,7 @@ def _kinds(steel: Steel, eq: Equilibrium, temp: Array, carbon: Array) -> tuple[A
     of_fine = dissolution(eq, fine).carbon_pct
     changing = np.flatnonzero(np.abs(of_fine - of_fine[-1]) > 1e-9)
     last = min(int(changing[-1]) + 1, len(fine) - 1) if changing.size else 0
-    wanted = np.linspace(of_fine[0], of_fine[last], MOST_KINDS)
+    wanted = np.linspace(of_fine[0], of_fine[last], BETWEEN * (MOST_KINDS - 1) + 1)
     rising = of_fine[-1] > of_fine[0]
     part = slice(None, last + 1) if rising else slice(last, None, -1)
     at = np.interp(wanted, of_fine[part], fine[part])
