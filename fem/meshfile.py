@@ -93,7 +93,7 @@ def open_mesh(
     symmetry
         What no heat passes.
     prefer
-        Groups that become zones before all others.
+        Groups that become zones before all others, where they are on the boundary.
 
     Raises
     ------

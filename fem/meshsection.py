@@ -13,6 +13,7 @@ from functools import cached_property
 
 import numpy as np
 
+from midradius.fem.convection import Geometry
 from midradius.fem.distance import nearest, pieces
 from midradius.fem.meshfile import MeshInput
 from midradius.fem.volumes import Sense
@@ -85,6 +86,14 @@ class MeshSection:
                 "medium", "insulated everywhere", "one that cools some surface of the mesh"
             )
         return replace(self, cooled=cooled)
+
+    @property
+    def gas_size(self) -> tuple[float, Geometry]:
+        """Length [m] and shape by which a gas cools it: as free convection is known for."""
+        if self.sense == "axisymmetric":
+            return 2.0 * float(self.mesh.points[:, 0].max()), "horizontal cylinder"
+        extent = np.sort(np.ptp(self.mesh.points, axis=0))
+        return float(extent[-2] if self.sense == "solid" else extent[-1]), "vertical plate"
 
     @cached_property
     def surface(self) -> Array:

@@ -43,7 +43,7 @@ def zones_of(
     members = boundary_groups(raw, node, rim, points.shape[1])
     free = np.ones(len(rim), dtype=bool)
     known = ", ".join(f'"{key}"' for key in members) or "none"
-    for key in (*symmetry.groups, *prefer):
+    for key in symmetry.groups:
         if key not in members and key != REST:
             what = f'no part of the boundary is in a group "{key}"'
             findings.append(Finding("error", what, f"Groups on the boundary: {known}."))

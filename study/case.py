@@ -24,7 +24,8 @@ from .tankinput import LoadInput, ShiftInput, TankInput
 if TYPE_CHECKING:
     from midradius.thermo.calibration import Shifts
 
-Form = Literal["slab", "round", "tube", "ball", "bar", "ring"]
+Form = Literal["slab", "round", "tube", "ball", "bar", "ring", "mesh"]
+MeshSense = Literal["plane", "axisymmetric", "solid"]
 StageKind = Literal["heat", "soak", "transfer", "quench", "hold", "temper"]
 PositionKind = Literal[
     "surface",
@@ -110,8 +111,29 @@ class SteelInput:
 
 
 @dataclass(frozen=True)
+class MeshFile:
+    """A mesh file as the section, and how to take it.
+
+    ``symmetry`` names groups or planes (``"x = 0"``) that no heat passes; ``named``
+    are the groups that the route speaks of. The reader adds what it found in the
+    file: its surface ``zones`` and how far it reaches, ``low`` to ``high`` [m].
+    """
+
+    file: Path
+    length_unit: str
+    sense: MeshSense
+    symmetry: tuple[str, ...] = ()
+    named: tuple[str, ...] = ()
+    zones: tuple[str, ...] = field(default=(), compare=False)
+    low: tuple[float, ...] = field(default=(), compare=False)
+    high: tuple[float, ...] = field(default=(), compare=False)
+
+
+@dataclass(frozen=True)
 class SectionInput:
     """The section's form and its dimensions [m]; those of other forms are None.
+
+    A form ``"mesh"`` has ``mesh`` in their place.
 
     ``emissivity`` of the surface [-] acts in gases: 0.8 is scaled steel.
     """
@@ -126,17 +148,22 @@ class SectionInput:
     height: float | None = None
     bore_medium: MediumUse | None = None
     emissivity: float = 0.8
+    mesh: MeshFile | None = None
 
     @property
     def zones(self) -> tuple[str, ...]:
         """Names of the surfaces that can see a medium of their own."""
+        if self.mesh is not None:
+            return self.mesh.zones
         if self.form == "round" and self.length is not None:
             return ("side", "near end", "far end")
         return ZONES[self.form]
 
     @property
     def n_dim(self) -> int:
-        """1 for a line through the section, 2 for a plane."""
+        """1 for a line through the section, 2 for a plane, 3 for a solid."""
+        if self.mesh is not None:
+            return 3 if self.mesh.sense == "solid" else 2
         plane = self.form in ("bar", "ring") or (self.form == "round" and self.length is not None)
         return 2 if plane else 1
 

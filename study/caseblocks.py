@@ -4,7 +4,7 @@ import math
 import re
 from dataclasses import replace
 from pathlib import Path
-from typing import cast
+from typing import Any, cast
 
 from midradius.thermo.certificate import Certificate, CertificateFaults, read_certificates
 from midradius.thermo.errors import InputFault
@@ -16,6 +16,7 @@ from . import casekeys as keys
 from .calibrationfile import read_calibration, refuse_other_rates, refuse_other_steel
 from .case import Form, Grid, SectionInput, SteelInput
 from .casemedium import medium_use
+from .casemesh import mesh_input
 from .caserates import with_rates
 from .casetable import Table, one_of
 from .steelfile import FileSteel, notes_of, pick
@@ -170,24 +171,26 @@ def _grain(table: Table) -> float | None:
     return None
 
 
-def section_input(table: Table) -> SectionInput | None:
-    """``[section]``: a form and its dimensions, without those at fault."""
-    forms = tuple(keys.DIMENSIONS)
+def section_input(table: Table, named: tuple[str, ...] = ()) -> SectionInput | None:
+    """``[section]``: a form and its dimensions, without those at fault.
+
+    ``named`` are the surface zones that the route speaks of.
+    """
+    forms = (*keys.DIMENSIONS, "mesh")
     if table.raw("form") == "mesh":
-        table.fault("form", one_of(forms), "This version reads no mesh files.")
-        return None
+        return mesh_input(table, _emissivity(table), named)
     form = cast(Form | None, table.choice("form", forms))
     if form is None:
         if not table.has("form"):
             table.missing("form", one_of(forms))
-        table.only(("form", *keys.ALL_DIMENSIONS, "bore_medium", "emissivity"))
+        table.only((*keys.MESH, *keys.ALL_DIMENSIONS, "bore_medium"))
         for name in keys.ALL_DIMENSIONS:
             table.quantity(name, "length", keys.DIMENSION_RANGE)
         return None
     known = ("form", *keys.DIMENSIONS[form], *keys.OPTIONAL[form], "emissivity")
     strange = f'form = "{form}" has no such key; it takes {", ".join(known[1:])}.'
-    table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, "bore_medium"), strange))
-    size = {
+    table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, *keys.MESH, "bore_medium"), strange))
+    size: dict[str, Any] = {
         name: table.quantity(name, "length", keys.DIMENSION_RANGE)
         for name in known[1:]
         if name not in ("bore_medium", "emissivity")
@@ -231,6 +234,9 @@ def grid(table: Table | None, section: SectionInput | None) -> Grid:
         return Grid()
     table.only(keys.GRID)
     accuracy = table.quantity("accuracy", "temperature difference", keys.ACCURACY_RANGE)
+    if section is not None and section.form == "mesh" and table.has("cells"):
+        table.fault("cells", 'left out where form = "mesh"', "A mesh has its own cells.")
+        return Grid()
     low, high = keys.CELLS_RANGE
     value = table.raw("cells")
     given = value if isinstance(value, list) else [] if value is None else [value]

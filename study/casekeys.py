@@ -38,6 +38,8 @@ OPTIONAL: Mapping[Form, tuple[str, ...]] = {
     "bar": (),
     "ring": ("bore_medium",),
 }
+MESH = ("form", "file", "length_unit", "sense", "symmetry", "emissivity")
+LENGTH_UNITS = ("m", "cm", "mm", "in", "ft")
 EMISSIVITY_RANGE = (0.05, 1.0)
 ALL_DIMENSIONS = ("thickness", "diameter", "length", "outside", "bore", "width", "height")
 STAGES: tuple[StageKind, ...] = ("heat", "soak", "transfer", "quench", "hold", "temper")

@@ -4,6 +4,7 @@ A place must lie in the section.
 """
 
 import math
+from collections.abc import Mapping
 
 from midradius.thermo.errors import InputFault
 from midradius.thermo.units import show
@@ -13,6 +14,11 @@ from .case import TRADE_TERMS, Outputs, PositionInput, SectionInput, position
 from .caselines import KeyPath
 from .casetable import Table, quantity
 
+_AXES: Mapping[str, tuple[str, ...]] = {
+    "plane": ("x", "y"),
+    "axisymmetric": ("r", "z"),
+    "solid": ("x", "y", "z"),
+}
 _PLACES = '["surface", "mid-radius", "12 mm below surface", "core"]'
 
 
@@ -28,8 +34,11 @@ def outputs(table: Table | None, section: SectionInput | None) -> Outputs:
         if isinstance(given, list) and len(given) > most:
             table.refuse(name, f"{name} has {len(given)} items, at most {most} are read")
             return Outputs(usual)
+    # a mesh has its origin where it likes
+    mesh = section is not None and section.form == "mesh"
+    lowest = -keys.DIMENSION_RANGE[1] if mesh else 0.0
     for key, value in table.items("positions", _PLACES):
-        place = _place(table, key, value)
+        place = _place(table, key, value, lowest)
         if place is None:
             continue
         if section and (found := place_fault(place, section)):
@@ -65,9 +74,9 @@ def _usual_positions(section: SectionInput | None) -> tuple[PositionInput, ...]:
     return tuple(position(name) for name in ("surface", between, "core"))
 
 
-def _place(table: Table, key: KeyPath, value: object) -> PositionInput | None:
+def _place(table: Table, key: KeyPath, value: object, lowest: float) -> PositionInput | None:
     if isinstance(value, dict):
-        return _named_place(Table(value, key, table.notes))
+        return _named_place(Table(value, key, table.notes), lowest)
     if not isinstance(value, str):
         table.notes.add(key, value, f"a place, as in {_PLACES}")
         return None
@@ -78,7 +87,7 @@ def _place(table: Table, key: KeyPath, value: object) -> PositionInput | None:
         return None
 
 
-def _named_place(table: Table) -> PositionInput | None:
+def _named_place(table: Table, lowest: float) -> PositionInput | None:
     table.only(keys.POSITION)
     name = table.text("name", keys.LONGEST_NAME)
     if not table.has("name"):
@@ -99,7 +108,7 @@ def _named_place(table: Table) -> PositionInput | None:
             return None
         return PositionInput(name, "depth", depth=depth)
     at = [
-        quantity(table.notes, key, value, "length", (0.0, keys.DIMENSION_RANGE[1]))
+        quantity(table.notes, key, value, "length", (lowest, keys.DIMENSION_RANGE[1]))
         for key, value in table.items("at", '["10 mm", "20 mm"]')
     ]
     known = tuple(value for value in at if value is not None)
@@ -110,12 +119,12 @@ def _named_place(table: Table) -> PositionInput | None:
 
 def place_fault(place: PositionInput, section: SectionInput) -> tuple[str, str] | None:
     """What is allowed, and the remedy, where a position does not fit the section."""
-    if place.kind == "mid-radius" and section.form not in ("round", "ball"):
+    if place.kind == "mid-radius" and section.form not in ("round", "ball", "mesh"):
         return (
             f'a place that form = "{section.form}" has',
             'Only a round and a ball have a mid-radius: write "quarter thickness" or "core".',
         )
-    if any(getattr(section, name) is None for name in keys.DIMENSIONS[section.form]):
+    if any(getattr(section, name) is None for name in keys.DIMENSIONS.get(section.form, ())):
         return None
     spans = spans_of(section)
     if place.kind == "depth" and place.depth is not None:
@@ -136,6 +145,9 @@ def place_fault(place: PositionInput, section: SectionInput) -> tuple[str, str] 
 
 def spans_of(section: SectionInput) -> list[tuple[str, float, float]]:
     """Name, lowest and highest [m] of each coordinate of the section."""
+    if section.mesh is not None:
+        names = _AXES[section.mesh.sense]
+        return list(zip(names, section.mesh.low, section.mesh.high, strict=True))
     size = {name: getattr(section, name) or 0.0 for name in keys.ALL_DIMENSIONS}
     if section.form == "slab":
         return [("x", 0.0, size["thickness"])]
@@ -160,6 +172,8 @@ def deepest(section: SectionInput) -> float:
     """The largest depth [m] that a place of this section can have."""
     if section.form in ("round", "ball"):
         return (section.diameter or math.inf) / 2.0
+    if section.form == "mesh":  # known when its distances are
+        return math.inf
     if section.form in ("tube", "ring"):
         wall = ((section.outside or math.inf) - (section.bore or 0.0)) / 2.0
         return min(wall, section.height or math.inf)

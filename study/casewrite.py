@@ -13,6 +13,7 @@ from .case import (
     Case,
     Grid,
     MediumUse,
+    MeshFile,
     Need,
     Outputs,
     PositionInput,
@@ -60,10 +61,23 @@ def _section(section: SectionInput, folder: Path) -> list[str]:
         size = getattr(section, name)
         if size is not None:
             lines.append(f"{name} = {_length(size)}")
+    if section.mesh:
+        lines += _mesh(section.mesh, folder)
     if section.bore_medium:
         lines.append(f"bore_medium = {_inline(section.bore_medium, folder)}")
     if section.emissivity != SectionInput("slab").emissivity:
         lines.append(f"emissivity = {section.emissivity!r}")
+    return lines
+
+
+def _mesh(mesh: MeshFile, folder: Path) -> list[str]:
+    lines = [
+        f"file = {_quoted(_beside(mesh.file, folder))}",
+        f'length_unit = "{mesh.length_unit}"',
+        f'sense = "{mesh.sense}"',
+    ]
+    if mesh.symmetry:
+        lines.append(f"symmetry = [{', '.join(_quoted(text) for text in mesh.symmetry)}]")
     return lines
 
 

@@ -8,10 +8,12 @@ from midradius.fem import section as forms
 from midradius.fem.convection import Geometry
 from midradius.fem.cutting import AnySection
 from midradius.fem.media import ZERO_DEGC, medium
+from midradius.fem.meshsection import MeshSection
 from midradius.fem.route import CoolingStage, Surface
 from midradius.fem.section import Section
 from midradius.fem.surface import beyond, film, film_from_csv
 from midradius.study.case import Case, MediumUse, PositionInput, SectionInput, Stage
+from midradius.study.casemesh import mesh_of
 from midradius.study.heatsetup import HeatSetup, prepare_heating
 from midradius.thermo import heating
 from midradius.thermo.errors import InputFault
@@ -24,7 +26,7 @@ PLATE_HEIGHT = 0.3  # m, of a slab standing in a gas; it changes free convection
 class Setup:
     """What a case means to the solver."""
 
-    section: Section
+    section: Section | MeshSection
     stages: tuple[CoolingStage, ...]
     strongest_film: Mapping[str, float]
     notes: tuple[RangeNote, ...]
@@ -34,7 +36,7 @@ class Setup:
     furnace: HeatSetup = HeatSetup()
 
 
-def section_of(given: SectionInput) -> Section:
+def section_of(given: SectionInput) -> Section | MeshSection:
     """The section of a case, not folded yet."""
     size = {
         name: getattr(given, name) or 0.0
@@ -53,6 +55,10 @@ def section_of(given: SectionInput) -> Section:
             return forms.bar(size["width"], size["height"])
         case "ring":
             return forms.ring(size["outside"], size["bore"], size["height"])
+        case "mesh":
+            assert given.mesh is not None, "a mesh has its file"
+            mesh = mesh_of(given.mesh)
+            return MeshSection(mesh, mesh.zones)
 
 
 def coordinates_of(section: AnySection, place: PositionInput) -> tuple[float, ...]:
@@ -108,7 +114,7 @@ def prepare(case: Case) -> Setup:
             )
         )
     return Setup(
-        section=section,
+        section=section.cooled_by(strongest),
         stages=tuple(stages),
         strongest_film=strongest,
         notes=tuple(dict.fromkeys([*furnace.notes, *notes])),
@@ -119,7 +125,7 @@ def prepare(case: Case) -> Setup:
     )
 
 
-def uses_of(section: Section, given: SectionInput, stage: Stage) -> dict[str, MediumUse]:
+def uses_of(section: AnySection, given: SectionInput, stage: Stage) -> dict[str, MediumUse]:
     """What each zone of the section sees in a stage."""
     found = {}
     for zone in section.zones:
@@ -146,8 +152,10 @@ _GEOMETRY: Mapping[str, Geometry] = {
 }
 
 
-def _size(section: Section) -> tuple[float, Geometry]:
+def _size(section: Section | MeshSection) -> tuple[float, Geometry]:
     """The length [m] and the shape that a gas sees."""
+    if isinstance(section, MeshSection):
+        return section.gas_size
     spans = section.spans
     length = 2.0 * spans[0].high
     if section.form == "slab":
@@ -158,7 +166,7 @@ def _size(section: Section) -> tuple[float, Geometry]:
 
 
 def _surface(
-    use: MediumUse, section: Section, emissivity: float
+    use: MediumUse, section: Section | MeshSection, emissivity: float
 ) -> tuple[Surface, list[RangeNote], list[Source], tuple[str, ...]]:
     if use.film_file is not None:
         curve = film_from_csv(use.film_file)
@@ -194,7 +202,7 @@ def _label(surfaces: Mapping[str, Surface]) -> str:
     return "; ".join([common, *rest])
 
 
-def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
+def _assumptions(case: Case, section: Section | MeshSection) -> tuple[str, ...]:
     soaked = (
         "The whole section is at the soak temperature when cooling starts, and the soak time"
         " counts from there: heating up is not computed."
@@ -225,6 +233,12 @@ def _assumptions(case: Case, section: Section) -> tuple[str, ...]:
             " from when the part is hot throughout; heating up and cooling after them add nothing."
             " Retained austenite that they decompose counts as bainite."
         )
+    if isinstance(section, MeshSection):
+        length, geometry = section.gas_size
+        lines.append(f"In a gas the part counts as a {geometry} of {1e3 * length:.4g} mm.")
+        if section.sense == "plane":
+            lines.append("The part is long: its ends do not cool this section.")
+        return tuple(lines)
     if section.form in ("tube", "ring") and case.section.bore_medium is None:
         lines.append("The bore sees the same medium as the outside, as freely.")
     if section.form == "slab":
