@@ -80,7 +80,8 @@ _LEAST_SHARE = 0.005  # of a constituent: less is thinner than a line
 def write_pictures(result: Result, folder: Path) -> tuple[Path, ...]:
     """Draw the pictures into an existing folder and return their paths.
 
-    Temperatures from elsewhere may have no profile and no section to draw.
+    Temperatures from elsewhere may have no profile and no section to draw; a solid
+    has no section.
     """
     drawn = [(COOLING, cooling(result))]
     if len(result.profile.node):

@@ -49,7 +49,7 @@ TIGHTER = 1.0 / 8.0  # tolerance of the run that measures the time error
 TIME_FACTOR = 1.0 / (1.0 - TIGHTER ** (2.0 / 3.0))
 GRID_FACTOR = 1.0 / 3.0  # Richardson: (n/2)^-2 - n^-2 is three times n^-2
 FACTORS = (TIME_FACTOR, GRID_FACTOR)
-MOST_NODES = {1: 2049, 2: 12_000, 3: 12_000}
+MOST_NODES = {1: 2049, 2: 12_000, 3: 30_000}
 N_ERROR_TIMES = 200  # moments at which the errors are measured, stored or not
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
