@@ -3,10 +3,12 @@
 Which facet of the boundary belongs to which zone: first the groups that the
 case names, then the others in the order of the file; groups of facets before
 groups of cells before groups of points (a facet belongs to a group of points
-when all its corners do). The rest of the boundary is the zone ``surface``.
-Symmetry planes and groups, and the axis of a body of revolution, are insulated.
+when all its corners do; one of all points names no zone by itself). The rest of
+the boundary is the zone ``surface``. Symmetry planes and groups, and the axis of a
+body of revolution, are insulated.
 """
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -64,7 +66,11 @@ def zones_of(
     zone = np.full(len(rim), INSULATED, dtype=np.int64)
     names: list[str] = []
     order = [key for key in prefer if key in members]
-    order += [key for key in members if key not in order and key not in symmetry.groups]
+    order += [
+        key
+        for key in members
+        if key not in order and key not in symmetry.groups and not _all_points(raw, key, members)
+    ]
     for key in order:
         here = members[key] & free
         if here.any():
@@ -79,6 +85,12 @@ def zones_of(
         what = "the whole boundary is insulated by symmetry"
         findings.append(Finding("error", what, "Leave the cooled surface out of symmetry."))
     return tuple(names), zone
+
+
+def _all_points(raw: RawMesh, key: str, members: Mapping[str, BoolArray]) -> bool:
+    """Whether a group is one of points that says nothing: it holds the whole boundary."""
+    group = raw.groups[key]
+    return bool(members[key].all()) and not len(group.facets) and not len(group.cells)
 
 
 def boundary_groups(raw: RawMesh, node: IntArray, rim: IntArray, dim: int) -> dict[str, BoolArray]:

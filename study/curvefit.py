@@ -137,6 +137,7 @@ def hardness_hv_of(case: Case, shifts: Shifts) -> Array:
     """Hardness [HV] at the positions of a test piece, (n_position,), of one march."""
     case = replace(case, steel=replace(case.steel, shifts=shifts))
     setup = prepare(case)
+    assert isinstance(setup.section, forms.Section), "a test piece is a round"
     cut = forms.cut(setup.section, CELLS, strongest_film=setup.strongest_film)
     places = [forms.place(cut, coordinates_of(cut.section, p)) for p in case.outputs.positions]
     begun = begin(

@@ -123,9 +123,9 @@ def _section() -> Schema:
     ]
     return {
         "type": "object",
-        "properties": {"form": {"enum": list(keys.DIMENSIONS)}},
+        "properties": {"form": {"enum": [*keys.DIMENSIONS, "mesh"]}},
         "required": ["form"],
-        "oneOf": forms,
+        "oneOf": [*forms, _mesh(emissivity)],
     }
 
 
@@ -159,6 +159,28 @@ def _temperatures() -> Schema:
     )
 
 
+def _mesh(emissivity: Schema) -> Schema:
+    return _table(
+        {
+            "form": {"const": "mesh"},
+            "file": {"type": "string", "description": "A mesh file, its path from this file."},
+            "length_unit": {"enum": list(keys.LENGTH_UNITS)},
+            "sense": {
+                "enum": ["plane", "axisymmetric", "solid"],
+                "description": "A long bar, a body of revolution about x = 0, or the whole part.",
+            },
+            "symmetry": {
+                "type": "array",
+                "items": {"type": "string"},
+                "description": "Groups and planes that no heat passes.",
+                "examples": [["cut face", "x = 0"]],
+            },
+            "emissivity": emissivity,
+        },
+        ("form", "file", "length_unit", "sense"),
+    )
+
+
 def _route() -> Schema:
     time = _quantity("duration", keys.STAGE_TIME_RANGE, "How long the stage lasts.")
     at = _quantity("temperature", keys.SOAK_RANGE, "Furnace temperature, above Ae1.")
@@ -173,7 +195,8 @@ def _route() -> Schema:
             "pattern": _until_pattern("below"),
             "examples": ["core below 150 degC"],
         },
-        "faces": _table({zone: _to("medium_use") for zone in zones}, ()),
+        "faces": _table({zone: _to("medium_use") for zone in zones}, ())
+        | {"additionalProperties": _to("medium_use")},  # a mesh has groups of any name
     }
     heating: dict[str, Schema] = {
         "stage": {"const": "heat"},
@@ -271,7 +294,7 @@ def _output() -> Schema:
         {
             "name": _text("A name of your own.", keys.LONGEST_NAME),
             "depth": depth,
-            "at": {"type": "array", "items": depth, "minItems": 1, "maxItems": 2},
+            "at": {"type": "array", "items": depth, "minItems": 1, "maxItems": 3},
         },
         ("name",),
     ) | {"oneOf": [{"required": ["depth"]}, {"required": ["at"]}]}

@@ -80,8 +80,9 @@ def test_a_group_that_the_route_names_wins_over_another_with_the_same_facets():
     edge = Group(points=np.flatnonzero(points[:, 0] == 0))
     every = Group(points=np.arange(len(points)))
     raw = raw_of(points, ("quad", quads), groups={"every": every, "edge": edge})
-    assert taken(raw).zones == ("every",)
-    assert taken(raw, prefer=("edge",)).zones == ("edge", "every")
+    assert taken(raw).zones == ("edge", "surface")
+    assert taken(raw, prefer=("every",)).zones == ("every",)
+    assert taken(raw, prefer=("edge", "every")).zones == ("edge", "every")
 
 
 def test_symmetry_insulates_groups_and_planes():
