@@ -27,7 +27,8 @@ from midradius.study.cli_tank import tank
 _EPILOG = """\b
 Exit codes:
   0  done
-  1  done, but a requirement of the case fails (too close to call is 0)
+  1  done, but a requirement of the case fails (too close to call is 0), or a
+     tank is not acceptable
   2  bad input: nothing was written
   3  the solver gave up: nothing was written
 130  interrupted: nothing was written

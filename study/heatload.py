@@ -51,6 +51,7 @@ SETTLED = 0.01  # K between two bath paths
 MOST_ROUNDS = 15
 N_PIECE = 60
 FIRST_PIECE = 0.5  # s
+STAYS_AT_MOST = 3.0  # times what it would stay in a bath that is held
 HOT_THROUGHOUT = 3600.0  # s, soak of a fixture where the case ends its own by temperature
 GROWTH = 1.3  # of the pieces of the first round, whose length is not known yet
 
@@ -87,6 +88,7 @@ class Given:
     ``left`` [J] is what it still holds when it leaves the bath, above ferrite with
     cementite of 20 degC; ``before`` [J] what went to the air on the way. ``balance`` is
     the largest gap of a body's own account. ``path`` is the bath that it saw.
+    ``cut_short``: the bath kept it from the condition that ends its stage.
     """
 
     time: Array
@@ -97,6 +99,7 @@ class Given:
     path: BathPath
     part: History
     rounds: int
+    cut_short: bool = False
 
     @property
     def stay(self) -> float:
@@ -199,9 +202,13 @@ def tank_index(case: Case) -> int:
 
 
 def stages_in(
-    setup: Setup, case: Case, path: BathPath, film_factor: float = 1.0
+    setup: Setup,
+    case: Case,
+    path: BathPath,
+    film_factor: float = 1.0,
+    longest: float | None = None,
 ) -> tuple[CoolingStage, ...]:
-    """The stages of a case, that in the tank with the bath on a path."""
+    """The stages of a case, that in the tank with the bath on a path, at most ``longest`` [s]."""
     index = tank_index(case)
     stage, given = setup.stages[index], case.cooling[index]
     use = given.medium
@@ -222,7 +229,8 @@ def stages_in(
         )
     )
     rest = surfaces(float(path.temp[-1]), None)
-    changed = replace(stage, surfaces=rest, pieces=pieces)
+    duration = stage.duration if stage.duration is not None else longest
+    changed = replace(stage, surfaces=rest, pieces=pieces, duration=duration)
     return tuple(changed if k == index else s for k, s in enumerate(setup.stages))
 
 
@@ -246,9 +254,14 @@ def march_body(
     *,
     film_factor: float = 1.0,
     durations: Mapping[int, float] | None = None,
+    longest: float | None = None,
 ) -> History:
-    """One body through its route; ``durations`` [s] by stage replace its own ends."""
-    stages = list(stages_in(body.setup, body.case, path, film_factor))
+    """One body through its route.
+
+    ``durations`` [s] by stage replace its own ends; ``longest`` [s] is how long it may
+    stay in the tank for a condition that its bath may never allow.
+    """
+    stages = list(stages_in(body.setup, body.case, path, film_factor, longest))
     for k, seconds in (durations or {}).items():
         stages[k] = replace(stages[k], duration=seconds, until_place=None, until_temp=None)
     if durations is not None:
@@ -281,6 +294,7 @@ def solve(
     bath: float,
     response: Response | None,
     film_factor: float = 1.0,
+    longest: float | None = None,
 ) -> Given:
     """A load in its bath, both at once.
 
@@ -294,6 +308,8 @@ def solve(
         What the bath does; None keeps it at ``bath``.
     film_factor
         On the film coefficients in the tank.
+    longest
+        The load is taken out after it [s] where the bath keeps it from its condition.
 
     Raises
     ------
@@ -304,7 +320,7 @@ def solve(
     begin_at = np.concatenate([[0.0], np.cumsum(FIRST_PIECE * GROWTH ** np.arange(40))])
     path = BathPath(begin_at, np.full(len(begin_at), bath))
     for round_number in range(1, MOST_ROUNDS + 1):
-        given = _give(bodies, path, index, film_factor, round_number)
+        given = _give(bodies, path, index, film_factor, longest, round_number)
         if round_number > 1 and response is None:
             return given
         # One piece ends with the stay itself; beyond it the bath is not known yet.
@@ -328,9 +344,14 @@ def solve(
 
 
 def _give(
-    bodies: tuple[Body, ...], path: BathPath, stage: int, film_factor: float, rounds: int
+    bodies: tuple[Body, ...],
+    path: BathPath,
+    stage: int,
+    film_factor: float,
+    longest: float | None,
+    rounds: int,
 ) -> Given:
-    part = march_body(bodies[0], path, film_factor=film_factor)
+    part = march_body(bodies[0], path, film_factor=film_factor, longest=longest)
     ends = part.stages[: stage + 1]
     durations = {k: end.end - end.start for k, end in enumerate(ends)}
     histories = [part] + [
@@ -348,7 +369,9 @@ def _give(
         before += factor * air
         left += factor * (history.heat_before - air - end.heat_given)
     balance = max(history.balance for history in histories)
-    return Given(time, heat, left, before, balance, path, part, rounds)
+    own_stage = bodies[0].setup.stages[stage]
+    short = own_stage.duration is None and ends[stage].ended_by == "time"
+    return Given(time, heat, left, before, balance, path, part, rounds, short)
 
 
 def degC(temp: float) -> str:

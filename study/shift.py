@@ -26,7 +26,15 @@ from midradius.study.bath import LONGEST_STEP, BathRun, Immersion, Tank, march
 from midradius.study.case import Case, Stage, SteelInput
 from midradius.study.casefile import read
 from midradius.study.casetank import tank_stage
-from midradius.study.heatload import BathPath, Body, Given, as_slab, bodies_of, solve
+from midradius.study.heatload import (
+    STAYS_AT_MOST,
+    BathPath,
+    Body,
+    Given,
+    as_slab,
+    bodies_of,
+    solve,
+)
 from midradius.study.tankinput import LoadInput, ShiftInput
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
@@ -45,27 +53,35 @@ OWN = "load of the case"
 
 @dataclass(frozen=True)
 class LoadKind:
-    """One kind of load with its heats: ``heats`` by film variant, each (cool, warm) bath."""
+    """One kind of load with its heats: ``heats`` by film variant, each (cool, warm) bath.
+
+    ``held`` are those in baths that stay as they are: quicker than in any that warms.
+    """
 
     name: str
     bodies: tuple[Body, ...]
     cool: float
     warm: float
     heats: tuple[tuple[Given, Given], ...]
+    held: tuple[tuple[Given, Given], ...]
 
     @property
     def mass(self) -> float:
         """All that goes in [kg]."""
         return sum(body.mass for body in self.bodies)
 
-    def immersion(self, time: float, variant: IntArray) -> Immersion:
-        """This load at ``time`` [s] in baths of the film variants ``variant`` (n_bath,)."""
-        stay = max(g.stay for pair in self.heats for g in pair)
+    def immersion(self, time: float, variant: IntArray, *, of_any_tank: bool = False) -> Immersion:
+        """This load at ``time`` [s] in baths of the film variants ``variant`` (n_bath,).
+
+        ``of_any_tank`` takes the heats in held baths, which no tank exceeds.
+        """
+        heats = self.held if of_any_tank else self.heats
+        stay = max(g.stay for pair in heats for g in pair)
 
         def heat(seconds: Array, temp: Array) -> Array:
             weight = np.clip((temp - self.cool) / (self.warm - self.cool), -0.5, 1.5)
             curves = np.array(
-                [[np.interp(seconds, g.time, g.heat) for g in pair] for pair in self.heats]
+                [[np.interp(seconds, g.time, g.heat) for g in pair] for pair in heats]
             )
             cool, warm = curves[variant, 0].T, curves[variant, 1].T
             return np.asarray((1.0 - weight) * cool + weight * warm)
@@ -107,19 +123,23 @@ def kind_of(
 ) -> LoadKind:
     """Solve one kind of load for each factor on the film, in a cool and in a warm bath [K]."""
     solid = sum(body.mass for body in bodies) / DENSITY
-    heats = []
+    heats, held = [], []
     for factor in factors:
-        pair = tuple(
-            solve(
+        plain = solve(bodies, bath=cool, response=None, film_factor=factor)
+        longest = STAYS_AT_MOST * plain.stay
+
+        def at(bath: float, warms: bool, factor: float = factor, longest: float = longest) -> Given:
+            return solve(
                 bodies,
                 bath=bath,
-                response=response_of(tank, bath, solid) if coupled else None,
+                response=response_of(tank, bath, solid) if warms else None,
                 film_factor=factor,
+                longest=longest,
             )
-            for bath in (cool, warm)
-        )
-        heats.append((pair[0], pair[1]))
-    return LoadKind(name, bodies, cool, warm, tuple(heats))
+
+        held.append((plain, at(warm, warms=False)))
+        heats.append((at(cool, warms=True), at(warm, warms=True)) if coupled else held[-1])
+    return LoadKind(name, bodies, cool, warm, tuple(heats), tuple(held))
 
 
 def bodies_of_entry(case: Case, entry: ShiftInput) -> tuple[str, tuple[Body, ...]]:

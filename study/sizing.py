@@ -16,8 +16,9 @@ common in 1954, US Steel (remembered). Rules of thumb: MacKenzie's columns (read
 
 Holds for
 ---------
-The loads of the case, with their heats solved in its own tank: a far smaller bath
-slows its load a little, which is left out here (on the safe side).
+The loads of the case with their heats in baths that are held, which no warming bath
+exceeds: sizes are a little on the safe side. The tank of the case itself is judged
+with its load and bath solved as one.
 """
 
 from collections.abc import Sequence
@@ -119,7 +120,7 @@ def size(
         variant = np.repeat(np.arange(n_variant), n)
         shift = through(
             base,
-            [kind.immersion(time, variant) for kind, time in loads],
+            [kind.immersion(time, variant, of_any_tank=True) for kind, time in loads],
             period=period,
             morning=np.full(n * n_variant, morning),
             repeats=repeats,
@@ -131,7 +132,7 @@ def size(
         )
         return margin(shift, limits).reshape(n_variant, n)
 
-    energy = max(max(g.total for pair in kind.heats for g in pair) for kind, _ in loads)
+    energy = max(max(g.total for pair in kind.held for g in pair) for kind, _ in loads)
     room = max(min(limits.bath - morning, limits.rise or np.inf), 2.0)
     density = float(tank.fluid.density_at(morning))
     simple = energy / (room * density * float(tank.fluid.heat_capacity_at(morning)))

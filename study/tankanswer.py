@@ -14,7 +14,7 @@ from midradius.study.bath import Tank
 from midradius.study.case import Case, position
 from midradius.study.casemedium import effective_bath
 from midradius.study.casetank import tank_stage
-from midradius.study.heatload import Body, Given, bodies_of, solve
+from midradius.study.heatload import STAYS_AT_MOST, Body, Given, bodies_of, solve
 from midradius.study.setup import coordinates_of
 from midradius.study.shift import OWN, Failure, LoadInBath, LoadKind, Shift, response_of
 from midradius.study.sizing import Agitation, Limits, Sizing
@@ -181,6 +181,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         lip=given.depth,
         freeboard=FREEBOARD if given.freeboard is None else given.freeboard,
         settled=day.settled,
+        cut_short=any(g.cut_short for kind in kinds for pair in kind.heats for g in pair),
     )
     cautions = list(tanksafety.cautions(fluid))
     if failure and flash is not None and failure.hottest > flash - tanksafety.FLASH_MARGIN:
@@ -270,7 +271,12 @@ def _own(
 
     def in_bath(start: float) -> Given:
         response = response_of(tank, start, solid) if coupled else None
-        return solve(bodies, bath=start if coupled else bath, response=response)
+        return solve(
+            bodies,
+            bath=start if coupled else bath,
+            response=response,
+            longest=STAYS_AT_MOST * plain.stay,
+        )
 
     plain = solve(bodies, bath=bath, response=None)
     one = in_bath(first)

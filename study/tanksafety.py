@@ -53,6 +53,7 @@ _OIL = (
     " stops heating and charging; interlock level and flow, and prove agitation before quenching.",
     "No water in the oil: from about 0.1 % it is free water, foams over and flashes to steam."
     " Dry loads, cooler with its water below the oil's pressure or air-cooled; test the oil.",
+    "150 to 300 mm of oil or more over the top of the load, agitation in reach of all of it.",
     "The level rises as the oil warms and again as the load goes in: keep the freeboard, and an"
     " overflow to a closed dump tank.",
     "A lid, fixed extinguishing suited to oil (never water), hood or flame curtain, and nobody"
@@ -118,6 +119,7 @@ def checks(
     lip: float | None,
     freeboard: float,
     settled: bool,
+    cut_short: bool,
 ) -> tuple[Check, ...]:
     """All checks of a design; temperatures [K], level and lip [m] above the floor."""
     found = [
@@ -153,6 +155,9 @@ def checks(
     if ready is not None:
         value = at_next - ZERO_DEGC
         found.append(_below("bath before the next load", value, ready - ZERO_DEGC, "degC", "ready"))
+    if cut_short:
+        why = "its bath is too hot for the condition that ends its stage: taken out before it"
+        found.append(Check("load cooled as the route asks", None, None, "", False, why))
     if not settled:
         why = "the bath still drifts from day to day"
         found.append(Check("periodic state", None, None, "K", False, why))

@@ -10,7 +10,7 @@ from midradius.study.bathcooler import cooler_of
 from midradius.study.case import Case
 from midradius.study.casemedium import effective_bath
 from midradius.study.casetank import tank_stage
-from midradius.study.heatload import bodies_of, degC, solve, stages_in
+from midradius.study.heatload import STAYS_AT_MOST, bodies_of, degC, solve, stages_in
 from midradius.study.setup import Setup
 from midradius.study.shift import response_of
 from midradius.study.sizing import Limits
@@ -120,6 +120,13 @@ def told(case: Case, given: TankInput) -> tuple[str, ...]:
     ]
     if not given.coupled:
         lines.append("Coupling is off: the load sees the bath of the route throughout.")
+    number = tank_stage(case.route)
+    use = case.route[number].medium if number is not None else None
+    stirred = use is not None and (use.name or "").endswith("agitated")
+    if stirred and given.velocity is not None and not 0.35 <= given.velocity <= 0.7:
+        lines.append(
+            f"Films are those of about 0.5 m/s past the parts, not of {given.velocity:g} m/s."
+        )
     if case.load and not case.load.fixtures:
         lines.append("No basket or fixture is given: nothing but the pieces warms the bath.")
     if given.freeboard is None and given.depth is not None:
@@ -147,7 +154,8 @@ def in_bath(case: Case, setup: Setup) -> Setup:
     tank, more = tank_of(given, fluid, bath, limits.bath)
     bodies = bodies_of(case)
     solid = sum(body.mass for body in bodies) / DENSITY
-    found = solve(bodies, bath=bath, response=response_of(tank, bath, solid))
+    longest = STAYS_AT_MOST * solve(bodies, bath=bath, response=None).stay
+    found = solve(bodies, bath=bath, response=response_of(tank, bath, solid), longest=longest)
     hottest = float(np.max(found.path.temp[found.path.time <= found.stay]))
     lines = (
         f"The bath warms under the load of the case from {degC(bath)} to {degC(hottest)}, and the"
@@ -157,7 +165,7 @@ def in_bath(case: Case, setup: Setup) -> Setup:
     )
     return replace(
         setup,
-        stages=stages_in(setup, case, found.path),
+        stages=stages_in(setup, case, found.path, longest=longest if found.cut_short else None),
         assumptions=(*setup.assumptions, *lines),
         cautions=tuple(dict.fromkeys([*setup.cautions, *cautions(fluid)])),
         sources=tuple(dict.fromkeys([*setup.sources, fluid.source])),

@@ -83,14 +83,13 @@ def lines(found: TankAnswer) -> Iterator[str]:
 def _size(found: TankAnswer) -> Iterator[str]:
     sized = found.sizing
     duty = sized.per_kelvin_to_duty / 1e3
-    if found.acceptable:
-        yield f"  {_least(sized.volume_least, 1.0, 'm3')} at least with the cooler of the case"
-        yield f"  cooler of {_least(sized.cooler_least, duty, 'kW')} at least with this volume"
-    else:
-        yield f"  the limits on the bath alone ask {_least(sized.volume_least, 1.0, 'm3')} with"
-        yield "  the cooler of the case, or"
-        yield f"  a cooler of {_least(sized.cooler_least, duty, 'kW')} with this volume;"
-        yield "  what the checks above miss is to be mended as well"
+    for least, factor, unit, what in (
+        (sized.volume_least, 1.0, "m3", "least volume with the cooler of the case"),
+        (sized.cooler_least, duty, "kW", "least cooler with the volume of the case"),
+    ):
+        yield f"  {what}: {_least(least, factor, unit)}"
+    if not found.acceptable:
+        yield "  these keep the limits on the bath only; what the checks above miss remains"
     yield "  volume [m3] : least cooler [kW with the bath at its limit]"
     for k in range(0, len(sized.volume), 2):
         yield f"    {sized.volume[k]:8.3g} : {_least(sized.cooler[:, k], duty, 'kW')}"
@@ -127,8 +126,10 @@ def _agitation(found: TankAnswer) -> Iterator[str]:
 def _least(values: np.ndarray, factor: float, unit: str) -> str:
     nominal, low, high = (float(factor * f(values)) for f in (lambda v: v[0], np.min, np.max))
     if math.isnan(nominal):
-        return f"none that was tried, in {unit}"
-    band = "none to none" if math.isnan(low) else f"{low:.3g} to {high:.3g}"
+        return "none that was tried does it"
+    if high == 0.0:
+        return "none needed"
+    band = "not every one" if math.isnan(low) else f"{low:.3g} to {high:.3g}"
     return f"{nominal:.3g} {unit} ({band})"
 
 
