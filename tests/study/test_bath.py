@@ -6,7 +6,7 @@ from dataclasses import replace
 import ht
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from numpy.testing import assert_allclose
 
@@ -100,6 +100,7 @@ def test_worked_example_b_settles_at_its_periodic_temperatures(
         assert_allclose(last.min(), low, rtol=0.0, atol=0.1)
 
 
+@settings(max_examples=25)
 @given(
     per_kelvin=st.floats(500.0, 8000.0),
     capacity=st.floats(0.5, 4.0),
@@ -221,11 +222,10 @@ def test_the_account_of_a_bath_closes(n_layer: int, fluid: str) -> None:
 def test_layers_of_a_strongly_mixed_bath_are_one_bath() -> None:
     loads = [gradual(600.0)]
     one = march(everything(1), loads, start=np.array([300.15]), end=6000.0)
-    three = march(
-        replace(everything(3), mixing=2000.0), loads, start=np.array([300.15]), end=6000.0
-    )
+    three = march(replace(everything(3), mixing=400.0), loads, start=np.array([300.15]), end=6000.0)
     mean = np.interp(three.time, one.time, one.temp[:, 0, 0])
-    assert_allclose(three.at_load()[:, 0], mean, rtol=0.0, atol=0.6)
+    # the load's 1.9 MW at most, carried by 400 kg/s of water, are 1.1 K between layers
+    assert_allclose(three.at_load()[:, 0], mean, rtol=0.0, atol=1.5)
 
 
 def test_without_agitation_the_top_gets_the_heat_and_the_bottom_stays_cold() -> None:
@@ -246,6 +246,7 @@ def test_a_cooler_that_fails_cools_no_more() -> None:
     assert run.heat["cooler"][-1, 0] > 0.0
 
 
+@settings(max_examples=25)
 @given(
     volume=st.floats(0.5, 4.0),
     more=st.floats(1.05, 3.0),
