@@ -83,8 +83,9 @@ def lines(found: TankAnswer) -> Iterator[str]:
 def _size(found: TankAnswer) -> Iterator[str]:
     sized = found.sizing
     duty = sized.per_kelvin_to_duty / 1e3
+    cooler = "with the cooler of the case" if sized.cooler_given else "without a cooler"
     for least, factor, unit, what in (
-        (sized.volume_least, 1.0, "m3", "least volume with the cooler of the case"),
+        (sized.volume_least, 1.0, "m3", f"least volume {cooler}"),
         (sized.cooler_least, duty, "kW", "least cooler with the volume of the case"),
     ):
         yield f"  {what}: {_least(least, factor, unit)}"
