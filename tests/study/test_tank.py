@@ -292,6 +292,15 @@ def test_a_fluid_of_ones_own_is_read_from_csv_and_toml(tmp_path: Path) -> None:
     assert_allclose(first.hottest, second.hottest, rtol=0.0, atol=1e-9)
 
 
+def test_the_tank_of_the_readme_is_sound() -> None:
+    blocks = (MESHES.parent / "README.md").read_text(encoding="utf-8").split("```toml\n")[1:]
+    texts = [block.split("```")[0] for block in blocks]
+    (tank,) = [text for text in texts if text.startswith("[load]")]
+    case = casefile.loads(f"{texts[0]}\n{tank}")
+    assert case.load is not None and case.tank is not None
+    assert (case.load.pieces, case.tank.volume, len(case.shift)) == (12, 40.0, 1)
+
+
 # The reader and the writer
 
 
