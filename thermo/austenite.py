@@ -7,7 +7,7 @@ ferrite, between Ae1 and Acm cementite. A hypereutectoid steel with 0.5 % Cr or
 more never gets that far in a works soak, chromium being slow: its carbon in
 solution after about half an hour is read from ``DISSOLVED``, never above
 equilibrium. Cementite left over holds ``CHROMIUM_RATIO`` times the chromium of
-the austenite. The grain grows as ``A exp(-Q / RT) time^0.211``.
+the austenite, sulphides hold manganese (`thermo.extension`). The grain grows as ``A exp(-Q / RT) time^0.211``.
 
 Source
 ------
@@ -39,6 +39,7 @@ from midradius.thermo.equilibrium import (
     lever_ferrite,
 )
 from midradius.thermo.errors import InputFault
+from midradius.thermo.extension import soluble_manganese
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition, Steel
 
@@ -189,7 +190,7 @@ def _dissolved(temp: Array) -> Array:
 
 def _left_in_austenite(composition: Composition, carbon: float, cementite: float) -> Composition:
     chromium = composition.Cr / (1.0 + (CHROMIUM_RATIO - 1.0) * cementite)
-    return replace(composition, C=carbon, Cr=chromium)
+    return replace(composition, C=carbon, Cr=chromium, Mn=soluble_manganese(composition))
 
 
 def _check(steel: Steel, temp: float, time: float, grain_astm: float | None, ae1: float) -> None:

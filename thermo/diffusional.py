@@ -26,9 +26,11 @@ at 0.77 %: the regression has no data there, and uncapped it forbids bainite.
 """
 
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 
+from midradius.thermo import extension
 from midradius.thermo.arrays import Array
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition
@@ -36,6 +38,7 @@ from midradius.thermo.steel import Composition
 GAS_CAL = 1.987  # cal/(mol K), as printed
 KELVIN = 273.15
 CARBON_CAP_PCT = 0.77
+PEARLITE_POWER, PEARLITE_CAL = 3, 27500.0
 RESIDUAL_MO_PCT = 0.03  # below it the square root of Mo would act on a residue
 
 SOURCES = (
@@ -87,6 +90,7 @@ def rates(
     grain_astm: float,
     ae3: float,
     ae1: float,
+    extended: bool = True,
 ) -> Rates:
     """Clock rates of the three diffusional products.
 
@@ -102,6 +106,8 @@ def rates(
         Prior austenite grain, ASTM E112 number.
     ae3, ae1
         Equilibrium temperatures of that austenite [K].
+    extended
+        Whether `thermo.extension` goes on where the regression ends.
 
     Returns
     -------
@@ -110,10 +116,12 @@ def rates(
     """
     c = composition
     carbon = min(carbon_pct, CARBON_CAP_PCT)
+    of_carbon = partial(_exponent, carbon=carbon_pct if extended else carbon, extended=extended)
+    manganese = extension.manganese_exponent(4.36, c.Mn) if extended else 4.36 * c.Mn
     molybdenum = c.Mo if c.Mo >= RESIDUAL_MO_PCT else 0.0
     ferrite = np.exp(
         1.00
-        + 6.31 * carbon
+        + of_carbon(6.31)
         + 1.78 * c.Mn
         + 0.31 * c.Si
         + 1.12 * c.Ni
@@ -122,22 +130,31 @@ def rates(
     )
     pearlite = np.exp(
         -4.25
-        + 4.12 * carbon
-        + 4.36 * c.Mn
+        + of_carbon(4.12)
+        + manganese
         + 0.44 * c.Si
         + 1.71 * c.Ni
         + 3.33 * c.Cr
         + 5.19 * np.sqrt(molybdenum)
     )
     bainite = np.exp(
-        -10.23 + 10.18 * carbon + 0.85 * c.Mn + 0.55 * c.Ni + 0.90 * c.Cr + 0.36 * molybdenum
+        -10.23 + of_carbon(10.18) + 0.85 * c.Mn + 0.55 * c.Ni + 0.90 * c.Cr + 0.36 * molybdenum
     )
     start = bainite_start(Composition(**{**vars(c), "C": carbon}))
+    by_pearlite = _clock(temp, ae1, PEARLITE_POWER, PEARLITE_CAL, 0.32 * grain_astm, pearlite)
+    if extended:
+        by_pearlite = by_pearlite * extension.pearlite_share(
+            ae1 - temp, c, power=PEARLITE_POWER, activation=PEARLITE_CAL / GAS_CAL
+        )
     return Rates(
         ferrite=_clock(temp, ae3, 3, 23500.0, 0.41 * grain_astm, ferrite),
-        pearlite=_clock(temp, ae1, 3, 27500.0, 0.32 * grain_astm, pearlite),
+        pearlite=by_pearlite,
         bainite=_clock(temp, start, 2, 27500.0, 0.29 * grain_astm, bainite),
     )
+
+
+def _exponent(coefficient: float, *, carbon: float, extended: bool) -> float:
+    return extension.carbon_exponent(coefficient, carbon) if extended else coefficient * carbon
 
 
 def _clock(

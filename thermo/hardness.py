@@ -36,6 +36,7 @@ import numpy as np
 
 from midradius.thermo import conversion, hardenability, strength
 from midradius.thermo.arrays import Array
+from midradius.thermo.equilibrium import CEMENTITE_CARBON_PCT
 from midradius.thermo.phases import (
     AUSTENITE,
     BAINITE,
@@ -134,7 +135,11 @@ def vickers(
         fractions, composition, rate, pearlite_temp, ae1, grain_intercept
     )
     tensile = strength.ferrite_pearlite_tensile(
-        ferrite_share, grain=scales[0], spacing=scales[1], composition=composition
+        ferrite_share,
+        grain=scales[0],
+        spacing=scales[1],
+        pearlite_carbon_pct=_pearlite_carbon(fractions, carbon_initial_pct),
+        composition=composition,
     )
     mixture = np.maximum(slow, tensile / strength.TENSILE_PER_HV)
     by_phase[FERRITE] = by_phase[PEARLITE] = mixture
@@ -241,6 +246,14 @@ def _ferrite_pearlite(
     share = np.where(both > 0.0, ferrite / np.where(both > 0.0, both, 1.0), 1.0)
     grain = strength.ferrite_grain(composition, rate, grain_intercept)
     return share, (grain, strength.interlamellar_spacing(pearlite_temp, ae1))
+
+
+def _pearlite_carbon(fractions: Array, carbon_pct: float) -> Array:
+    """Carbon [mass %] that ferrite and cementite on the grain faces left for pearlite."""
+    before = np.where(fractions[FERRITE] > PRESENT, fractions[FERRITE], 0.0)
+    cementite = fractions[CEMENTITE]
+    left = np.maximum(1.0 - before - cementite, PRESENT)
+    return np.asarray((carbon_pct - CEMENTITE_CARBON_PCT * cementite) / left)
 
 
 def range_notes(

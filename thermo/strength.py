@@ -6,7 +6,11 @@ Gladman: yield and tensile strength of ferrite-pearlite from the share of
 ferrite, its grain ``d`` and the pearlite spacing ``S0`` (mm in the print). Its
 pearlite term comes from coarse, normalised pearlite and is 3 to 6 HRC too soft for
 the fine one of a quench, so the tensile strength of pearlite is not below that of
-eutectoid steel transformed at the same undercooling (``ATLAS_HV``).
+eutectoid steel transformed at the same undercooling (``ATLAS_HV``). Pearlite that
+formed with less carbon than eutectoid has less cementite and is softer: its hardness
+changes by Maynier's carbon term, and where little ferrite formed, so that Gladman's
+mixture cannot know of it, the mean by fraction with that pearlite is the upper bound.
+Pearlite with more carbon is harder by the same term.
 Spacing: ``S0 = 18 um K / (Ae1 - T)``, not below 0.05 um, ``T`` the mean
 temperature at which the pearlite formed. Ferrite grain: Hodgson & Gibbs from
 carbon equivalent C + Mn/6, cooling rate and austenite grain; the equivalent is
@@ -19,7 +23,8 @@ Source
 ------
 Hardness of isothermal pearlite: 1080 in the I-T diagrams of U.S. Steel, Rockwell
 scale at the edge, 11, 32, 38, 40 and 40 HRC at 705, 650, 600, 550 and 500 degC
-(remembered), into HV by ASTM E140, 11 HRC by its extension. Gladman, McIvor &
+(remembered), into HV by ASTM E140, 11 HRC by its extension. Carbon term: Maynier et
+al. 1978, see `thermo.hardness` (remembered). Gladman, McIvor &
 Pickering, J. Iron Steel Inst. 210 (1972) 916; Hodgson & Gibbs, ISIJ Int. 32 (1992)
 1329; Pavlina & Van Tyne, J. Mater. Eng. Perform. 17 (2008) 888 (abstract read,
 coefficients remembered); all remembered.
@@ -63,7 +68,8 @@ SOURCES = (
 # Eutectoid pearlite by undercooling below Ae1 of 727 degC [K]: hardness [HV].
 ATLAS_UNDERCOOLING = (22.0, 77.0, 127.0, 177.0, 227.0)
 ATLAS_HV = (197.0, 318.0, 372.0, 392.0, 392.0)
-ATLAS_SILICON_PCT = 0.20
+ATLAS_SILICON_PCT, ATLAS_CARBON_PCT = 0.20, 0.79
+CARBON_HV = 223.0  # Maynier's hardness of ferrite-pearlite per mass % of carbon
 TENSILE_PER_HV = 3.2  # MPa per HV of ferrite-pearlite
 SPACING_UNDERCOOLING = 18e-6  # m K
 SILICON_MPA = 97.3  # per mass %
@@ -117,29 +123,44 @@ def gladman_tensile(
     absent does not count and may be nan.
     """
     pearlite = 719.0 + 3.54 * (1e3 * spacing) ** -0.5
-    return _tensile(ferrite_share, grain, pearlite, composition)
+    ferrite = _ferrite_tensile(grain, composition)
+    return np.asarray(_mix(ferrite_share, ferrite, pearlite) + SILICON_MPA * composition.Si)
 
 
 def ferrite_pearlite_tensile(
-    ferrite_share: Array, *, grain: Array, spacing: Array, composition: Composition
+    ferrite_share: Array,
+    *,
+    grain: Array,
+    spacing: Array,
+    pearlite_carbon_pct: Array,
+    composition: Composition,
 ) -> Array:
-    """Tensile strength [MPa] with fine pearlite at its measured hardness.
+    """Tensile strength [MPa] with pearlite at the measured hardness of its undercooling.
 
-    Arguments as `gladman_tensile`, whose pearlite term stays the lower bound.
+    The lower of Gladman's mixture, with the pearlite of eutectoid steel, and the mean by
+    fraction, with a pearlite of ``pearlite_carbon_pct`` [mass %], one shape. The other
+    arguments are those of `gladman_tensile`, whose pearlite term stays the lower bound.
     """
     undercooling = SPACING_UNDERCOOLING / spacing
-    measured = TENSILE_PER_HV * np.interp(undercooling, ATLAS_UNDERCOOLING, ATLAS_HV)
-    fine = measured - SILICON_MPA * ATLAS_SILICON_PCT
-    pearlite = np.maximum(719.0 + 3.54 * (1e3 * spacing) ** -0.5, fine)
-    return _tensile(ferrite_share, grain, pearlite, composition)
+    measured = np.interp(undercooling, ATLAS_UNDERCOOLING, ATLAS_HV)
+    more = CARBON_HV * (pearlite_carbon_pct - ATLAS_CARBON_PCT)
+    coarse = 719.0 + 3.54 * (1e3 * spacing) ** -0.5
+
+    def of(hardness: Array) -> Array:
+        return np.maximum(coarse, TENSILE_PER_HV * hardness - SILICON_MPA * ATLAS_SILICON_PCT)
+
+    rich, own = of(measured + np.maximum(more, 0.0)), of(measured + more)
+    ferrite = _ferrite_tensile(grain, composition)
+    mean = np.where(ferrite_share > 0.0, ferrite_share * ferrite, 0.0)
+    mean = mean + np.where(ferrite_share < 1.0, (1.0 - ferrite_share) * own, 0.0)
+    return np.asarray(
+        np.minimum(_mix(ferrite_share, ferrite, rich), mean) + SILICON_MPA * composition.Si
+    )
 
 
-def _tensile(
-    ferrite_share: Array, grain: Array, pearlite: Array, composition: Composition
-) -> Array:
+def _ferrite_tensile(grain: Array, composition: Composition) -> Array:
     nitrogen = composition.N or NITROGEN_PCT
-    ferrite = 246.0 + 1143.0 * np.sqrt(nitrogen) + 18.2 * (1e3 * grain) ** -0.5
-    return np.asarray(_mix(ferrite_share, ferrite, pearlite) + SILICON_MPA * composition.Si)
+    return np.asarray(246.0 + 1143.0 * np.sqrt(nitrogen) + 18.2 * (1e3 * grain) ** -0.5)
 
 
 def gladman_yield(

@@ -34,7 +34,11 @@ from midradius.thermo.conversion import hv_to_hrc
 from midradius.thermo.grades import grade
 
 PLACES = ("surface", "mid-radius", "core")
-MEDIA = {"oil": ("mineral oil, still", 60.0), "air": ("still air", 20.0)}
+MEDIA = {
+    "oil": ("mineral oil, still", 60.0),
+    "water": ("water, still", 25.0),
+    "air": ("still air", 20.0),
+}
 GRAIN_ASTM = 7.0
 
 MISSES = {

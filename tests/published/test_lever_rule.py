@@ -137,7 +137,7 @@ def test_the_slower_a_steel_cools_the_nearer_it_comes_to_the_lever_rule(tmp_path
     ferrite, _ = slow_cooling(equilibrium(steel.composition), 0.6)
     short = [
         ferrite - _slowly_cooled(tmp_path, steel, htc).positions[1].phases["ferrite"]
-        for htc in (100.0 * SLOWEST, 10.0 * SLOWEST, SLOWEST)
+        for htc in (1000.0 * SLOWEST, 100.0 * SLOWEST, 10.0 * SLOWEST)
     ]
     assert short[0] > 2.0 * short[1] > 4.0 * short[2] > 0.0
 

@@ -114,9 +114,39 @@ def test_pearlite_of_eutectoid_steel_is_as_hard_as_the_atlas_says(
         np.array(0.0),
         grain=np.array(np.nan),
         spacing=strength.interlamellar_spacing(at_degC + ZERO, 727.0 + ZERO),
+        pearlite_carbon_pct=np.array(0.79),
         composition=Composition(C=0.79, Mn=0.76, Si=0.20),
     )
     assert_allclose(hv_to_hrc(tensile / 3.2), hrc, rtol=0.0, atol=0.5)
+
+
+def test_pearlite_with_less_carbon_is_softer_by_the_carbon_term_of_maynier() -> None:
+    # 223 HV per % C (from memory), at 600 degC, where the measured pearlite rules
+    found = [
+        strength.ferrite_pearlite_tensile(
+            np.array(0.0),
+            grain=np.array(np.nan),
+            spacing=strength.interlamellar_spacing(600.0 + ZERO, 727.0 + ZERO),
+            pearlite_carbon_pct=np.array(carbon),
+            composition=Composition(C=carbon, Mn=0.75, Si=0.20),
+        )
+        / 3.2
+        for carbon in (0.69, 0.79, 0.89)
+    ]
+    assert_allclose(np.diff(found), 22.3, rtol=0.0, atol=1e-6)
+
+
+def test_a_little_ferrite_does_not_make_diluted_pearlite_harder() -> None:
+    steel = Composition(C=0.6, Mn=0.75, Si=0.25)
+    shares = np.linspace(0.0, 0.2, 21)
+    tensile = strength.ferrite_pearlite_tensile(
+        shares,
+        grain=np.full(21, 8e-6),
+        spacing=np.full(21, 0.13e-6),
+        pearlite_carbon_pct=0.6 / (1.0 - shares),
+        composition=steel,
+    )
+    assert np.all(np.diff(tensile) <= 0.0)
 
 
 def test_pearlite_formed_at_600_degrees_is_spaced_as_observed() -> None:
