@@ -40,7 +40,7 @@ from midradius.thermo.arrays import BoolArray
 from midradius.thermo.austenitizing import SOAK_TIME, austenitizing
 from midradius.thermo.calibration import NAMES, NONE, Calibration, calibrate
 from midradius.thermo.errors import InputFault
-from midradius.thermo.ratechoice import LI
+from midradius.thermo.ratechoice import EXTENDED
 from midradius.thermo.steel import Steel
 
 SCATTER_HRC = 1.0
@@ -66,7 +66,7 @@ class Fitted:
     diagrams: tuple[DiagramFit, ...]
     files: tuple[tuple[str, str], ...]
     notes: tuple[str, ...]
-    kinetics: str = LI
+    kinetics: str = EXTENDED
 
 
 def fitted(

@@ -12,7 +12,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from midradius.thermo.errors import InputFault
-from midradius.thermo.ratechoice import LI, NAMES
+from midradius.thermo.ratechoice import EXTENDED, NAMES
 from midradius.thermo.steel import ELEMENTS, Composition, Steel
 
 if TYPE_CHECKING:
@@ -72,7 +72,7 @@ class HeatCalibration:
     measured_sha256: str
     program: str
     soak: CalibratedSoak | None = None
-    kinetics: str = LI
+    kinetics: str = EXTENDED
 
     @property
     def text(self) -> str:
@@ -172,7 +172,7 @@ def read_calibration(path: Path) -> HeatCalibration:
         _number(f"calibration.composition.{element}", amount, 0.0, 100.0)
     if "C" not in amounts:
         raise _fault("calibration.composition.C", None, "given")
-    kinetics = head.get("kinetics", LI)
+    kinetics = head.get("kinetics", EXTENDED)
     if kinetics not in NAMES:
         raise _fault("calibration.kinetics", kinetics, " or ".join(NAMES))
     shifts = _table(data, "shifts")
@@ -237,7 +237,7 @@ def dumps(calibration: HeatCalibration, remarks: tuple[str, ...] = ()) -> str:
     lines += [f"# {line}" for line in remarks]
     lines += ["", "[calibration]", f"format = {FORMAT}"]
     lines += [f"{key} = {_quoted(getattr(calibration, key))}" for key in TEXTS]
-    if calibration.kinetics != LI:
+    if calibration.kinetics != EXTENDED:
         lines.append(f"kinetics = {_quoted(calibration.kinetics)}")
     lines += [f"composition = {{ {written} }}", "", "[shifts]"]
     for key, (attribute, _, _) in KEYS.items():

@@ -50,7 +50,9 @@ pictures and calibration.json.
     "--grain", help='"ASTM 7", or "soak" for the grain it grows. Default: the file\'s, or ASTM 7.'
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
-@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
+@click.option(
+    "--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998, extended."
+)
 @click.option("--scatter", default="1 HRC", show_default=True, help="Of one point of the curve.")
 @click.option("--save", type=click.Path(path_type=Path), help="Write the calibration, TOML.")
 @click.option("--out", "folder", type=click.Path(path_type=Path), help="Write files there.")

@@ -44,7 +44,9 @@ The folder holds a table and a picture, named after the kind of diagram.
     help='"ASTM 7", or "soak" for what it grows. Default: the result\'s or file\'s, or ASTM 7.',
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
-@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
+@click.option(
+    "--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998, extended."
+)
 @click.option(
     "--calibration",
     type=click.Path(path_type=Path),

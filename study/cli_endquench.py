@@ -34,7 +34,9 @@ The folder holds end-quench.csv, end-quench.png and end-quench.json.
     "--grain", help='"ASTM 7", or "soak" for the grain it grows. Default: the file\'s, or ASTM 7.'
 )
 @click.option("--heat", default="", help="Which steel of a certificate that holds several.")
-@click.option("--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998.")
+@click.option(
+    "--kinetics", metavar="NAME", help="Set of rates. Default: the file's, or Li 1998, extended."
+)
 @click.option(
     "--calibration",
     type=click.Path(path_type=Path),

@@ -5,7 +5,8 @@ Model
 Isothermal time to the fraction ``X`` of what can form is ``tau0(T) S(X)`` with
 ``S(X) = int_0^X dx / (x^(0.4(1-x)) (1-x)^(0.4x))``. In rate form the clock
 ``S`` runs with ``1/tau0(T)``, whatever the path of the temperature: additivity
-is exact by construction. Here are the ``1/tau0`` of one steel.
+is exact by construction. Here are the ``1/tau0`` of one steel, those of pearlite on the
+shape that `thermo.extension` gives its clock.
 
 Cementite on the grain faces of hypereutectoid austenite takes carbon from its
 own grain, a sphere whose surface is held at Acm: ``z = (f/f_max)^2`` follows
@@ -21,8 +22,8 @@ Agren, Scripta Metall. 20 (1986) 1507 (remembered; agrees with read mobilities).
 Holds for
 ---------
 About C 0.1 to 0.6, Mn < 1.8, Si < 0.6, Ni < 3.5, Cr < 1.6, Mo < 0.6 mass %,
-ASTM grain 4 to 10 (remembered). Above 0.77 % the carbon in the factors is held
-at 0.77 %: the regression has no data there, and uncapped it forbids bainite.
+ASTM grain 4 to 10 (remembered). Rich carbon, manganese and warm pearlite go on by
+`thermo.extension`; without it, and in the bainite start, carbon is held at 0.77 %.
 """
 
 from dataclasses import dataclass
@@ -143,9 +144,10 @@ def rates(
     start = bainite_start(Composition(**{**vars(c), "C": carbon}))
     by_pearlite = _clock(temp, ae1, PEARLITE_POWER, PEARLITE_CAL, 0.32 * grain_astm, pearlite)
     if extended:
-        by_pearlite = by_pearlite * extension.pearlite_share(
+        share = extension.pearlite_share(
             ae1 - temp, c, power=PEARLITE_POWER, activation=PEARLITE_CAL / GAS_CAL
         )
+        by_pearlite = by_pearlite * share * extension.pearlite_pace()
     return Rates(
         ferrite=_clock(temp, ae3, 3, 23500.0, 0.41 * grain_astm, ferrite),
         pearlite=by_pearlite,

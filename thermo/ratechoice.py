@@ -8,8 +8,9 @@ from dataclasses import dataclass
 
 from midradius.thermo.errors import InputFault
 
+EXTENDED = "Li 1998, extended"  # by `thermo.extension`
 LI, KIRKALDY = "Li 1998", "Kirkaldy-Venugopalan 1984"
-NAMES = (LI, KIRKALDY)
+NAMES = (EXTENDED, LI, KIRKALDY)
 ZERO_DEGC = 273.15
 
 
@@ -47,13 +48,13 @@ class Measured:
 class Kinetics:
     """The set of rates called ``name``; ``measured`` replaces those that it holds."""
 
-    name: str = LI
+    name: str = EXTENDED
     measured: Measured | None = None
 
     @property
     def text(self) -> str:
         """What a result says of it."""
-        named = f"{self.name} (the default)" if self.name == LI else self.name
+        named = f"{self.name} (the default)" if self.name == EXTENDED else self.name
         if self.measured is None:
             return f"Rates of ferrite, pearlite and bainite: {named}."
         said = [

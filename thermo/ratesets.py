@@ -2,7 +2,7 @@
 
 from dataclasses import replace
 
-from midradius.thermo import diffusional, kirkaldy, martensite, measuredrates
+from midradius.thermo import diffusional, extension, kirkaldy, martensite, measuredrates
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
@@ -10,7 +10,7 @@ from midradius.thermo.clocks import LI as LI_SHAPE
 from midradius.thermo.clocks import Shape
 from midradius.thermo.diffusional import Rates
 from midradius.thermo.equilibrium import Equilibrium
-from midradius.thermo.ratechoice import KIRKALDY, Kinetics
+from midradius.thermo.ratechoice import EXTENDED, KIRKALDY, Kinetics
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition
 
@@ -40,6 +40,7 @@ def rates(kinetics: Kinetics, austenite: Austenite, temp: Array, soaked: Equilib
         grain_astm=austenite.grain_astm,
         ae3=soaked.ae3,
         ae1=soaked.ae1,
+        extended=kinetics.name == EXTENDED,
     )
 
 
@@ -50,7 +51,8 @@ def shapes(kinetics: Kinetics, composition: Composition) -> tuple[Shape, ...]:
     """
     if kinetics.name == KIRKALDY:
         return kirkaldy.shapes(composition)
-    return (LI_SHAPE,) * 3
+    pearlite = extension.PEARLITE_SHAPE if kinetics.name == EXTENDED else LI_SHAPE
+    return LI_SHAPE, pearlite, LI_SHAPE
 
 
 def put_measured(kinetics: Kinetics, temp: Array, value: Array) -> tuple[str, ...]:
@@ -105,6 +107,8 @@ def range_notes(
 def sources(kinetics: Kinetics) -> tuple[Source, ...]:
     """The works behind the choice."""
     found = list(diffusional.SOURCES)
+    if kinetics.name == EXTENDED:
+        found += extension.SOURCES
     if kinetics.name == KIRKALDY:
         # the film of cementite is in no set: it stays
         found = [*kirkaldy.SOURCES, *diffusional.SOURCES[1:]]

@@ -99,7 +99,7 @@ def test_a_case_transforms_as_its_heat_was_measured(tmp_path: Path) -> None:
     assert_allclose(slow.critical_degC["Ms"], 230.0, rtol=0.0, atol=1e-9)
     said = "\n".join(slow.assumptions)
     assert "as measured in itd.csv: pearlite 540 to 680 degC, bainite 300 to 540 degC" in said
-    assert "The rest: Li 1998 (the default)" in said
+    assert "The rest: Li 1998, extended (the default)" in said
     assert "measured transformation" in [source.model for source in slow.sources]
     # Every time a thousandfold, the bar hardens in the same air: so it is the table that acts.
     head, *rows = [row for row in ATLAS.read_text().splitlines() if not row.startswith("#")]
@@ -137,7 +137,10 @@ def test_faults_of_a_case_name_the_key_and_the_line_of_the_table(tmp_path: Path)
     with pytest.raises(CaseFaults) as caught:
         case(tmp_path, 'kinetics = "Li 1989"\ntransformation = "itd.csv"')
     said = str(caught.value)
-    assert 'steel.kinetics = "Li 1989", but must be "Li 1998" or "Kirkaldy-Venugopalan' in said
+    assert (
+        'steel.kinetics = "Li 1989", but must be "Li 1998, extended" or "Li 1998" or "Kirkaldy-Venugopalan'
+        in said
+    )
     assert 'itd.csv, line 2: product = "perlite", but must be ferrite, cementite' in said
 
 
@@ -201,4 +204,4 @@ def test_the_commands_take_a_set_by_name(call: Callable[..., Any]) -> None:
     assert json.loads(call(*asked, "Kirkaldy-Venugopalan 1984").out)["kinetics"] == KIRKALDY
     wrong = call(*asked, "Kirk 1984")
     assert wrong.code == 2
-    assert 'kinetics = "Kirk 1984", but must be "Li 1998" or' in wrong.err
+    assert 'kinetics = "Kirk 1984", but must be "Li 1998, extended" or' in wrong.err

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 
-from midradius.thermo import diffusional, extension
+from midradius.thermo import clocks, diffusional, extension
 from midradius.thermo.grades import grade
 from midradius.thermo.steel import Composition
 
@@ -73,6 +73,18 @@ def test_the_share_is_monotone_in_the_undercooling() -> None:
     )
     assert np.all(np.diff(share) >= 0.0)
     assert share[0] > 0.0
+
+
+def test_the_clock_of_pearlite_spans_the_times_of_the_diagram() -> None:
+    # 1080 at its nose, U.S. Steel (from memory): 0.7 s for 1 %, 7 s for 99 %
+    begin, end = clocks.integral(np.array([0.01, 0.99]), extension.PEARLITE_SHAPE)
+    assert_allclose(end / begin, 10.0, rtol=0.03, atol=0.0)
+
+
+def test_half_of_the_pearlite_takes_the_time_of_the_regression() -> None:
+    half = np.array([0.5])
+    ours = clocks.integral(half, extension.PEARLITE_SHAPE) / extension.pearlite_pace()
+    assert_allclose(ours, clocks.integral(half, clocks.LI), rtol=1e-14, atol=0.0)
 
 
 def test_sulphur_takes_manganese_as_the_sulphide() -> None:
