@@ -7,7 +7,8 @@ ferrite, between Ae1 and Acm cementite. A hypereutectoid steel with 0.5 % Cr or
 more never gets that far in a works soak, chromium being slow: its carbon in
 solution after about half an hour is read from ``DISSOLVED``, never above
 equilibrium. Cementite left over holds ``CHROMIUM_RATIO`` times the chromium of
-the austenite, sulphides hold manganese (`thermo.extension`). The grain grows as ``A exp(-Q / RT) time^0.211``.
+the austenite, sulphides hold manganese (`thermo.extension`). The grain grows as
+``A exp(-Q / RT) time^0.211``.
 
 Source
 ------

@@ -1,9 +1,9 @@
 """Measure the model's error by class of steel and write ``study/uncertainty.csv``.
 
 ``python tests/published/measure_uncertainty.py`` after every change of a model, with a
-line in the changelog. Readings: every row of ``bars.csv`` (the value itself) and of
-``end_quench_bands.csv`` (the middle of the band, which the aim composition need not
-meet: the scatter of the heats is in the figure). Rockwell C where value and result
+line in the changelog. Readings: every row of ``bars.csv`` and ``mass_effect.csv`` (the
+value itself), of ``end_quench_bands.csv`` and ``more_bands.csv`` (the middle of the band,
+which the aim composition need not meet: the scatter of the heats is in the figure). Rockwell C where value and result
 have one; in percent of the result's HV for every hardness; likewise tensile strength.
 Yield strength: every row of ``normalised_yield.csv``. Tempered: every row of
 ``tempered_bars.csv``. Where a row's source states none, the time is two hours, the bar
@@ -14,6 +14,7 @@ import csv
 import datetime
 import sys
 from collections import defaultdict
+from functools import cache
 from pathlib import Path
 
 import numpy as np
@@ -29,8 +30,10 @@ from midradius.study.case import (
     SteelInput,
     Until,
 )
+from midradius.study.endquench import piece
 from midradius.study.result import Result
 from midradius.study.runner import run
+from midradius.thermo.austenitizing import austenitizing
 from midradius.thermo.conversion import hb_to_hv, hrc_to_hv, hv_to_hrc
 from midradius.thermo.grades import grade
 
@@ -41,10 +44,10 @@ BARS = "handbook bars"
 END_QUENCH = "end-quench bands"
 TEMPERED_BARS = "tempered bars"
 HOW = {
-    BARS: "whole job against readings of tests/published/bars.csv and normalised_yield.csv"
-    " (rounds of 13 to 100 mm)",
+    BARS: "whole job against readings of tests/published/bars.csv, mass_effect.csv and"
+    " normalised_yield.csv (rounds of 13 to 100 mm)",
     END_QUENCH: "whole job at the aim composition against the middle of each band of"
-    " tests/published/end_quench_bands.csv",
+    " tests/published/end_quench_bands.csv and more_bands.csv",
     TEMPERED_BARS: "whole job with its temper against readings of tests/published/"
     "tempered_bars.csv (rounds of 10 to 100 mm)",
 }
@@ -59,7 +62,8 @@ def errors() -> dict[Key, list[float]]:
     import test_bars
 
     found: dict[Key, list[float]] = defaultdict(list)
-    for row in endquench.rows("bars"):
+    # rows of the wider table state no unit but HRC
+    for row in [*endquench.rows("bars"), *endquench.rows("mass_effect")]:
         kind = uncertainty.steel_class(grade(row["steel"]).composition)
         result = test_bars.cooled(
             row["steel"], float(row["soak_degC"]), row["route"], float(row["diameter_mm"])
@@ -74,15 +78,15 @@ def errors() -> dict[Key, list[float]]:
             found[kind, "hardness", "HRC", BARS].append(place.hardness_hrc - value)
         hv = float(hrc_to_hv(value) if row["unit"] == "HRC" else hb_to_hv(value))
         found[kind, "hardness", "%", BARS].append(_percent(place.hardness_hv, hv))
-    for row in endquench.rows("end_quench_bands"):
+    for row in [*endquench.rows("end_quench_bands"), *endquench.rows("more_bands")]:
         if row["low"] == row["high"] or "reading" in row["band"]:
             continue
         kind = uncertainty.steel_class(grade(row["grade"]).composition)
-        hv = endquench.at(endquench.quenched(row["grade"]), float(row["distance_mm"])).hardness_hv
+        hv = end_quenched(row["grade"])[f"{float(row['distance_mm']):g} mm"]
         middle = 0.5 * (float(row["low"]) + float(row["high"]))
         of_middle = _percent(hv, float(hrc_to_hv(middle)))
         found[kind, "hardness", "%", END_QUENCH].append(of_middle)
-        found[kind, "hardness", "HRC", END_QUENCH].append(_rockwell(hv) - middle)
+        found[kind, "hardness", "HRC", END_QUENCH].append(rockwell(hv) - middle)
     for row in endquench.rows("normalised_yield"):
         kind = uncertainty.steel_class(grade(row["steel"]).composition)
         result = test_bars.cooled(
@@ -105,6 +109,18 @@ def errors() -> dict[Key, list[float]]:
             error = place.hardness_hrc - float(hv_to_hrc(hv))
             found[kind, "hardness", "HRC", TEMPERED_BARS].append(error)
     return dict(found)
+
+
+@cache
+def end_quenched(name: str) -> dict[str, float]:
+    """Hardness [HV] by place of the test piece of a grade."""
+    import endquench
+
+    if name in endquench.SOAK_DEGC:
+        return {p.name: p.hardness_hv for p in endquench.quenched(name).positions}
+    given = SteelInput(grade(name), 7.0)
+    asked = piece(given, temp=austenitizing(given.steel).temp, time=1800.0)
+    return {p.name: p.hardness_hv for p in run(asked).positions}
 
 
 def _tempered(row: dict[str, str]) -> Result:
@@ -137,7 +153,7 @@ def _percent(ours: float, read: float) -> float:
     return 100.0 * (1.0 - read / ours)
 
 
-def _rockwell(hv: float) -> float:
+def rockwell(hv: float) -> float:
     """Below the end of the scale by the bracketed row of SAE J417, 18 for 230 HV (memory)."""
     return float(hv_to_hrc(hv)) if hv >= 238.0 else 20.0 - 2.0 * (238.0 - hv) / 8.0
 

@@ -11,24 +11,15 @@ from functools import cache
 import numpy as np
 import pytest
 from endquench import rows
+from measure_uncertainty import end_quenched, rockwell
 from test_bars import PLACES, cooled
 
-from midradius.study.case import SteelInput
-from midradius.study.endquench import piece
-from midradius.study.runner import run
 from midradius.study.uncertainty import steel_class
-from midradius.thermo.austenitizing import austenitizing
-from midradius.thermo.conversion import hv_to_hrc
 from midradius.thermo.grades import grade
 
 pytestmark = pytest.mark.slow
 MEDIAN_HRC, P90_HRC, IN_BAND = 2.0, 6.0, 0.95
 LEAST_CARBON_PCT = 0.3  # case-hardening steels below: their cores are another matter
-
-
-def _rockwell(hv: float) -> float:
-    """Below the end of the scale by the bracketed row of SAE J417, 18 for 230 HV (memory)."""
-    return float(hv_to_hrc(hv)) if hv >= 238.0 else 20.0 - 2.0 * (238.0 - hv) / 8.0
 
 
 @cache
@@ -41,7 +32,7 @@ def bar_errors() -> dict[str, list[float]]:
             row["steel"], float(row["soak_degC"]), row["route"], float(row["diameter_mm"])
         )
         hv = result.positions[PLACES.index(row["position"])].hardness_hv
-        found[row["steel"]].append(_rockwell(hv) - float(row["value"]))
+        found[row["steel"]].append(rockwell(hv) - float(row["value"]))
     return dict(found)
 
 
@@ -49,16 +40,10 @@ def bar_errors() -> dict[str, list[float]]:
 def band_places() -> dict[str, list[float]]:
     """Where each distance lies in its band: -1 and +1 are its ends."""
     found: dict[str, list[float]] = defaultdict(list)
-    table = rows("more_bands")
-    for name in dict.fromkeys(row["grade"] for row in table):
-        given = SteelInput(grade(name), 7.0)
-        result = run(piece(given, temp=austenitizing(given.steel).temp, time=1800.0))
-        hv = {p.name: p.hardness_hv for p in result.positions}
-        for row in table:
-            if row["grade"] == name:
-                low, high = float(row["low"]), float(row["high"])
-                ours = _rockwell(hv[f"{float(row['distance_mm']):g} mm"])
-                found[name].append((2.0 * ours - low - high) / (high - low))
+    for row in rows("more_bands"):
+        low, high = float(row["low"]), float(row["high"])
+        ours = rockwell(end_quenched(row["grade"])[f"{float(row['distance_mm']):g} mm"])
+        found[row["grade"]].append((2.0 * ours - low - high) / (high - low))
     return dict(found)
 
 

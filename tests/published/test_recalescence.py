@@ -57,7 +57,7 @@ def _cooled(folder: Path, steel: Steel, htc: float) -> Result:
 
 @pytest.mark.parametrize("htc", [2.0, 5.0, 30.0])
 @pytest.mark.parametrize("steel", [PLAIN, grade("1080")], ids=["plain", "1080"])
-def test_a_eutectoid_bar_falls_below_ae1_rises_a_few_kelvin_and_falls_again(
+def test_a_eutectoid_bar_falls_below_ae1_rises_and_falls_again(
     tmp_path: Path, steel: Steel, htc: float
 ) -> None:
     result = _cooled(tmp_path, steel, htc)
@@ -65,10 +65,11 @@ def test_a_eutectoid_bar_falls_below_ae1_rises_a_few_kelvin_and_falls_again(
     core = result.history_temp_degC[:, 1]
     rising = np.flatnonzero(np.diff(core) > 0.0)
     first, last = int(rising[0]), int(rising[-1]) + 1
-    # one rise without a break, below Ae1, by a few kelvin; falling before and after it
+    # one rise without a break, below Ae1, falling before and after it; wire rod of eutectoid
+    # steel rises 10 to 40 K on a cooling conveyor (common practice, no source)
     assert_allclose(np.diff(rising), 1.0, rtol=0.0, atol=0.0)
     assert core[first] < core[last] < ae1
-    assert 1.0 < core[last] - core[first] < 10.0
+    assert 1.0 < core[last] - core[first] < 40.0
     assert core[0] > ae1 and core[-1] < core[first] - 50.0
     # pearlite forms along the plateau
     formed = result.pearlite_formed_at_degC

@@ -42,8 +42,6 @@ PLACE = "mid-radius"
 
 MISSES = {
     "4140 25 mm 540 HB": "345 HB, handbook 311 +- 25",
-    "4140 50 mm 540 HB": "315 HB, handbook 285 +- 25",
-    "4140 25 mm 205 MPa": "1875 MPa, table 1772 +- 100",
     "4140 25 mm 315 MPa": "1667 MPa, table 1551 +- 100",
     "4140 25 mm 425 MPa": "1454 MPa, table 1248 +- 100",
     "4140 25 mm 540 MPa": "1166 MPa, table 951 +- 100",
@@ -51,7 +49,7 @@ MISSES = {
 }
 YIELD_MISSES = {
     "4140 25 mm": "821 MPa, table 655 +- 90",
-    "1080 25 mm": "407 MPa, table 524 +- 90",
+    "4140 100 mm": "384 MPa, table 485 +- 90",
 }
 
 

@@ -107,15 +107,15 @@ def test_beyond_the_test_piece_there_is_no_equivalent() -> None:
 def core(diameter_mm: float, medium: str, bath: float) -> float:
     """Equivalent distance [1/16 in] of the middle of a round of 4140."""
     case = Case(
-        "round",
-        SteelInput(grade("4140"), 7.0),
-        SectionInput("round", diameter=1e-3 * diameter_mm),
-        (
+        title="round",
+        steel=SteelInput(grade("4140"), 7.0),
+        section=SectionInput("round", diameter=1e-3 * diameter_mm),
+        route=(
             Stage("soak", at=1118.15, time=3600.0),
             Stage("quench", time=3000.0, medium=MediumUse(medium, bath=bath)),
         ),
-        Outputs((position("core"),)),
-        Grid((32,), 2.0),
+        outputs=Outputs((position("core"),)),
+        grid=Grid((32,), 2.0),
     )
     (place,) = run(case).positions
     return float(distance_of(np.array(place.time_800_500_s), quenched("4140"))) / SIXTEENTH_MM
