@@ -3,8 +3,9 @@
 ``python tests/published/measure_uncertainty.py`` after every change of a model, with a
 line in the changelog. Readings: every row of ``bars.csv`` and ``mass_effect.csv`` (the
 value itself), of ``end_quench_bands.csv`` and ``more_bands.csv`` (the middle of the band,
-which the aim composition need not meet: the scatter of the heats is in the figure). Rockwell C where value and result
-have one; in percent of the result's HV for every hardness; likewise tensile strength.
+which the aim composition need not meet: the scatter of the heats is in the figure).
+Rockwell C where value and result have one; in percent of the result's HV for every
+hardness; likewise tensile strength.
 Yield strength: every row of ``normalised_yield.csv``. Tempered: every row of
 ``tempered_bars.csv``. Where a row's source states none, the time is two hours, the bar
 that of a tensile piece (25 mm) and the route that of ``bars.csv``.
@@ -76,7 +77,7 @@ def errors() -> dict[Key, list[float]]:
             continue
         if row["unit"] == "HRC" and place.hardness_hrc is not None:
             found[kind, "hardness", "HRC", BARS].append(place.hardness_hrc - value)
-        hv = float(hrc_to_hv(value) if row["unit"] == "HRC" else hb_to_hv(value))
+        hv = _vickers(value) if row["unit"] == "HRC" else float(hb_to_hv(value))
         found[kind, "hardness", "%", BARS].append(_percent(place.hardness_hv, hv))
     for row in [*endquench.rows("end_quench_bands"), *endquench.rows("more_bands")]:
         if row["low"] == row["high"] or "reading" in row["band"]:
@@ -151,6 +152,11 @@ def _tempered(row: dict[str, str]) -> Result:
 def _percent(ours: float, read: float) -> float:
     """How far the result is above the reading, in percent of the result."""
     return 100.0 * (1.0 - read / ours)
+
+
+def _vickers(hrc: float) -> float:
+    """The inverse of `rockwell`."""
+    return float(hrc_to_hv(hrc)) if hrc >= 20.0 else 238.0 - 4.0 * (20.0 - hrc)
 
 
 def rockwell(hv: float) -> float:
