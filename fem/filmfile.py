@@ -30,6 +30,7 @@ _KELVIN_SUSPECT_DEGC = 250.0
 _KILOWATT_SUSPECT_HTC = 20.0
 _RADIATION_COUNTS_DEGC = 400.0
 _HEADS = "surface_degC, htc_W_per_m2K"
+MEASURED = "# Measured film: "  # how the first line of a film from a probe begins
 
 
 def read_curve(path: Path) -> tuple[Array, Array]:
@@ -69,6 +70,18 @@ def read_curve(path: Path) -> tuple[Array, Array]:
     _check_order(path, lines, surface)
     _check_units(path, heads.lower(), surface, htc)
     return surface, htc
+
+
+def provenance(path: Path) -> str:
+    """What the first line says of where a film was measured; empty without such a line.
+
+    Raises
+    ------
+    InputFault
+        Not a file of text.
+    """
+    first = _text(path).partition("\n")[0].strip()
+    return first.removeprefix(MEASURED) if first.startswith(MEASURED) else ""
 
 
 def _text(path: Path) -> str:

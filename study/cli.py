@@ -20,6 +20,7 @@ from midradius.study.cli_diagram import diagram
 from midradius.study.cli_endquench import endquench
 from midradius.study.cli_lever import lever
 from midradius.study.cli_mesh import mesh
+from midradius.study.cli_probe import probe
 from midradius.study.cli_sources import described, sources, used_lines
 from midradius.study.cli_steels import steels
 from midradius.study.cli_tank import tank
@@ -99,6 +100,7 @@ cli.add_command(diagram)
 cli.add_command(endquench)
 cli.add_command(lever)
 cli.add_command(mesh)
+cli.add_command(probe)
 cli.add_command(sources)
 cli.add_command(steels)
 cli.add_command(tank)

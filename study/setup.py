@@ -7,6 +7,7 @@ from itertools import combinations
 from midradius.fem import section as forms
 from midradius.fem.convection import Geometry
 from midradius.fem.cutting import AnySection
+from midradius.fem.filmfile import provenance
 from midradius.fem.media import ZERO_DEGC, medium
 from midradius.fem.meshsection import MeshSection
 from midradius.fem.route import CoolingStage, Surface
@@ -174,7 +175,8 @@ def _surface(
             raise InputFault(
                 "bath", "missing", "given beside a film curve", 'Write bath = "60 degC".'
             )
-        own = Source("film curve", use.film_file.name, "the user's own", "read")
+        told = provenance(use.film_file) or "the user's own"
+        own = Source("film curve", use.film_file.name, told, "read")
         return Surface(f'film "{use.film_file.name}"', curve, use.bath), [], [own], ()
     found = medium(use.name or "")
     bath = use.bath if use.bath is not None else found.bath_default
