@@ -186,8 +186,18 @@ class PositionInput:
 
 
 @dataclass(frozen=True)
+class PathInput:
+    """A straight path across the section, from ``start`` to ``end`` [m], ``n_point`` even steps."""
+
+    name: str
+    start: tuple[float, ...]
+    end: tuple[float, ...]
+    n_point: int = 41
+
+
+@dataclass(frozen=True)
 class Outputs:
-    """What is written: positions, and field times or else their number.
+    """What is written: positions, paths, and field times or else their number.
 
     ``field_times`` [s] count from the end of the soak.
     """
@@ -195,6 +205,7 @@ class Outputs:
     positions: tuple[PositionInput, ...]
     field_times: tuple[float, ...] = ()
     n_field: int = 24
+    paths: tuple[PathInput, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -6,6 +6,7 @@ reads back as the same case.
 
 import re
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 
 from . import casekeys as keys
@@ -16,6 +17,7 @@ from .caselines import locate
 from .casemesh import zones_named
 from .caseneed import needs
 from .caseoutput import outputs
+from .casepath import paths
 from .caseroute import route, soak_and_tempers
 from .casetable import Table, is_line
 from .casetank import tank_blocks
@@ -109,7 +111,8 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
         top.missing("section", "given as a table [section]")
     section_table = top.table("section", "[section]")
     section = section_input(section_table, zones_named(top)) if section_table else None
-    wanted = outputs(top.table("output", "[output]"), section)
+    output = top.table("output", "[output]")
+    wanted = replace(outputs(output, section), paths=paths(output, section))
     stages = route(top, steel, section, wanted)
     asked = needs(top, section, wanted)
     cells = grid(top.table("grid", "[grid]"), section)

@@ -197,6 +197,12 @@ def _need(need: Need) -> list[str]:
 def _outputs(outputs: Outputs) -> list[str]:
     places = ", ".join(_place(place) for place in outputs.positions)
     lines = [f"positions = [{places}]"]
+    for path in outputs.paths:
+        start, end = (f"[{', '.join(_length(x) for x in at)}]" for at in (path.start, path.end))
+        written = f"name = {_quoted(path.name)}, from = {start}, to = {end}"
+        lines.append(f"  {{ {written}, points = {path.n_point} }},")
+    if outputs.paths:
+        lines[1:] = ["paths = [", *lines[1:], "]"]
     if outputs.field_times:
         times = ", ".join(f'"{show(time, "duration")}"' for time in outputs.field_times)
         return [*lines, f"times = [{times}]"]

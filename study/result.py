@@ -96,7 +96,7 @@ class Position:
 
 @dataclass(frozen=True)
 class Profile:
-    """Surface to core along the drawing's line, (n_point,) each.
+    """Surface to core along the drawing's line, or a path; (n_point,) each.
 
     On a mesh its points lie between nodes: ``node`` and ``share`` are (n_point, k).
     """
@@ -258,6 +258,7 @@ class Result:
     n_step: int
     n_node: int
     heating: HeatingRecord | None = None
+    paths: tuple[Profile, ...] = ()
     verdicts: tuple[Verdict, ...] = ()
     notes: tuple[RangeNote, ...] = ()
     sources: tuple[Source, ...] = ()

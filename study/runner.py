@@ -14,7 +14,7 @@ from midradius.fem.route import History, cool
 from midradius.fem.section import Section
 from midradius.study.basis import inputs_of, notes_of, sources_of
 from midradius.study.begin import Begun, begin
-from midradius.study.case import Case
+from midradius.study.case import Case, PathInput
 from midradius.study.findings import critical_degC, fields, here, position
 from midradius.study.meshrun import first_level, mesh_notes, mesh_statements, with_grid
 from midradius.study.needs import judge
@@ -250,6 +250,7 @@ def _result(
         history_temp_degC=history.watch_temp - ZERO_DEGC,
         positions=positions,
         profile=Profile(line.depth * 1e3, line.node, line.label, line.share),
+        paths=tuple(_along(cut, path) for path in case.outputs.paths),
         stages=tuple(
             stage_record(stage, went, factor, "below")
             for stage, went in zip(setup.stages, history.stages, strict=True)
@@ -302,4 +303,17 @@ def _position(
         grid_error_hv=(
             GRID_FACTOR * abs(hv - hv_rough) if rough.cut is not main.cut else float("nan")
         ),
+    )
+
+
+def _along(cut: AnyCut, path: PathInput) -> Profile:
+    """A path of the case: distance from its start, nodes and shares."""
+    part = np.linspace(0.0, 1.0, path.n_point)
+    start, end = np.array(path.start), np.array(path.end)
+    places = [cut.place(tuple(float(x) for x in start + p * (end - start))) for p in part]
+    return Profile(
+        depth_mm=1e3 * float(np.linalg.norm(end - start)) * part,
+        node=np.array([place.node for place in places]),
+        label=path.name,
+        share=np.array([place.share for place in places]),
     )

@@ -17,6 +17,7 @@ from midradius.thermo.units import Kind, example, pattern, show
 from . import casekeys as keys
 from . import seriescase as series
 from .case import TRADE_TERMS, ZONES
+from .schemamesh import mesh_section, paths_of
 from .tankschema import blocks
 
 Schema = dict[str, Any]
@@ -125,7 +126,7 @@ def _section() -> Schema:
         "type": "object",
         "properties": {"form": {"enum": [*keys.DIMENSIONS, "mesh"]}},
         "required": ["form"],
-        "oneOf": [*forms, _mesh(emissivity)],
+        "oneOf": [*forms, mesh_section(emissivity)],
     }
 
 
@@ -156,28 +157,6 @@ def _temperatures() -> Schema:
             ),
         },
         ("file",),
-    )
-
-
-def _mesh(emissivity: Schema) -> Schema:
-    return _table(
-        {
-            "form": {"const": "mesh"},
-            "file": {"type": "string", "description": "A mesh file, its path from this file."},
-            "length_unit": {"enum": list(keys.LENGTH_UNITS)},
-            "sense": {
-                "enum": ["plane", "axisymmetric", "solid"],
-                "description": "A long bar, a body of revolution about x = 0, or the whole part.",
-            },
-            "symmetry": {
-                "type": "array",
-                "items": {"type": "string"},
-                "description": "Groups and planes that no heat passes.",
-                "examples": [["cut face", "x = 0"]],
-            },
-            "emissivity": emissivity,
-        },
-        ("form", "file", "length_unit", "sense"),
     )
 
 
@@ -308,6 +287,7 @@ def _output() -> Schema:
                 "minItems": 1,
                 "maxItems": keys.PLACES_MOST,
             },
+            "paths": paths_of(depth),
             "fields": {"type": "integer", "minimum": low, "maximum": high},
             "times": {
                 "type": "array",

@@ -12,7 +12,8 @@ from pathlib import Path
 
 import numpy as np
 
-from midradius.study.result import Result, Verdict
+from midradius.study.result import Profile, Result, Verdict
+from midradius.thermo.arrays import Array
 from midradius.thermo.conversion import hv_to_hb, hv_to_hrc, hv_to_uts
 from midradius.thermo.phases import PHASE_NAMES
 
@@ -20,6 +21,7 @@ HISTORIES = "histories.csv"
 PROFILE = "profile.csv"
 POSITIONS = "positions.csv"
 NEEDS = "needs.csv"
+PATHS = "paths.csv"
 HEATING = "heating.csv"
 
 _HARDNESS = [
@@ -41,13 +43,15 @@ def write_tables(result: Result, folder: Path) -> tuple[Path, ...]:
 
     ``needs.csv`` is written only where the case asks for something, ``heating.csv`` only
     where the part was heated from cold, ``profile.csv`` only where there is a line from
-    surface to core.
+    surface to core, ``paths.csv`` only where the case asks for paths.
     """
     tables = {HISTORIES: _histories, PROFILE: _profile, POSITIONS: _positions}
     if not len(result.profile.node):  # a file of temperatures may have none
         del tables[PROFILE]
     if result.verdicts:
         tables[NEEDS] = _needs
+    if result.paths:
+        tables[PATHS] = _paths
     if result.heating is not None:
         tables[HEATING] = _heating
     return tuple(_write(folder / name, rows(result)) for name, rows in tables.items())
@@ -67,10 +71,35 @@ def _heating(result: Result) -> Iterable[Sequence[object]]:
 
 
 def _profile(result: Result) -> Iterable[Sequence[object]]:
-    on = result.profile.of
+    columns = _columns(result, result.profile)
+    yield ["depth_mm", *columns]
+    for row in np.column_stack([result.profile.depth_mm, *columns.values()]):
+        yield [float(value) for value in row]
+
+
+def _paths(result: Result) -> Iterable[Sequence[object]]:
+    for k, path in enumerate(result.paths):
+        columns = _columns(result, path)
+        places = path.of(result.points_mm.T)
+        if k == 0:
+            axes = [f"{name}_mm" for name in _AXES[result.sense][: len(places)]]
+            yield ["path", "distance_mm", *axes, *columns]
+        for row in np.column_stack([path.depth_mm, *places, *columns.values()]):
+            yield [path.label, *(float(value) for value in row)]
+
+
+_AXES = {
+    **dict.fromkeys(("cylinder", "ball"), ("r",)),
+    **dict.fromkeys(("slab", "plane", "solid"), ("x", "y", "z")),
+    "axisymmetric": ("r", "z"),
+}
+
+
+def _columns(result: Result, line: Profile) -> dict[str, Array]:
+    """The end of the run along a line, by heading."""
+    on = line.of
     hardness = on(result.hardness_hv)
-    columns = [
-        result.profile.depth_mm,
+    values = [
         *on(result.phases),
         hardness,
         hv_to_hrc(hardness),
@@ -92,8 +121,7 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         on(result.soaked.grain_astm),
         on(result.soaked.grain_um),
     ]
-    yield [
-        "depth_mm",
+    heads = [
         *(f"{name}_fraction" for name in PHASE_NAMES),
         *_HARDNESS,
         *_AFTER_HARDNESS,
@@ -101,8 +129,7 @@ def _profile(result: Result) -> Iterable[Sequence[object]]:
         _TRANSITION,
         *_SOAK,
     ]
-    for row in np.column_stack(columns):
-        yield [float(value) for value in row]
+    return dict(zip(heads, values, strict=True))
 
 
 def _positions(result: Result) -> Iterable[Sequence[object]]:

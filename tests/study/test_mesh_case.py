@@ -35,6 +35,7 @@ time = "4 min"
 {faces}
 [output]
 fields = 4
+paths = [{{ name = "across", from = {at}, to = {end}, points = 9 }}]
 positions = ["surface", "core", {{ name = "here", at = {at} }}]
 [grid]
 accuracy = "5 K"
@@ -42,7 +43,8 @@ accuracy = "5 K"
 
 
 def case_of(folder: Path, file: str, sense: str, at: str, more: str = "", faces: str = "") -> Case:
-    text = CASE.format(file=file, sense=sense, at=at, more=more, faces=faces)
+    end = '["30 mm", "30 mm", "10 mm"]' if sense == "solid" else '["30 mm", "30 mm"]'
+    text = CASE.format(file=file, sense=sense, at=at, more=more, faces=faces, end=end)
     path = folder / "case.toml"
     path.write_text(text)
     return casefile.read(path)
@@ -130,7 +132,8 @@ def test_the_record_keeps_the_files_arrays_and_the_cells(solved) -> None:
 def test_a_mesh_and_a_bar_of_the_same_size_get_the_same_answer(solved, tmp_path: Path) -> None:
     _, result, _ = solved
     # all four faces alike: the bar folds itself, the mesh does not
-    text = CASE.format(file="", sense="", at='["48 mm", "12 mm"]', more="", faces="")
+    at = '["48 mm", "12 mm"]'
+    text = CASE.format(file="", sense="", at=at, end='["30 mm", "30 mm"]', more="", faces="")
     start = text.index("form =")
     end = text.index("[[route]]")
     bar = text[:start] + 'form = "bar"\nwidth = "80 mm"\nheight = "60 mm"\n' + text[end:]
@@ -152,6 +155,22 @@ def test_the_result_states_what_was_done_to_the_mesh(solved) -> None:
     assert "the core is the deepest point" in text
     assert result.heat_balance_relative < 1e-6
     assert np.isfinite(result.grid_error_K)
+
+
+def test_a_path_runs_from_point_to_point_in_a_table(solved) -> None:
+    import csv
+
+    folder, result, _ = solved
+    with (folder / "out" / "paths.csv").open(encoding="utf-8", newline="") as file:
+        rows = list(csv.DictReader(file))
+    assert [row["path"] for row in rows] == ["across"] * 9
+    assert_allclose(
+        [float(row["x_mm"]) for row in rows], np.linspace(48.0, 30.0, 9), rtol=1e-9, atol=0.0
+    )
+    length = float(np.hypot(18.0, 18.0))
+    assert_allclose(float(rows[-1]["distance_mm"]), length, rtol=1e-8, atol=0.0)
+    here = next(p for p in result.positions if p.name == "here")
+    assert_allclose(float(rows[0]["hardness_HV"]), here.hardness_hv, rtol=1e-8, atol=0.0)
 
 
 def test_a_zone_of_the_mesh_sees_its_own_medium(tmp_path: Path) -> None:
