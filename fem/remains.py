@@ -22,6 +22,7 @@ from midradius.thermo.kinetics import (
     CARBON_MARTENSITE,
     PEARLITE,
     PEARLITE_HEAT,
+    SELF_TEMPER,
     Tables,
     advance,
 )
@@ -35,7 +36,8 @@ ROOM_TEMP = 293.15  # K
 class Remains:
     """Of every node: ``phases`` (n_phase, n_node) at room temperature;
     ``carbon_austenite_pct``, ``carbon_martensite_pct``, ``pearlite_temp`` [K],
-    ``time_800_500`` [s], ``rate_700`` [K/s], (n_node,) each and nan where there is none.
+    ``time_800_500`` [s], ``rate_700`` [K/s], ``self_temper`` [s], (n_node,) each and nan
+    where there is none; the last is the time of `thermo.autotemper`.
     """
 
     phases: Array
@@ -44,6 +46,7 @@ class Remains:
     pearlite_temp: Array
     time_800_500: Array
     rate_700: Array
+    self_temper: Array
 
 
 @kernel
@@ -88,4 +91,7 @@ def remains(states: Array, temp: Array, scales: Array, marks: Array, tables: Tab
         ),
         time_800_500=np.where(both, marks[:, 2] - marks[:, 0], np.nan),
         rate_700=np.where(marked[:, 1], marks[:, 3], np.nan),
+        self_temper=np.where(
+            hard, states[:, SELF_TEMPER] / np.where(hard, martensite, 1.0), np.nan
+        ),
     )

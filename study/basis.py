@@ -13,6 +13,7 @@ from midradius.study.steelfile import source_of
 from midradius.study.worth import Worth
 from midradius.thermo import austenite as soaking
 from midradius.thermo import (
+    autotemper,
     calibration,
     conversion,
     embrittlement,
@@ -114,7 +115,7 @@ def calibration_notes(given: SteelInput, soak: CalibratedSoak) -> tuple[RangeNot
 def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     """The works that a run of the case rests on."""
     found: list[Source] = [source_of(case.steel.steel)]
-    used = [equilibrium, soaking, martensite, properties, hardness, conversion]
+    used = [equilibrium, soaking, martensite, properties, hardness, autotemper, conversion]
     used += [strength, tempering, embrittlement] if case.tempers else [strength]
     composition = case.steel.steel.composition
     rich = equilibrium.equilibrium(composition).eutectoid_carbon_pct < composition.C

@@ -8,7 +8,15 @@ import numpy as np
 from midradius.fem.remains import Remains
 from midradius.study.case import Asked
 from midradius.study.scale import Scales, scales
-from midradius.thermo import embrittlement, equilibrium, hardness, strength, tempering
+from midradius.thermo import (
+    autotemper,
+    embrittlement,
+    equilibrium,
+    hardness,
+    martensite,
+    strength,
+    tempering,
+)
 from midradius.thermo.arrays import Array
 from midradius.thermo.phases import (
     AUSTENITE,
@@ -21,6 +29,8 @@ from midradius.thermo.phases import (
 from midradius.thermo.soaked import OLD_RATE, Soaked
 from midradius.thermo.source import RangeNote
 from midradius.thermo.tempering import Temper, Tempered
+
+LEAST_OFF_HV = 0.5  # of self-tempering that is worth a note
 
 
 @dataclass(frozen=True)
@@ -73,8 +83,12 @@ def worth(case: Asked, soaked: Soaked, history: Remains) -> Worth:
     )
     as_quenched = as_quenched + case.steel.shifts.hardness
     by_phase = by_phase + case.steel.shifts.hardness
+    fresh = by_phase
+    by_phase, as_quenched, told = _self_tempered(case, soaked, history, by_phase, as_quenched)
     tempers = tempers_of(case)
-    left = _tempered(history.phases, by_phase, as_quenched, case, tempers)
+    left = _tempered(history.phases, fresh, as_quenched, case, tempers)
+    if not tempers:
+        left = Tempered(history.phases, by_phase, as_quenched)
     sizes = scales(
         composition,
         history.phases,
@@ -91,11 +105,47 @@ def worth(case: Asked, soaked: Soaked, history: Remains) -> Worth:
         scales=sizes,
         soaked=soaked,
         notes=(
-            *tempering.range_notes(composition, history.phases, by_phase, tempers),
+            *told,
+            *tempering.range_notes(composition, history.phases, fresh, tempers),
             *sizes.notes,
         ),
         cautions=embrittlement.cautions(composition, tempers, ae1=ae1) if tempers else (),
     )
+
+
+def _self_tempered(
+    case: Asked, soaked: Soaked, history: Remains, by_phase: Array, as_quenched: Array
+) -> tuple[Array, Array, tuple[RangeNote, ...]]:
+    """Hardness by phase and of the mixture, less what martensite has tempered itself."""
+    composition = case.steel.steel.composition
+    own, shift = case.steel.kinetics.measured, case.steel.shifts.martensite_start
+    carbon = np.where(
+        np.isnan(history.carbon_martensite_pct), soaked.carbon_pct, history.carbon_martensite_pct
+    )
+    if own is not None and own.martensite_start is not None:
+        shift += own.martensite_start - float(martensite.start(composition, carbon).max())
+    natural = autotemper.natural_time(composition, carbon, history.rate_700, shift)
+    off = autotemper.softening(
+        by_phase[MARTENSITE], composition, time=history.self_temper, natural=natural
+    )
+    most = int(np.argmax(off))
+    softer = by_phase.copy()
+    softer[MARTENSITE] -= off
+    mixed = as_quenched - np.where(off > 0.0, history.phases[MARTENSITE] * off, 0.0)
+    if off[most] < LEAST_OFF_HV:
+        return softer, mixed, ()
+    at, covered = (
+        float(autotemper.equivalent_temp(time[most : most + 1], hold=3600.0)[0]) - 273.15
+        for time in (history.self_temper, autotemper.MARGIN * natural)
+    )
+    note = RangeNote(
+        autotemper.SOURCES[0].model,
+        "what martensite went through, as 1 h",
+        f"{at:.0f} degC",
+        f"{covered:.0f} degC, what the hardness as quenched covers; "
+        f"up to {off[most]:.0f} HV taken off",
+    )
+    return softer, mixed, (note,)
 
 
 def _tempered(

@@ -9,7 +9,15 @@ from typing import Any
 
 import numpy as np
 
-from midradius.thermo import clocks, diffusional, equilibrium, martensite, properties, ratesets
+from midradius.thermo import (
+    autotemper,
+    clocks,
+    diffusional,
+    equilibrium,
+    martensite,
+    properties,
+    ratesets,
+)
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
@@ -81,6 +89,7 @@ def steel_tables(
     value[:, kin.LIMIT_FERRITE] = equilibrium.ferrite_limit(eq, composition.C, temp)
     value[:, kin.LIMIT_CEMENTITE] = equilibrium.cementite_limit(eq, composition.C, temp)
     value[:, kin.CARBON_FERRITE] = eq.ferrite_solubility(temp)
+    value[:, kin.TEMPER_WEIGHT] = autotemper.weight(temp)
     measured = put_rates(value, temp, austenite, shifts, chosen)
     active = (
         (value[:, kin.RATE_FERRITE] * value[:, kin.LIMIT_FERRITE] > 0.0)

@@ -27,9 +27,9 @@ retained austenite and cementite: remembered. Gladman: `thermo.strength`.
 Holds for
 ---------
 0.1 to 0.5 % C, Si < 1, Mn < 2, Ni < 4, Cr < 3, Mo < 1, V < 0.2, Cu < 0.5,
-Mn + Ni + Cr + Mo < 5 mass % (remembered). As cooled: no tempering, and none of
-the self-tempering of martensite that forms above 300 degC, which makes slowly
-cooled low-carbon martensite 20 to 40 HV softer than given here.
+Mn + Ni + Cr + Mo < 5 mass % (remembered). As cooled: no tempering; of
+the self-tempering of martensite what the term in the cooling rate holds, the rest is that
+of `autotemper`.
 """
 
 import numpy as np

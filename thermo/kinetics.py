@@ -34,10 +34,11 @@ from midradius.thermo.compiled import kernel
 
 # Columns of a node's state. Fractions are by mass; carbon is an inventory in
 # mass % of the whole, so the austenite holds STATE_CARBON_AUSTENITE / austenite.
+# SELF_TEMPER is the weighted time [s] that martensite has spent, times its fraction.
 # KIND says which of the austenites of the tables the node became in its soak.
 FERRITE, CEMENTITE, PEARLITE, BAINITE, MARTENSITE = range(5)
-CARBON_AUSTENITE, CARBON_MARTENSITE, COLDEST, PEARLITE_HEAT, KIND = range(5, 10)
-N_STATE = 10
+CARBON_AUSTENITE, CARBON_MARTENSITE, COLDEST, PEARLITE_HEAT, KIND, SELF_TEMPER = range(5, 11)
+N_STATE = 11
 N_SCALE = 4  # factors of a node on the rates of ferrite, pearlite, bainite and cementite
 
 # Columns of the table.
@@ -62,8 +63,9 @@ N_SCALE = 4  # factors of a node on the rates of ferrite, pearlite, bainite and 
     EXPONENT_PEARLITE,
     EXPONENT_BAINITE,
     EXPONENT_CEMENTITE,
-) = range(20)
-N_COLUMN = 20
+    TEMPER_WEIGHT,
+) = range(21)
+N_COLUMN = 21
 AVRAMI = -1  # instead of a row of the clocks: the exponent of the temperature
 
 CEMENTITE_CARBON_PCT = 6.690
@@ -173,6 +175,17 @@ def _at(value: Array, row: int, share: float, column: int) -> float:
 
 
 @kernel
+def _temper(
+    states: Array, node: int, temp: float, span: float, value: Array, tables: Tables
+) -> None:
+    """Count a span of time for the martensite that is there."""
+    grid = (temp - tables.first) / tables.step
+    row = min(max(int(grid), 0), value.shape[0] - 2)
+    steady = _at(value, row, grid - row, TEMPER_WEIGHT)
+    states[node, SELF_TEMPER] += states[node, MARTENSITE] * steady * span
+
+
+@kernel
 def advance(
     states: Array,
     node: int,
@@ -210,11 +223,13 @@ def advance(
     austenite = 1.0
     for i in range(5):
         austenite -= states[node, i]
-    if austenite <= NOTHING_LEFT or not tables.transforms:
-        states[node, COLDEST] = min(states[node, COLDEST], to_temp)
-        return 0.0
     kind = int(states[node, KIND])
     value, start_of, rate_of = tables.value[kind], tables.start[kind], tables.rate[kind]
+    if austenite <= NOTHING_LEFT or not tables.transforms:
+        states[node, COLDEST] = min(states[node, COLDEST], to_temp)
+        if states[node, MARTENSITE] > 0.0:
+            _temper(states, node, 0.5 * (from_temp + to_temp), span, value, tables)
+        return 0.0
     clock, back, pers, shapes = tables.clock, tables.back, tables.per, tables.shape
     last = value.shape[0] - 2
     stride = to_temp - from_temp
@@ -288,17 +303,19 @@ def advance(
                         austenite -= more
             if austenite <= NOTHING_LEFT:
                 states[node, COLDEST] = min(states[node, COLDEST], to_temp)
+                if states[node, MARTENSITE] > 0.0:
+                    _temper(states, node, temp, (n_pass - lap) * part, value, tables)
                 return slope
+        fresh: float = 0.0
         reached = from_temp + (lap + 1.0) / n_pass * stride
-        if reached >= states[node, COLDEST]:
-            continue
-        if reached < start_of[0]:  # carbon only lowers it
+        if reached < states[node, COLDEST] and reached < start_of[0]:  # carbon only lowers it
             carbon = states[node, CARBON_AUSTENITE] / austenite
             start = start_of[0] - start_of[1] * (1.0 - np.exp(-start_of[2] * carbon))
             if reached < start:
                 speed = rate_of[0] - rate_of[1] * (1.0 - np.exp(-rate_of[2] * carbon))
                 under = min(start, states[node, COLDEST]) - reached
                 more = austenite * -np.expm1(-speed * under)
+                fresh = more
                 states[node, MARTENSITE] += more
                 states[node, CARBON_MARTENSITE] += more * carbon
                 states[node, CARBON_AUSTENITE] -= more * carbon
@@ -306,7 +323,10 @@ def advance(
                 if lap == n_pass - 1:
                     h_martensite = value[row, H_MARTENSITE] + carbon * value[row, H_MARTENSITE_C]
                     slope += (h_austenite - h_martensite) * speed * austenite
-        states[node, COLDEST] = reached
+        states[node, COLDEST] = min(states[node, COLDEST], reached)
+        hard = states[node, MARTENSITE] - 0.5 * fresh
+        if hard > 0.0:
+            states[node, SELF_TEMPER] += hard * part * _at(value, row, share, TEMPER_WEIGHT)
     return slope
 
 
