@@ -108,7 +108,6 @@ def test_between_critical_rates_products_are_there_and_beyond_they_are_not() -> 
 
 def test_a_rate_that_is_not_among_those_drawn_is_not_known() -> None:
     assert np.isnan(cooled("1080").critical["ferrite below"])
-    assert np.isnan(cooled("1080").critical["bainite below"])
 
 
 def test_between_six_and_nine_round_rates_are_shown() -> None:
