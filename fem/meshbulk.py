@@ -44,7 +44,7 @@ def read_bulk(text: str, name: str) -> RawMesh:
     cells: dict[str, list[tuple[int, int, list[int]]]] = {}
     left_out: dict[str, int] = {}
     for card in _cards(text, name):
-        word = card[0].upper()
+        word = card[0].upper().rstrip("_")  # as some writers mark ten nodes
         if word == "GRID":
             if _field(card, 2) not in ("", "0"):
                 raise refuse(

@@ -238,3 +238,25 @@ def test_a_case_on_a_mesh_reads_back_as_it_was(tmp_path: Path) -> None:
     again = casefile.loads(casefile.dumps(case), tmp_path / "case.toml")
     assert again == case
     assert again.section.zones == case.section.zones
+
+
+def test_temperatures_beyond_bath_and_start_are_stated_for_obtuse_cells(tmp_path: Path) -> None:
+    from types import SimpleNamespace
+
+    from midradius.study.meshrun import mesh_notes
+    from midradius.study.runner import _first
+    from midradius.study.setup import prepare
+
+    mixed(tmp_path)
+    case = case_of(tmp_path, "mixed.vtu", "plane", '["48 mm", "12 mm"]')
+    setup = prepare(case)
+    cut = _first(case, setup)
+    start = np.full(cut.body.n_node, 1133.15)
+    field = np.full((2, cut.body.n_node), 400.0)
+    field[1, 7] = 330.0  # the oil has 333.15 K
+    history = SimpleNamespace(field=field, times=np.array([0.0, 3.0]))
+    assert mesh_notes(cut, history, setup.stages, start) == ()  # type: ignore[arg-type]
+    obtuse = replace(cut, negative=0.2)  # type: ignore[type-var]
+    (note,) = mesh_notes(obtuse, history, setup.stages, start)  # type: ignore[arg-type]
+    assert note.value == "3.2 K"
+    assert "coldest 56.9 degC at 3 s" in note.allowed
