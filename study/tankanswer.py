@@ -57,7 +57,7 @@ class TankAnswer:
     limits: Limits
     uncertainty_pct: float
     kinds: tuple[LoadKind, ...]
-    own: Given
+    owns: tuple[Given, ...]
     own_bodies: tuple[Body, ...]
     day: Shift
     loads: tuple[LoadInBath, ...]
@@ -80,6 +80,18 @@ class TankAnswer:
     def acceptable(self) -> bool:
         """Whether no check is missed."""
         return tanksafety.acceptable(self.checks)
+
+    @property
+    def own_band(self) -> tuple[tuple[float, float], tuple[float, float]]:
+        """Heat to the bath [J] and its peak [W] of the case's load, each lowest and highest
+        over the film variants."""
+        totals, peaks = [g.total for g in self.owns], [g.peak for g in self.owns]
+        return (min(totals), max(totals)), (min(peaks), max(peaks))
+
+    @property
+    def own(self) -> Given:
+        """The case's load in its first bath, film as given."""
+        return self.owns[0]
 
     @property
     def limit_is_safe(self) -> bool:
@@ -148,7 +160,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
     rows = shift.loads_in(day.steady, day.loads, period)
     nominal = replace_runs(day)
     failure = shift.cooler_failure(tank, nominal, limit=limits.bath)
-    own, core, gap = _own(case, bodies, tank, nominal, bath, given.coupled)
+    owns, core, gap = _own(bodies, tank, nominal, bath, factors, coupled=given.coupled)
     volume = np.ones(len(factors))
     occupied = np.maximum(
         baths.level_volume(tank, day.first, day.loads, volume).max(axis=0),
@@ -199,7 +211,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         limits=limits,
         uncertainty_pct=band,
         kinds=tuple(kinds),
-        own=own,
+        owns=owns,
         own_bodies=bodies,
         day=day,
         loads=rows,
@@ -211,12 +223,14 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         agitation=sizing.agitation(given, fluid),
         core=core,
         checks=checks,
-        rules=sizing.rules(sum(body.mass for body in bodies), own.total, given.volume, fluid, bath),
+        rules=sizing.rules(
+            sum(body.mass for body in bodies), owns[0].total, given.volume, fluid, bath
+        ),
         cautions=tuple(dict.fromkeys([*cautions, *(known.cautions if known else ())])),
         assumptions=(*told, *more, *assumed(case, given)),
         notes=_notes(fluid, day, known, [n for s in setups for n in s.notes]),
         sources=_sources(fluid, [s for x in setups for s in x.sources]),
-        balance=max(gap, own.balance, float(day.steady.balance.max())),
+        balance=max(gap, *(own.balance for own in owns), float(day.steady.balance.max())),
     )
 
 
@@ -252,14 +266,16 @@ def replace_runs(day: Shift) -> Shift:
 
 
 def _own(
-    case: Case,
     bodies: tuple[Body, ...],
     tank: Tank,
     day: Shift,
     bath: float,
+    factors: tuple[float, ...],
+    *,
     coupled: bool,
-) -> tuple[Given, CoreEffect, float]:
-    """The case's own load in its first and its worst bath, and the gap of heats between."""
+) -> tuple[tuple[Given, ...], CoreEffect, float]:
+    """The case's own load in its first bath, by film; its core there and in the worst bath;
+    the gap between the load's heat and the bath's."""
     starts = [
         float(run.start_temp[k, 0])
         for run in (day.first, day.steady)
@@ -269,21 +285,23 @@ def _own(
     first, worst = (starts[0], max(starts)) if starts else (bath, bath)
     solid = sum(body.mass for body in bodies) / DENSITY
 
-    def in_bath(start: float) -> Given:
+    def in_bath(start: float, factor: float = 1.0) -> Given:
         response = response_of(tank, start, solid) if coupled else None
         return solve(
             bodies,
             bath=start if coupled else bath,
             response=response,
+            film_factor=factor,
             longest=STAYS_AT_MOST * plain.stay,
         )
 
     plain = solve(bodies, bath=bath, response=None)
-    one = in_bath(first)
+    owns = tuple(in_bath(first, factor) for factor in factors)
+    one = owns[0]
     run = response_of(tank, first, solid).run(one.time, one.heat)
     gap = abs(float(run.heat["load"][-1, 0]) - one.total) / abs(one.total)
     held, own_bath, hot = (_core_hv(bodies[0], g) for g in (plain, one, in_bath(worst)))
-    return one, CoreEffect(held, own_bath, hot, worst), max(gap, float(run.balance[0]))
+    return owns, CoreEffect(held, own_bath, hot, worst), max(gap, float(run.balance[0]))
 
 
 def _core_hv(body: Body, given: Given) -> float:

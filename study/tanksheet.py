@@ -42,7 +42,7 @@ def write(found: TankAnswer, folder: Path) -> None:
 
 def document(found: TankAnswer) -> dict[str, Any]:
     """The answer as plain Python for JSON; units in the names, None where unknown."""
-    own, core = found.own, found.core
+    own, core, band = found.own, found.core, found.own_band
     low_high = [float(np.min(found.hottest)), float(np.max(found.hottest))]
     mass = sum(body.mass for body in found.own_bodies)
     content = {
@@ -62,6 +62,8 @@ def document(found: TankAnswer) -> dict[str, Any]:
         "heat_left_in_load_MJ": own.left / 1e6,
         "heat_to_air_before_MJ": own.before / 1e6,
         "peak_heat_rate_kW": own.peak / 1e3,
+        "heat_to_bath_film_band_MJ": [q / 1e6 for q in band[0]],
+        "peak_heat_rate_film_band_kW": [q / 1e3 for q in band[1]],
         "time_in_bath_s": own.stay,
         "heat_balance_relative": found.balance,
         "coupling_rounds": own.rounds,

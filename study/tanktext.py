@@ -25,6 +25,11 @@ def lines(found: TankAnswer) -> Iterator[str]:
         f"  heat to the bath {own.total / 1e6:.4g} MJ ({own.total / mass / 1e3:.4g} kJ/kg), "
         f"peak {own.peak / 1e3:.4g} kW, in the bath {own.stay / 60.0:.3g} min"
     )
+    (low, high), (slow, quick) = found.own_band
+    yield (
+        f"  with the film's uncertainty {low / 1e6:.4g} to {high / 1e6:.4g} MJ,"
+        f" peak {slow / 1e3:.4g} to {quick / 1e3:.4g} kW"
+    )
     yield (
         f"  before, to the air {own.before / 1e6:.4g} MJ; still in the load when it leaves "
         f"{own.left / 1e6:.4g} MJ"
@@ -36,10 +41,10 @@ def lines(found: TankAnswer) -> Iterator[str]:
     )
     yield ""
     yield f"Bath, {found.fluid.name}"
-    low, high = float(np.min(found.hottest)), float(np.max(found.hottest))
+    coldest, hottest = float(np.min(found.hottest)), float(np.max(found.hottest))
     yield (
-        f"  hottest {_degC(float(found.hottest[0]))} ({_degC(low)} to {_degC(high)} with the film"
-        f" coefficients {found.uncertainty_pct:.0f} % weaker or stronger)"
+        f"  hottest {_degC(float(found.hottest[0]))} ({_degC(coldest)} to {_degC(hottest)} with the"
+        f" film coefficients {found.uncertainty_pct:.0f} % weaker or stronger)"
     )
     yield from _loads(found)
     if found.day.settled and found.day.days > 1:

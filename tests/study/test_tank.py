@@ -86,6 +86,8 @@ def test_the_document_says_heat_balance_bath_and_verdict(oil: TankAnswer) -> Non
     low, high = said["bath_max_film_band_degC"]
     assert low <= said["bath_max_degC"] <= high
     assert said["sizing"]["least_volume_m3"] < 4.0
+    least, most = said["heat_to_bath_film_band_MJ"]
+    assert least <= said["heat_to_bath_MJ"] <= most
     assert json.dumps(said, allow_nan=False)
 
 
