@@ -38,7 +38,7 @@ def sheets(
     figure = Figure(figsize=(WIDTH_INCH, height), layout=layout, facecolor="white")
     FigureCanvasAgg(figure)
     axes = figure.subplots(rows, 1, sharex=True, squeeze=False)[:, 0]
-    figure.suptitle(_heading(result), fontsize=SIZE + 1.5)
+    figure.suptitle(heading(result), fontsize=SIZE + 1.5)
     for one in axes:
         one.grid(color=GRID, lw=0.6)
         one.set_axisbelow(True)
@@ -46,7 +46,8 @@ def sheets(
     return figure, tuple(axes)
 
 
-def _heading(result: Result) -> str:
+def heading(result: Result) -> str:
+    """Title, steel and section, on two lines of at most 90 letters."""
     parts = [label(result.title), f"{label(result.steel)}, {label(result.section)}"]
     return "\n".join(part if len(part) <= 90 else part[:88] + " …" for part in parts if part)
 
