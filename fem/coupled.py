@@ -14,7 +14,8 @@ from midradius.thermo.errors import SolverFault
 from midradius.thermo.kinetics import COLDEST, N_SCALE, Tables, enthalpy_node
 
 HISTORY_ROWS = 512  # accepted steps between two looks at the outside world
-FIELD_WINDOW = 8  # fields held at a time where a sink takes them
+FIELD_WINDOW = 8  # fields held at least at a time where a sink takes them
+WINDOW_SIZE = 8_000_000  # temperatures held at a time, if that is more fields
 NEVER_MARKED = -1.0
 
 Sink = Callable[[float, Array], None]
@@ -117,7 +118,9 @@ class Run:
         )
         self._history: list[Array] = []
         self._sink = sink
-        held = len(field_times) if sink is None else min(FIELD_WINDOW, len(field_times))
+        held = len(field_times)
+        if sink is not None:
+            held = min(held, max(FIELD_WINDOW, WINDOW_SIZE // n))
         clock = np.zeros(march.N_CLOCK)
         self.progress = Progress(
             clock=clock,

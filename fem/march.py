@@ -129,16 +129,12 @@ def march(
         # Fields kept in a window that is smaller than their number: wait for room, and
         # never step over more of them than the window holds.
         window, row = progress.field.shape[0], int(clock[FIELD_ROW])
-        if row + window <= len(progress.field_moment):
-            free = window - (row - int(clock[FIELD_TAKEN]))
-            reach = clock[TIME] + step * (1.0 + 1e-12)
-            if (
-                row + free < len(progress.field_moment)
-                and progress.field_moment[row + free] <= reach
-            ):
-                if free < window:
-                    return PAUSED
-                step = progress.field_moment[row + window - 1] - clock[TIME]
+        free = window - (row - int(clock[FIELD_TAKEN]))
+        reach = clock[TIME] + step * (1.0 + 1e-12)
+        if row + free < len(progress.field_moment) and progress.field_moment[row + free] <= reach:
+            if free < window:
+                return PAUSED
+            step = progress.field_moment[row + window - 1] - clock[TIME]
         if step < SMALLEST_STEP:
             return GAVE_UP
         before = clock[STEP_BEFORE]

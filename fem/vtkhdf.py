@@ -27,7 +27,7 @@ from typing import Any
 
 import numpy as np
 
-from midradius.fem.fields import UNIT_ENDINGS
+from midradius.fem.fields import NOTHING, POSITION, UNIT_ENDINGS, Given
 from midradius.fem.meshraw import SHAPES
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
@@ -53,6 +53,9 @@ class HdfSeries:
         Pairs of type (a key of `meshraw.SHAPES`) and corner points (n, k).
     rounding
         Step to which the arrays of every time are rounded, None for none.
+    given_point, given_cell
+        Arrays that a mesh file brought, (n_point, ...) and (n_cell, ...) over all blocks:
+        stored once, as ``given NAME``.
 
     Raises
     ------
@@ -67,6 +70,8 @@ class HdfSeries:
         points_mm: Array,
         cells: tuple[tuple[str, IntArray], ...],
         rounding: float | None = ROUNDING,
+        given_point: Given = NOTHING,
+        given_cell: Given = NOTHING,
     ) -> None:
         import h5py
 
@@ -105,7 +110,20 @@ class HdfSeries:
         root.create_dataset("Types", data=types, **packed)
         self._root = root
         self._data = root.create_group("PointData")
-        self._append("position_mm", np.asarray(points_mm, dtype=np.float32), None)
+        self._append(POSITION, np.asarray(points_mm, dtype=np.float32), None)
+        self._still = [POSITION]
+        for name, values in given_point.items():
+            self._data.create_dataset(_given(name), data=values, **HOW)
+            self._still.append(_given(name))
+        self._of_cells: Any = None
+        if given_cell:
+            self._of_cells = root.create_group("CellData")
+        for name, values in given_cell.items():
+            self._of_cells.create_dataset(_given(name), data=values, **HOW)
+
+    def close(self) -> None:
+        """Close the file; only `finish` makes it whole."""
+        self._file.close()
 
     def __enter__(self) -> "HdfSeries":
         return self
@@ -116,7 +134,7 @@ class HdfSeries:
         error: BaseException | None,
         trace: TracebackType | None,
     ) -> None:
-        self._file.close()
+        self.close()
         if kind is not None:
             self.path.unlink(missing_ok=True)
 
@@ -158,7 +176,7 @@ class HdfSeries:
             first = self._append(name, unknown, None) if n_time > 1 else 0
             last = self._append(name, values.astype(np.float32), None)
             self._offsets[name] = [first] * (n_time - 1) + [last]
-        self._offsets["position_mm"] = [0] * n_time
+        self._offsets |= {name: [0] * n_time for name in self._still}
         steps = self._root.create_group("Steps")
         steps.attrs["NSteps"] = np.int64(n_time)
         none = np.zeros(n_time, dtype=np.int64)
@@ -171,6 +189,10 @@ class HdfSeries:
         offsets = steps.create_group("PointDataOffsets")
         for name, starts in self._offsets.items():
             offsets.create_dataset(name, data=np.array(starts, dtype=np.int64))
+        if self._of_cells is not None:
+            cell_offsets = steps.create_group("CellDataOffsets")
+            for name in self._of_cells:
+                cell_offsets.create_dataset(name, data=none)
 
     def _check(self, arrays: Mapping[str, Array]) -> None:
         for name, values in arrays.items():
@@ -200,3 +222,8 @@ class HdfSeries:
         dataset.resize(start + len(values), axis=0)
         dataset[start:] = values
         return int(start)
+
+
+def _given(name: str) -> str:
+    # a slash would open a group
+    return f"given {name}".replace("/", " per ")

@@ -12,16 +12,22 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
+from midradius.fem.drawing import Drawing
 from midradius.fem.fields import write_series
 from midradius.fem.givenfields import write_on_mesh
+from midradius.fem.media import ZERO_DEGC
 from midradius.fem.record import Quantity, provenance, write_record
 from midradius.fem.volumes import EXTENT
+from midradius.fem.vtkhdf import SERIES, HdfSeries
 from midradius.study.result import Result
 from midradius.study.summary import jsonable
 from midradius.thermo import network
+from midradius.thermo.arrays import Array, IntArray
+from midradius.thermo.errors import InputFault
 from midradius.thermo.phases import PHASE_NAMES
 
 RECORD = "record.h5"
+TEMPERATURE = "temperature_degC"
 CODES = "cementite network: " + ", ".join(f"{k} {name}" for k, name in enumerate(network.NAMES))
 _EXTENT: Mapping[str, str] = EXTENT
 
@@ -31,12 +37,41 @@ def write_fields(result: Result, folder: Path) -> Path | None:
 
     Temperatures that came on a mesh leave one file on that mesh; those of thermocouples,
     which have no points, leave none.
+
+    Raises
+    ------
+    InputFault
+        The temperatures over time are not held: they went to a file during the run.
     """
     node = result.view.node
     if result.mesh:
         node = np.arange(result.n_node)
     elif not len(node):
         return None
+    at_end = known_at_end(result, node)
+    if result.mesh:
+        return write_on_mesh(folder, result.mesh, at_end)
+    if not len(result.temp_degC):
+        raise InputFault(
+            "temperatures over time",
+            "not held",
+            "in the result",
+            f"They were written to {SERIES} as they came.",
+        )
+    return write_series(
+        folder,
+        points_mm=result.view.points_mm,
+        cells=result.view.cells,
+        given_point=result.view.point_data,
+        given_cell=result.view.cell_data,
+        times_s=result.times_s,
+        each_time={TEMPERATURE: result.temp_degC[:, node]},
+        at_end=at_end,
+    )
+
+
+def known_at_end(result: Result, node: IntArray) -> dict[str, Array]:
+    """The arrays known at the end, by their names in field files, at solved nodes (n,)."""
     at_end = {
         f"{name}_fraction": values[node]
         for name, values in zip(PHASE_NAMES, result.phases, strict=True)
@@ -67,18 +102,52 @@ def write_fields(result: Result, folder: Path) -> Path | None:
         at_end["cementite_network_code"] = result.cementite_network[node].astype(np.float64)
     if result.resampling:
         at_end["hardness_resampling_error_HV"] = result.resampling.hardness_error_hv[node]
-    if result.mesh:
-        return write_on_mesh(folder, result.mesh, at_end)
-    return write_series(
-        folder,
-        points_mm=result.view.points_mm,
-        cells=result.view.cells,
-        given_point=result.view.point_data,
-        given_cell=result.view.cell_data,
-        times_s=result.times_s,
-        each_time={"temperature_degC": result.temp_degC[:, node]},
-        at_end=at_end,
-    )
+    return at_end
+
+
+class SeriesKeeper:
+    """Takes the fields of a run as they come into one file; it has a life, hence a class.
+
+    Parameters
+    ----------
+    path
+        The file, begun anew by every call of ``begin``.
+    """
+
+    def __init__(self, path: Path) -> None:
+        self._path = path
+        self._series: HdfSeries | None = None
+        self._node: IntArray = np.empty(0, dtype=np.int64)
+
+    def begin(self, view: Drawing) -> "SeriesKeeper":
+        """Start the file for a part as it is drawn."""
+        self.close()
+        self._node = view.node
+        self._series = HdfSeries(
+            self._path,
+            points_mm=view.points * 1e3,
+            cells=view.cells,
+            given_point=view.point_data,
+            given_cell=view.cell_data,
+        )
+        return self
+
+    def add(self, time: float, temp: Array) -> None:
+        """One moment [s] and the temperatures [K] of the solved nodes."""
+        assert self._series is not None, "begun"
+        self._series.add(time, {TEMPERATURE: temp[self._node] - ZERO_DEGC})
+
+    def finish(self, result: Result) -> None:
+        """Add what is known at the end, and close."""
+        assert self._series is not None, "begun"
+        self._series.finish(known_at_end(result, self._node))
+        self.close()
+
+    def close(self) -> None:
+        """Close the file, finished or not."""
+        if self._series is not None:
+            self._series.close()
+            self._series = None
 
 
 def write_result_record(result: Result, folder: Path) -> str:

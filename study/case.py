@@ -199,13 +199,17 @@ class PathInput:
 class Outputs:
     """What is written: positions, paths, and field times or else their number.
 
-    ``field_times`` [s] count from the end of the soak.
+    ``field_times`` [s] count from the end of the soak. ``field_format`` is ``"vtu"`` or
+    ``"vtkhdf"``, which takes the fields as the run goes on; ``pictures`` are the ``"charts"``
+    or the ``"scenes"`` of the part as well.
     """
 
     positions: tuple[PositionInput, ...]
     field_times: tuple[float, ...] = ()
     n_field: int = 24
     paths: tuple[PathInput, ...] = ()
+    field_format: str = "vtu"
+    pictures: str = "charts"
 
 
 @dataclass(frozen=True)

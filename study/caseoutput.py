@@ -52,7 +52,13 @@ def outputs(table: Table | None, section: SectionInput | None) -> Outputs:
     if table.has("fields") and table.has("times"):
         table.fault("times", "left out where fields is given", "Keep one of the two.")
     n_field = table.integer("fields", keys.FIELDS_RANGE)
-    return Outputs(tuple(places) or usual, _field_times(table), n_field or Outputs(()).n_field)
+    return Outputs(
+        tuple(places) or usual,
+        _field_times(table),
+        n_field or Outputs(()).n_field,
+        field_format=table.choice("format", keys.FORMATS) or Outputs(()).field_format,
+        pictures=table.choice("pictures", keys.PICTURES) or Outputs(()).pictures,
+    )
 
 
 def _field_times(table: Table) -> tuple[float, ...]:

@@ -203,6 +203,11 @@ def _outputs(outputs: Outputs) -> list[str]:
         lines.append(f"  {{ {written}, points = {path.n_point} }},")
     if outputs.paths:
         lines[1:] = ["paths = [", *lines[1:], "]"]
+    usual = Outputs(())
+    if outputs.field_format != usual.field_format:
+        lines.append(f'format = "{outputs.field_format}"')
+    if outputs.pictures != usual.pictures:
+        lines.append(f'pictures = "{outputs.pictures}"')
     if outputs.field_times:
         times = ", ".join(f'"{show(time, "duration")}"' for time in outputs.field_times)
         return [*lines, f"times = [{times}]"]

@@ -4,6 +4,7 @@ import contextlib
 import re
 from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
 from importlib import import_module
 from pathlib import Path
 from threading import Thread
@@ -15,6 +16,7 @@ from midradius.study.folder import ResultFolder, shown
 from midradius.thermo.errors import InputFault
 
 if TYPE_CHECKING:
+    from midradius.study.archive import SeriesKeeper
     from midradius.study.case import Case
     from midradius.study.result import Result
     from midradius.study.seriescase import SeriesCase
@@ -54,8 +56,13 @@ def look(case: "Case | SeriesCase") -> None:
         raise CaseFaults((placed(fault, case.text, case.path),)) from fault
 
 
-def solve(case: "AnyCase", *, tell: Tell | None = None) -> "Result":
+def solve(
+    case: "AnyCase", *, tell: Tell | None = None, keeper: "SeriesKeeper | None" = None
+) -> "Result":
     """Solve a case, given as such or as the path of its file, and return the result.
+
+    ``keeper`` takes the fields as they come; a result too large for the memory then
+    holds no temperatures over time.
 
     Raises
     ------
@@ -74,7 +81,7 @@ def solve(case: "AnyCase", *, tell: Tell | None = None) -> "Result":
     try:
         if isinstance(asked, SeriesCase):
             return seriesrun.run(asked, tell=tell)
-        return runner.run(asked, tell=tell)
+        return runner.run(asked, tell=tell, keep=None if keeper is None else keeper.begin)
     except InputFault as fault:
         if not asked.path:
             raise
@@ -111,12 +118,25 @@ def run(case: "AnyCase", folder: Path | str, *, tell: Tell | None = None) -> "Re
     CaseFaults, InputFault, SolverFault
         As `solve` and `write`.
     """
+    from midradius.study.seriescase import SeriesCase
+
     asked = read_any(case) if isinstance(case, Path | str) else case
+    outputs = None if isinstance(asked, SeriesCase) else asked.outputs
     with _written(Path(folder)) as work:
-        with _meanwhile(_load_writers):
-            result = solve(asked, tell=tell)
-        _fill(result, work)
-    return result
+        keeper = None
+        if outputs is not None and outputs.field_format == "vtkhdf":
+            from midradius.fem.vtkhdf import SERIES
+            from midradius.study.archive import SeriesKeeper
+
+            keeper = SeriesKeeper(work / SERIES)
+        with contextlib.ExitStack() as last, _meanwhile(_load_writers):
+            if keeper is not None:
+                last.callback(keeper.close)
+            result = solve(asked, tell=tell, keeper=keeper)
+            if keeper is not None:
+                keeper.finish(result)
+        scenes = outputs is not None and outputs.pictures == "scenes"
+        return _fill(result, work, fields=keeper is None, scenes=scenes)
 
 
 @contextlib.contextmanager
@@ -150,17 +170,27 @@ def _load_writers() -> None:
             import_module(name)
 
 
-def _fill(result: "Result", work: Path) -> None:
+def _fill(result: "Result", work: Path, *, fields: bool = True, scenes: bool = False) -> "Result":
+    """Write all files; the result, with a sentence where the part could not be drawn."""
     from midradius.study.archive import write_fields, write_result_record
     from midradius.study.pictures import write_pictures
     from midradius.study.tables import write_tables
 
     # Field files are zlib, which leaves the interpreter free for the pictures.
     with ThreadPoolExecutor(max_workers=1) as beside:
-        fields = beside.submit(write_fields, result, work)
+        written = beside.submit(write_fields, result, work) if fields else None
         write_pictures(result, work)
         write_tables(result, work)
-        fields.result()
+        if written is not None:
+            written.result()
+    # A solid has no flat section to draw, so that its scenes are always drawn.
+    if (scenes or result.sense == "solid") and len(result.view.node):
+        from midradius.study.scene import write_scenes
+
+        failure = write_scenes(result, work)
+        if failure:
+            result = replace(result, assumptions=(*result.assumptions, failure))
     write_result_record(result, work)
     if result.case_text:
         (work / "case.toml").write_text(result.case_text, encoding="utf-8")
+    return result

@@ -215,7 +215,8 @@ class Result:
     (n_phase, n_node) after all tempers, other fields (n_node,), ``history_times_s`` (n_step,),
     ``history_temp_degC`` (n_step, n_position). ``cementite_film_um`` is nan and
     ``cementite_network``, a code of `thermo.network.NAMES`, is 0 for a steel that is not
-    hypereutectoid.
+    hypereutectoid. ``temp_degC`` has no rows where a large run wrote them to a file as
+    they came.
     """
 
     title: str

@@ -8,6 +8,7 @@ import numpy as np
 
 from midradius.fem import section as forms
 from midradius.fem.cutting import AnyCut
+from midradius.fem.drawing import Drawing
 from midradius.fem.media import ZERO_DEGC
 from midradius.fem.place import Place
 from midradius.fem.route import History, cool
@@ -15,6 +16,7 @@ from midradius.fem.section import Section
 from midradius.study.basis import inputs_of, notes_of, sources_of
 from midradius.study.begin import Begun, begin
 from midradius.study.case import Case, PathInput
+from midradius.study.fieldsink import FieldSink, Keeper, compared_moments
 from midradius.study.findings import critical_degC, fields, here, position
 from midradius.study.meshrun import first_level, mesh_notes, mesh_statements, with_grid
 from midradius.study.needs import judge
@@ -54,6 +56,7 @@ N_ERROR_TIMES = 200  # moments at which the errors are measured, stored or not
 SHORTEST_FIELD = 1.0  # s, the first field time after the start
 
 Tell = Callable[[float, float], None]
+Keep = Callable[[Drawing], Keeper]
 
 
 @dataclass(frozen=True)
@@ -74,6 +77,7 @@ def _march(
     times: Array,
     tolerance: float,
     tell: Callable[[float], None] | None = None,
+    sink: FieldSink | None = None,
 ) -> _Attempt:
     watched = tuple(case.watched)
     begun = begin(case, setup.furnace, cut, places=places, watched=watched, tolerance=tolerance)
@@ -92,11 +96,12 @@ def _march(
         tell=tell,
         scale=begun.scale,
         first_number=len(case.heating) + 1,
+        sink=sink,
     )
     return _Attempt(cut, begun, history, worth(case, begun.soaked, history))
 
 
-def run(case: Case, *, tell: Tell | None = None) -> Result:
+def run(case: Case, *, tell: Tell | None = None, keep: Keep | None = None) -> Result:
     """Solve a case.
 
     Parameters
@@ -105,6 +110,9 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
         From :func:`midradius.study.casefile.read`, or made in Python.
     tell
         Called with the simulated time [s] and the expected end [s] now and then.
+    keep
+        Opens what takes the asked fields as they come, from the drawing of the part; it
+        is called anew when the run is repeated on a finer grid.
 
     Returns
     -------
@@ -131,40 +139,69 @@ def run(case: Case, *, tell: Tell | None = None) -> Result:
             coarse, places=at_coarse, times=np.zeros(1), tolerance=4.0 * tolerance
         ).history
         asked = _field_times(case, scout)
-        times = np.union1d(asked, _spread(scout, N_ERROR_TIMES))
+        n_node = fine.body.n_node
+        times = np.union1d(asked, _spread(scout, compared_moments(N_ERROR_TIMES, n_node)))
         end = float(scout.step_times[-1])
+        below_fields = FieldSink(hold=True)
+        if below is not None:
+            rough = march(
+                coarse, places=at_coarse, times=times, tolerance=tolerance, sink=below_fields
+            )
+        # In one dimension the finer grid is cheap enough to tell its own time error.
+        itself = dim == 1 or below is None
+        fields = FieldSink(
+            asked,
+            keeper=None if keep is None else keep(fine.drawing()),
+            hold=itself,
+            against=None if below is None else below_fields.held,
+            share=fine.shared,
+        )
         main = march(
             fine,
             places=at_fine,
             times=times,
             tolerance=tolerance,
             tell=None if tell is None else lambda now, end=end: tell(now, end),  # type: ignore[misc]
+            sink=fields,
         )
         if below is None:
             rough, grid_error = main, float("nan")
             break
-        rough = march(coarse, places=at_coarse, times=times, tolerance=tolerance)
-        both = fine.shared(main.history.field)
-        grid_error = GRID_FACTOR * float(
-            np.abs(both - rough.history.field[:, : both.shape[1]]).max()
-        )
+        grid_error = GRID_FACTOR * fields.worst
         good = grid_error <= REFINE_ABOVE[dim] * case.grid.accuracy
         finer = fine.finer(setup.strongest_film, MOST_NODES[dim])
         if case.grid.cells or good or finer is None:
             break
         fine = finer
-    sharp = march(coarse, places=at_coarse, times=times, tolerance=TIGHTER * tolerance)
-    # In one dimension the finer grid is cheap enough to tell its own time error.
-    loose, tight = (rough, sharp)
-    if dim == 1:
-        loose = main
-        tight = march(fine, places=at_fine, times=times, tolerance=TIGHTER * tolerance)
-    time_error = TIME_FACTOR * float(np.abs(tight.history.field - loose.history.field).max())
-    kept = np.isin(times, asked)
-    shown = replace(
-        main, history=replace(main.history, times=asked, field=main.history.field[kept])
+    gap = FieldSink(against=fields.held if itself else below_fields.held)
+    line = itself and below is not None  # the coarser run then measures no time error
+    sharp = march(
+        coarse,
+        places=at_coarse,
+        times=times,
+        tolerance=TIGHTER * tolerance,
+        sink=FieldSink() if line else gap,
     )
-    return _result(case, setup, shown, rough, sharp, at_fine, at_coarse, time_error, grid_error)
+    if line:
+        march(fine, places=at_fine, times=times, tolerance=TIGHTER * tolerance, sink=gap)
+    time_error = TIME_FACTOR * gap.worst
+    held = fields.wanted
+    none = np.empty((0, main.cut.body.n_node))
+    shown = replace(
+        main, history=replace(main.history, times=asked, field=none if held is None else held)
+    )
+    return _result(
+        case,
+        setup,
+        shown,
+        rough,
+        sharp,
+        at_fine,
+        at_coarse,
+        time_error,
+        grid_error,
+        replace(main.history, times=asked, field=fields.extremes),
+    )
 
 
 def _even(cells: tuple[int, ...]) -> tuple[int, ...]:
@@ -224,6 +261,7 @@ def _result(
     at_coarse: Mapping[str, Place],
     time_error: float,
     grid_error: float,
+    bounds: History,  # with the extremes of each field only
 ) -> Result:
     composition = case.steel.steel.composition
     history, cut = main.history, main.cut
@@ -270,10 +308,8 @@ def _result(
             judge(case, (main, at_fine), (rough, at_coarse), (sharp, at_coarse), FACTORS),
             measured=bool(np.isfinite(grid_error)),
         ),
-        notes=notes_of(
-            case, setup.notes, history, main.worth, seen=history.field, last=history.temp
-        )
-        + mesh_notes(cut, history, setup.stages, main.begun.temp),
+        notes=notes_of(case, setup.notes, history, main.worth, seen=bounds.field, last=history.temp)
+        + mesh_notes(cut, bounds, setup.stages, main.begun.temp),
         sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
         + mesh_statements(cut)

@@ -289,6 +289,14 @@ def _output() -> Schema:
             },
             "paths": paths_of(depth),
             "fields": {"type": "integer", "minimum": low, "maximum": high},
+            "format": {
+                "enum": list(keys.FORMATS),
+                "description": "vtkhdf takes large fields while the run goes on.",
+            },
+            "pictures": {
+                "enum": list(keys.PICTURES),
+                "description": "scenes adds pictures of the part itself.",
+            },
             "times": {
                 "type": "array",
                 "items": times,

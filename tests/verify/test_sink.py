@@ -9,6 +9,7 @@ import pytest
 from numpy.testing import assert_allclose
 from trial import Face, around, constant, start
 
+from midradius.fem import coupled
 from midradius.fem.coupled import FIELD_WINDOW
 from midradius.fem.grids import axis, line
 from midradius.thermo.arrays import Array
@@ -23,6 +24,14 @@ FACE = around(Face(HTC, BATH))
 SPARSE = np.array([0.0, 10.0, 33.0, 100.0, 222.2, 400.0, 500.0])
 # many more than a window in one step, and a few after the end
 DENSE = np.concatenate([[0.0], np.linspace(50.0, 51.0, 100), np.linspace(390.0, 450.0, 61)])
+# some pending when the last ones come, fewer than a window
+LATE = np.concatenate([np.linspace(0.0, 380.0, 60), np.linspace(381.0, 400.0, 7)])
+
+
+@pytest.fixture(autouse=True)
+def narrow(monkeypatch: pytest.MonkeyPatch) -> None:
+    """As narrow a window as that of a million nodes."""
+    monkeypatch.setattr(coupled, "WINDOW_SIZE", 0)
 
 
 def taken(moments: Array, tolerance: float) -> tuple[Array, Array]:
@@ -42,7 +51,7 @@ def taken(moments: Array, tolerance: float) -> tuple[Array, Array]:
     return np.array([time for time, _ in seen]), np.array([field for _, field in seen])
 
 
-@pytest.mark.parametrize("moments", [SPARSE, DENSE])
+@pytest.mark.parametrize("moments", [SPARSE, DENSE, LATE])
 @pytest.mark.parametrize("tolerance", [1.0, 0.01])
 def test_a_sink_gets_every_moment_once_and_in_order(moments: Array, tolerance: float) -> None:
     times, fields = taken(moments, tolerance)
