@@ -1,4 +1,4 @@
-"""Samples of a VTKHDF file: an unstructured grid whose mesh stands once, with steps.
+"""Samples of a VTKHDF file: an unstructured grid with steps, its mesh once or at every step.
 
 Source
 ------
@@ -6,6 +6,7 @@ VTK file formats, VTKHDF 2 (kitware, public documentation; layout as written by 
 library and by ourselves, read in its tests).
 """
 
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -25,6 +26,18 @@ _ORDER: dict[int, tuple[str, list[int]]] = {
     _VOXEL: ("hexahedron", [0, 1, 3, 2, 4, 5, 7, 6]),
 }
 GROUP = "VTKHDF"
+
+
+@dataclass(frozen=True)
+class _Place:
+    """Where a step begins in the long datasets, and how much of them it takes."""
+
+    part: int
+    point: int
+    cell: int
+    corner: int
+    n_point: int
+    n_cell: int
 
 
 class VtkhdfSeries:
@@ -55,12 +68,6 @@ class VtkhdfSeries:
         steps = group["Steps"]
         if int(np.max(steps["NumberOfParts"][()])) != 1:
             raise self._fault("one part for each time", "Merge the parts.")
-        offsets = steps["PointOffsets"][()].ravel()
-        if np.any(offsets != offsets[0]):
-            raise self._fault(
-                "a series on one mesh",
-                "Its times have meshes of their own: a mesh that moves has no histories.",
-            )
         return file
 
     def _fault(self, allowed: str, remedy: str) -> InputFault:
@@ -83,35 +90,69 @@ class VtkhdfSeries:
 
     def values(self, step: int, array: str) -> NDArray[Any]:
         def read() -> NDArray[Any]:
-            group = self._file[GROUP]
-            start = int(group[f"Steps/PointDataOffsets/{array}"][step])
-            count = int(group["NumberOfPoints"][0])
-            return np.asarray(group[f"PointData/{array}"][start : start + count])
+            self._refuse_moved(step)
+            return self._array("Point", array, step, self._place(step).n_point)
 
         found: NDArray[Any] = self._guarded(read)
         return found
+
+    def _place(self, step: int) -> "_Place":
+        group = self._file[GROUP]
+
+        def at(name: str) -> int:
+            return int(np.ravel(group[f"Steps/{name}"][step])[0])
+
+        part = at("PartOffsets")
+        return _Place(
+            part=part,
+            point=at("PointOffsets"),
+            cell=at("CellOffsets"),
+            corner=at("ConnectivityIdOffsets"),
+            n_point=int(group["NumberOfPoints"][part]),
+            n_cell=int(group["NumberOfCells"][part]),
+        )
+
+    def _array(self, of: str, name: str, step: int, count: int) -> NDArray[Any]:
+        group = self._file[GROUP]
+        start = int(group[f"Steps/{of}DataOffsets/{name}"][step])
+        return np.asarray(group[f"{of}Data/{name}"][start : start + count])
+
+    def _points(self, step: int) -> Array:
+        place = self._place(step)
+        found = self._file[GROUP]["Points"][place.point : place.point + place.n_point]
+        return np.asarray(found, dtype=np.float64)
+
+    def _refuse_moved(self, step: int) -> None:
+        """The vtk library writes the mesh anew at every time, whether it moves or not."""
+        if self._place(step).point == self._place(0).point:
+            return
+        if not np.array_equal(self._points(step), self._points(0)):
+            raise self._fault(
+                f"the same points at all times (sample {step + 1} has others)",
+                "A mesh that moves or is refined on the way has no histories at its nodes.",
+            )
 
     def mesh(self, step: int) -> RawMesh:
         found: RawMesh = self._guarded(lambda: self._mesh(step))
         return found
 
     def _mesh(self, step: int) -> RawMesh:
-        group = self._file[GROUP]
-        n_point, n_cell = int(group["NumberOfPoints"][0]), int(group["NumberOfCells"][0])
-        points = np.asarray(group["Points"][:n_point], dtype=np.float64)
-        offsets = np.asarray(group["Offsets"][: n_cell + 1], dtype=np.int64)
-        table = np.asarray(group["Connectivity"][: offsets[-1]], dtype=np.int64)
-        kinds = np.asarray(group["Types"][:n_cell], dtype=np.int64)
-        data = {name: self.values(step, name) for name in group.get("PointData", ())}
+        group, at = self._file[GROUP], self._place(step)
+        # each part has one offset more than cells
+        first = at.cell + at.part
+        offsets = np.asarray(group["Offsets"][first : first + at.n_cell + 1], dtype=np.int64)
+        corners = group["Connectivity"][at.corner : at.corner + int(offsets[-1])]
+        kinds = np.asarray(group["Types"][at.cell : at.cell + at.n_cell], dtype=np.int64)
+        on_points, on_cells = self.arrays()
         return RawMesh(
-            points=points,
-            cells=self._cells(kinds, offsets, table),
-            point_ids=np.arange(n_point, dtype=np.int64),
-            cell_ids=np.arange(n_cell, dtype=np.int64),
-            point_data=data,
-            cell_data={},
+            points=self._points(step),
+            cells=self._cells(kinds, offsets, np.asarray(corners, dtype=np.int64)),
+            point_ids=np.arange(at.n_point, dtype=np.int64),
+            cell_ids=np.arange(at.n_cell, dtype=np.int64),
+            point_data={name: self._array("Point", name, step, at.n_point) for name in on_points},
+            cell_data={name: self._array("Cell", name, step, at.n_cell) for name in on_cells},
             groups={},
-            notes=("its arrays of cells are left out",) if len(group.get("CellData", ())) else (),
+            notes=(),
             format="vtkhdf",
         )
 

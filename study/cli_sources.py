@@ -46,9 +46,9 @@ def sources(model: str | None, path: Path | None, as_json: bool) -> None:
 
         document: dict[str, Any]
         if path is not None:
-            from midradius.study.casefile import read
+            from midradius.study.casefile import read_any
 
-            used = known.of_case(read(path))
+            used = known.of_case(read_any(path))
             wanted = (model or "").strip().casefold()
             used = tuple(
                 u for u in used if wanted in f"{u.source.model} {u.source.work}".casefold()

@@ -14,6 +14,7 @@ from functools import cache
 from importlib import import_module, resources
 
 from midradius.study.case import Case
+from midradius.study.seriescase import SeriesCase
 from midradius.thermo.source import Source
 
 FLOORS = ("midradius.thermo", "midradius.fem", "midradius.study")
@@ -72,7 +73,7 @@ def used(sources: Iterable[Source]) -> tuple[Used, ...]:
     return tuple(Used(source, ranges.get(source, "")) for source in dict.fromkeys(sources))
 
 
-def of_case(case: Case) -> tuple[Used, ...]:
+def of_case(case: Case | SeriesCase) -> tuple[Used, ...]:
     """The sources that a run of ``case`` rests on, found without solving it.
 
     Raises
@@ -83,6 +84,10 @@ def of_case(case: Case) -> tuple[Used, ...]:
     from midradius.study.basis import sources_of
     from midradius.study.setup import prepare
 
+    if isinstance(case, SeriesCase):
+        from midradius.fem.given import SOURCES
+
+        return used(sources_of(case, SOURCES))
     return used(sources_of(case, prepare(case).sources))
 
 

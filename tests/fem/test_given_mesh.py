@@ -11,13 +11,18 @@ import netCDF4
 import numpy as np
 import pytest
 import pyvista
-from numpy.testing import assert_array_equal
+from numpy.testing import assert_allclose, assert_array_equal
+from vtkmodules.util.vtkAlgorithm import VTKPythonAlgorithmBase
+from vtkmodules.vtkCommonDataModel import vtkUnstructuredGrid
+from vtkmodules.vtkCommonExecutionModel import vtkStreamingDemandDrivenPipeline as Pipeline
 from vtkmodules.vtkIOExodus import vtkExodusIIReader, vtkExodusIIWriter
+from vtkmodules.vtkIOHDF import vtkHDFWriter
 from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridWriter
 
 from midradius.fem.givenfields import write_on_mesh
 from midradius.fem.givenmesh import read_given_mesh
 from midradius.fem.histories import Histories
+from midradius.fem.vtkhdf import HdfSeries
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 
@@ -154,6 +159,38 @@ def vtkhdf(folder: Path) -> Path:
     return path
 
 
+class Cooling(VTKPythonAlgorithmBase):
+    """The cooling as a source of the vtk library."""
+
+    def __init__(self) -> None:
+        super().__init__(nInputPorts=0, nOutputPorts=1, outputType="vtkUnstructuredGrid")
+
+    def RequestInformation(self, _: Any, __: Any, out: Any) -> int:
+        told = out.GetInformationObject(0)
+        told.Set(Pipeline.TIME_STEPS(), list(TIMES), len(TIMES))
+        told.Set(Pipeline.TIME_RANGE(), [TIMES[0], TIMES[-1]], 2)
+        return 1
+
+    def RequestData(self, _: Any, __: Any, out: Any) -> int:
+        told = out.GetInformationObject(0)
+        asked = Pipeline.UPDATE_TIME_STEP()
+        time = told.Get(asked) if told.Has(asked) else 0.0
+        here = grid(int(np.argmin(np.abs(TIMES - time))))
+        vtkUnstructuredGrid.GetData(out).ShallowCopy(here)
+        return 1
+
+
+def vtkhdf_of_vtk(folder: Path) -> Path:
+    """VTKHDF as the vtk library writes it: its mesh stands there at every time."""
+    path = folder / "part.vtkhdf"
+    source, writer = Cooling(), vtkHDFWriter()
+    writer.SetInputConnection(source.GetOutputPort())
+    writer.SetFileName(str(path))
+    writer.SetWriteAllTimeSteps(True)
+    assert writer.Write() == 1
+    return path
+
+
 def opened(path: Path, array: str = "T") -> Histories:
     return read_given_mesh(
         path, array=array, time_factor=1.0, to_kelvin=(1.0, 273.15), length_factor=1e-3
@@ -169,7 +206,8 @@ WRITERS: dict[str, Callable[[Path], Path]] = {
     "Exodus in HDF5": exodus,
     "Exodus, classic": lambda folder: exodus(folder, "NETCDF3_CLASSIC"),
     "Exodus, 64-bit offsets": lambda folder: exodus(folder, "NETCDF3_64BIT_OFFSET"),
-    "VTKHDF": vtkhdf,
+    "VTKHDF, mesh once": vtkhdf,
+    "VTKHDF of vtk, mesh at every time": vtkhdf_of_vtk,
 }
 
 
@@ -216,7 +254,7 @@ def test_one_state_is_no_series(tmp_path: Path) -> None:
         opened(path)
 
 
-@pytest.mark.parametrize("writer", [pvd, xdmf, exodus, vtkhdf])
+@pytest.mark.parametrize("writer", [pvd, xdmf, exodus, vtkhdf, vtkhdf_of_vtk])
 def test_results_come_back_on_the_same_mesh_beside_the_arrays_that_were_there(
     writer: Callable[[Path], Path], tmp_path: Path
 ) -> None:
@@ -233,7 +271,7 @@ def test_results_come_back_on_the_same_mesh_beside_the_arrays_that_were_there(
     if writer is pvd:
         assert seen.point_data["source id"].dtype == np.int16
         assert_array_equal(seen.point_data["source id"], np.arange(6))
-    if writer in (pvd, xdmf):
+    if writer in (pvd, xdmf, vtkhdf_of_vtk):
         assert seen.cell_data["tag"].dtype == np.int32
         assert_array_equal(seen.cell_data["tag"], TAG)
 
@@ -310,6 +348,26 @@ def test_a_mesh_that_moves_has_no_histories(tmp_path: Path) -> None:
     moved.points = moved.points + [0.0, 0.0, 1e-3]
     write_vtu(tmp_path / "steps" / "s3.vtu", moved)
     assert '"s3.vtu", but must be a mesh with the same points' in refusal(path)
+
+
+def test_a_vtkhdf_whose_points_move_is_refused(tmp_path: Path) -> None:
+    path = vtkhdf_of_vtk(tmp_path)
+    with h5py.File(path, "r+") as file:
+        file["VTKHDF/Points"][6 * 3] += 1e-3
+    assert "sample 4 has others" in refusal(path)
+
+
+def test_the_compressed_series_of_our_own_runs_is_read(tmp_path: Path) -> None:
+    path = tmp_path / "fields.vtkhdf"
+    cells = (("triangle", TRIANGLES), ("quad", QUADS))
+    with HdfSeries(path, points_mm=POINTS, cells=cells) as series:
+        for time, values in zip(TIMES, temps(), strict=True):
+            series.add(time, {"temperature_degC": values})
+        series.finish({"hardness_HV": np.full(6, 300.0)})
+    given = opened(path, "temperature_degC")
+    # rounded to 1/64 K there
+    seen = np.array(list(given.samples())) - 273.15
+    assert_allclose(seen, temps(), rtol=0.0, atol=1.0 / 128.0 + 1e-4)
 
 
 def test_a_file_of_the_series_that_is_missing_is_named(tmp_path: Path) -> None:

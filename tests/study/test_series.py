@@ -362,6 +362,11 @@ def test_the_shipped_record_answers_as_it_says(call: Any) -> None:
     assert {v["outcome"] for v in said["needs"]} == {"holds"}
 
 
+def test_the_sources_of_such_a_case_are_told_without_a_run(call: Any) -> None:
+    done = call("sources", "--case", str(SHIPPED), "--model", "resampling")
+    assert done.code == 0 and "resampling error" in done.out
+
+
 def test_a_starter_without_a_section_names_the_one_file_to_bring(call: Any, tmp_path: Path) -> None:
     assert call("new", "--temperatures", "tc.toml").code == 0
     said = call("check", "tc.toml")
