@@ -132,6 +132,33 @@ def test_how_a_straight_line_is_sampled_changes_nothing(name: str) -> None:
         assert_allclose(phases[1], phases[0], rtol=0.0, atol=1.5e-3)
 
 
+@pytest.mark.parametrize("hold_degC", [640.0, 560.0, 480.0])
+def test_a_hold_in_which_products_compete_needs_no_samples_on_its_way(hold_degC: float) -> None:
+    # jump in 1 s, hold for 3 h: once with two samples, once with 5,000
+    tables = steel_tables(STEEL, soaked())
+    hold, end = hold_degC + 273.15, 10_800.0
+    found = []
+    for many in (1, 5000):
+        times = np.concatenate([[0.0], np.linspace(1.0, end, many + 1), end + np.array([60.0, 70])])
+        temps = np.full(len(times), hold)
+        temps[0], temps[-2:] = SOAK, 320.0
+        found.append(followed(times, temps[:, None], tables).lines.phases[:, 0])
+    # measured: 1.4e-4 at most
+    assert_allclose(found[0], found[1], rtol=0.0, atol=5e-4)
+
+
+@pytest.mark.parametrize("count", [40, 41])
+def test_every_second_sample_is_what_a_file_of_those_alone_would_give(count: int) -> None:
+    tables = steel_tables(STEEL, soaked())
+    times = np.linspace(0.0, 900.0, count)
+    temps = newton(times, np.array([60.0, 200.0]))
+    kept = np.unique([*range(0, count, 2), count - 1])
+    halved = followed(times, temps, tables).halved
+    alone = followed(times[kept], temps[kept], tables).lines
+    assert_allclose(halved.phases, alone.phases, rtol=0.0, atol=1e-12)
+    assert_allclose(halved.rate_700, alone.rate_700, rtol=1e-12, atol=0.0)
+
+
 def test_slopes_are_those_of_the_monotone_cubic_of_another_library() -> None:
     rng = np.random.default_rng(1)
     times = np.cumsum(rng.uniform(0.1, 3.0, 40))
