@@ -1,7 +1,8 @@
 """A section out of a mesh: its places by trade terms, its depths, its whole.
 
 Depth is the distance to the cooled surface: zones that some stage cools, not
-those of symmetry or insulation. The core is the node of greatest depth; of
+those of symmetry or insulation. The core is the deepest point of the nodes,
+and of those between them where they are few; of
 several as deep (within :data:`AS_DEEP`) the one in their middle. The surface is
 the point of it nearest to the core; quarter thickness and mid-radius lie half
 way between the two, a depth on the same line.
@@ -16,11 +17,13 @@ import numpy as np
 from midradius.fem.convection import Geometry
 from midradius.fem.distance import nearest, pieces
 from midradius.fem.meshfile import MeshInput
+from midradius.fem.refine import refined
 from midradius.fem.volumes import Sense
 from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 
 AS_DEEP = 0.02  # of the greatest depth
+ENOUGH = 1000  # points among which the deepest is looked for
 HALF_WAY = ("quarter thickness", "mid-radius")
 
 _WHOLE: Mapping[str, tuple[float, str]] = {
@@ -109,8 +112,13 @@ class MeshSection:
     @cached_property
     def core(self) -> Array:
         """The deepest point [m], (dim,)."""
-        deep = np.flatnonzero(self.depths >= (1.0 - AS_DEEP) * self.depths.max())
-        points = self.mesh.points[deep]
+        # a coarse mesh may have no node inside: its edges are halved for the search
+        mesh = self.mesh
+        points, cells, facets, zone = mesh.points, mesh.cells, mesh.facets, mesh.facet_zone
+        while len(points) < ENOUGH:
+            points, cells, facets, zone = refined(points, cells, facets, zone)
+        depths = nearest(points, self.surface)[0]
+        points = points[depths >= (1.0 - AS_DEEP) * depths.max()]
         middle = np.linalg.norm(points - points.mean(axis=0), axis=1)
         return np.asarray(points[int(np.argmin(middle))])
 

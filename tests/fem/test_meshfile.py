@@ -229,6 +229,15 @@ def test_the_core_is_the_deepest_point_and_the_terms_lie_on_the_way_to_it():
         section.trade_place("depth", 0.05)
 
 
+def test_a_mesh_without_a_node_inside_has_a_core_all_the_same():
+    points, quads = sheet(3, 2)
+    mesh = taken(raw_of(points, ("quad", quads)))
+    section = MeshSection(mesh, mesh.zones)
+    assert section.depths.max() == 0.0
+    assert_allclose(section.core, [0.04, 0.03], rtol=0.0, atol=2e-3)
+    assert_allclose(section.depth_of(tuple(section.core)), 0.03, rtol=0.03, atol=0.0)
+
+
 def test_depth_counts_from_what_is_cooled():
     half = cut_sheet(Symmetry((), ((1, 0.0),))).section
     assert_allclose(half.core[1], 0.02, rtol=0.0, atol=0.021)
