@@ -26,7 +26,25 @@ _FLOORS = ("thermo", "fem")
 
 def kernel(function: F) -> F:
     """Compile ``function`` without the interpreter lock, cached where possible."""
-    options: dict[str, Any] = {"nogil": True, "fastmath": False, "error_model": "numpy"}
+    return _compiled(function, forceinline=False)
+
+
+def inner_kernel(function: F) -> F:
+    """A kernel whose code is copied into its callers.
+
+    For what is called at every node: a call hands over each array as seven numbers,
+    which takes longer than the work.
+    """
+    return _compiled(function, forceinline=True)
+
+
+def _compiled(function: F, *, forceinline: bool) -> F:
+    options: dict[str, Any] = {
+        "nogil": True,
+        "fastmath": False,
+        "error_model": "numpy",
+        "forceinline": forceinline,
+    }
     folder = cache_folder()
     if folder is not None:
         with _cached_in(folder):
@@ -68,7 +86,7 @@ def _digest() -> str | None:
         for floor in _FLOORS:
             for path in sorted((root / floor).glob("*.py")):
                 text = path.read_bytes()
-                if b"@kernel" in text:
+                if b"@kernel" in text or b"@inner_kernel" in text:
                     found.update(path.name.encode() + b"\0" + text)
     except OSError:  # a zipped or otherwise unreadable package
         return None

@@ -30,7 +30,7 @@ from typing import NamedTuple
 import numpy as np
 
 from midradius.thermo.arrays import Array, IntArray
-from midradius.thermo.compiled import kernel
+from midradius.thermo.compiled import inner_kernel, kernel
 
 # Columns of a node's state. Fractions are by mass; carbon is an inventory in
 # mass % of the whole, so the austenite holds STATE_CARBON_AUSTENITE / austenite.
@@ -101,7 +101,7 @@ class Tables(NamedTuple):
     transforms: bool
 
 
-@kernel
+@inner_kernel
 def _place_of(fraction: float, first: int, clock: Array, back: IntArray) -> float:
     """Place in a clock of a fraction: the exact inverse of the table that `_grown` reads.
 
@@ -122,7 +122,7 @@ def _place_of(fraction: float, first: int, clock: Array, back: IntArray) -> floa
     return place
 
 
-@kernel
+@inner_kernel
 def _grown(
     present: float,
     limit: float,
@@ -149,7 +149,7 @@ def _grown(
     return max(limit * share, present), limit * slope * per
 
 
-@kernel
+@inner_kernel
 def _avrami(present: float, limit: float, ticks: float, exponent: float) -> tuple[float, float]:
     """As `_grown` with ``X = 1 - exp(-S^n)``: the clock goes on from the time that this
     temperature would have needed for what is there."""
@@ -166,7 +166,7 @@ def _avrami(present: float, limit: float, ticks: float, exponent: float) -> tupl
     return max(-limit * np.expm1(-extended), present), limit * left * exponent * extended / clock
 
 
-@kernel
+@inner_kernel
 def _at(value: Array, row: int, share: float, column: int) -> float:
     """A column of the table between two rows."""
     low: float = value[row, column]
@@ -174,7 +174,7 @@ def _at(value: Array, row: int, share: float, column: int) -> float:
     return low + share * (high - low)
 
 
-@kernel
+@inner_kernel
 def _temper(
     states: Array, node: int, temp: float, span: float, value: Array, tables: Tables
 ) -> None:
@@ -185,7 +185,7 @@ def _temper(
     states[node, SELF_TEMPER] += states[node, MARTENSITE] * steady * span
 
 
-@kernel
+@inner_kernel
 def advance(
     states: Array,
     node: int,
@@ -233,20 +233,23 @@ def advance(
     clock, back, pers, shapes = tables.clock, tables.back, tables.per, tables.shape
     last = value.shape[0] - 2
     stride = to_temp - from_temp
-    n_pass = 1 + int(abs(stride) / LONGEST_STRIDE)
-    part = span / n_pass
+    # Divisions are what costs most at a node where nothing happens.
+    n_pass = 1 + int(abs(stride) * (1.0 / LONGEST_STRIDE))
+    pace = 1.0 / n_pass if n_pass > 1 else 1.0
+    per_kelvin = 1.0 / tables.step
+    part = span * pace
     slope: float = 0.0
     for lap in range(n_pass):
-        place = (lap + 0.5) / n_pass
+        place = (lap + 0.5) * pace
         temp = from_temp + place * stride
-        grid = (temp - tables.first) / tables.step
+        grid = (temp - tables.first) * per_kelvin
         row = min(max(int(grid), 0), last)
         share = grid - row
         carbon = states[node, CARBON_AUSTENITE] / austenite
         # Latent heats of this moment [J/kg], for the derivative only.
         h_austenite = value[row, H_AUSTENITE] + carbon * value[row, H_AUSTENITE_C]
         h_product = value[row, H_FERRITE] + carbon * value[row, H_FERRITE_C]
-        by_temp = (h_product - h_austenite) * part * place / tables.step
+        by_temp = (h_product - h_austenite) * part * place * per_kelvin
         for turn in range(3):
             which = turn if (lap % 2 == 0) != backward else 2 - turn
             column = RATE_FERRITE + which
@@ -307,7 +310,7 @@ def advance(
                     _temper(states, node, temp, (n_pass - lap) * part, value, tables)
                 return slope
         fresh: float = 0.0
-        reached = from_temp + (lap + 1.0) / n_pass * stride
+        reached = from_temp + (lap + 1.0) * pace * stride
         if reached < states[node, COLDEST] and reached < start_of[0]:  # carbon only lowers it
             carbon = states[node, CARBON_AUSTENITE] / austenite
             start = start_of[0] - start_of[1] * (1.0 - np.exp(-start_of[2] * carbon))
@@ -339,7 +342,7 @@ def advance_node(
     return advance(one, 0, from_temp, to_temp, span, scale.reshape(1, N_SCALE), tables, False)
 
 
-@kernel
+@inner_kernel
 def enthalpy_node(
     state: Array, temp: float, initial_carbon: float, tables: Tables
 ) -> tuple[float, float, float]:
