@@ -33,6 +33,7 @@ EXPLICIT = np.sqrt(2.0) / 4.0  # weight of the two older rates in the second
 MOST_ITERATIONS = 12
 INEXACT = 0.005  # error of a move against the move itself
 CAREFUL = 0.3  # share of the tolerance that an extrapolated error may use
+CLOSELY = 0.01  # accuracy of a small move against the tolerance
 SURELY_FALLS = 0.3  # ratio of two moves up to which Newton's method is trusted to go on so
 
 
@@ -230,8 +231,8 @@ def stage(
             capacity[i] = max(capacity[i] + share * stiff[i], 0.2 * capacity[i])
         for e in range(len(weight)):
             weight[e] *= share
-        # The second move corrects what an iterative scheme leaves of the first.
-        accuracy = tolerance if iteration == 0 else 0.01 * tolerance
+        # The next move corrects what an iterative scheme leaves of a large one.
+        accuracy = CLOSELY * tolerance
         if solve(how, capacity, weight, rest, move, accuracy, INEXACT) < 0:
             return 0
         most = 0.0
