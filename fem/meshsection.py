@@ -2,10 +2,10 @@
 
 Depth is the distance to the cooled surface: zones that some stage cools, not
 those of symmetry or insulation. The core is the deepest point of the nodes,
-and of those between them where they are few; of
-several as deep (within :data:`AS_DEEP`) the one in their middle. The surface is
-the point of it nearest to the core; quarter thickness and mid-radius lie half
-way between the two, a depth on the same line.
+and of those between them where they are few; of several as deep (within
+:data:`AS_DEEP`) the one in their middle. The surface is the point of it nearest
+to the core; quarter thickness and mid-radius lie half way between the two, a
+depth on the same line.
 """
 
 from collections.abc import Mapping
