@@ -1,18 +1,12 @@
 """Whether a run meets what the drawing asks for, and how sure that is.
 
 A value is read from the three solutions of the run; they give its numerical error.
-The error of the model comes from `uncertainty`, on the side of the limit. The rule,
-with the margin counted positive on the good side of the limit:
-
-- *holds*: margin at least the sum of numerical and model uncertainty;
-- *fails*: margin negative and at least that sum away;
-- *too close to call*: everything between, and a value that no model gives.
+The error of the model comes from `uncertainty`; `needrule` makes the verdict.
 
 The model figures hold at 90 %: of requirements that a run calls met, at most one in
 ten is not, as far as the readings behind the figures speak for the part.
 
-Limits in HRC, HB, MPa and ksi are turned into HV by `thermo.conversion`, values into
-the unit asked. Where a value has no such conversion, value and margin stand in HV.
+Where a value has no conversion into the unit asked, value and margin stand in HV.
 """
 
 from collections.abc import Callable, Mapping, Sequence
@@ -26,36 +20,14 @@ from midradius.fem.place import Place
 from midradius.study import casekeys as keys
 from midradius.study import uncertainty
 from midradius.study.case import EVERYWHERE, Asked, Case, Need
-from midradius.study.result import Outcome, Verdict
+from midradius.study.needdepth import crossing, nearest_met
+from midradius.study.needrule import FAILS, Limits, joined, verdict_on
+from midradius.study.needscales import MPA_PER_KSI, SCALES
+from midradius.study.result import Verdict
 from midradius.study.uncertainty import AS_COOLED, TEMPERED, Spread
 from midradius.study.worth import Worth
-from midradius.thermo import conversion
 from midradius.thermo.arrays import Array
 from midradius.thermo.phases import MARTENSITE, PHASE_NAMES
-
-MPA_PER_KSI = 6.894757293168361
-HOLDS: Outcome = "holds"
-FAILS: Outcome = "fails"
-CLOSE: Outcome = "too close to call"
-
-_Scale = tuple[Callable[[float], float], Callable[[float], float]]
-# Unit: what a Vickers hardness is in it, and back; nan where neither exists.
-_SCALES: Mapping[str, _Scale] = {
-    "HV": (lambda hv: hv, lambda hv: hv),
-    "HRC": (
-        lambda hv: float(conversion.hv_to_hrc(hv)),
-        lambda hrc: float(conversion.hrc_to_hv(hrc)),
-    ),
-    "HB": (lambda hv: float(conversion.hv_to_hb(hv)), lambda hb: float(conversion.hb_to_hv(hb))),
-    "MPa": (
-        lambda hv: float(conversion.hv_to_uts(hv)),
-        lambda mpa: float(conversion.uts_to_hv(mpa)),
-    ),
-    "ksi": (
-        lambda hv: float(conversion.hv_to_uts(hv)) / MPA_PER_KSI,
-        lambda ksi: float(conversion.uts_to_hv(ksi * MPA_PER_KSI)),
-    ),
-}
 
 
 class Solution(Protocol):
@@ -92,18 +64,6 @@ class _Run:
         """Error by time steps and grid of what ``read`` finds in a solution."""
         answer, rough, sharp = (read(*each) for each in (self.answer, self.rough, self.sharp))
         return self.error(answer, rough, sharp)
-
-
-@dataclass(frozen=True)
-class _Limits:
-    low: float | None
-    high: float | None
-
-    def margin(self, value: Array) -> Array:
-        """Distance to the nearer limit, positive inside."""
-        low = value - self.low if self.low is not None else np.full_like(value, np.inf)
-        high = self.high - value if self.high is not None else np.full_like(value, np.inf)
-        return np.minimum(low, high)
 
 
 def judge(
@@ -168,8 +128,8 @@ def _judged(run: _Run, need: Need) -> Verdict:
 
 def _of_hardness(run: _Run, need: Need) -> Verdict:
     """Hardness and tensile strength: one field in HV, read in the unit asked."""
-    to_unit, to_hv = _SCALES[need.unit]
-    in_hv = _Limits(*(None if x is None else to_hv(x) for x in (need.at_least, need.at_most)))
+    to_unit, to_hv = SCALES[need.unit]
+    in_hv = Limits(*(None if x is None else to_hv(x) for x in (need.at_least, need.at_most)))
 
     def read(solution: Solution, places: Mapping[str, Place]) -> float:
         return _value(need, solution, places, solution.worth.hardness_hv, in_hv)
@@ -177,7 +137,7 @@ def _of_hardness(run: _Run, need: Need) -> Verdict:
     hv, error_hv = read(*run.answer), run.numerical(read)
     value, unit, limits, error, notes = hv, "HV", in_hv, error_hv, []
     if np.isfinite(to_unit(hv)):
-        value, unit, limits = to_unit(hv), need.unit, _Limits(need.at_least, need.at_most)
+        value, unit, limits = to_unit(hv), need.unit, Limits(need.at_least, need.at_most)
         shifts = [abs(to_unit(hv + step) - value) for step in (error_hv, -error_hv)]
         known = [shift for shift in shifts if np.isfinite(shift)]
         error = max(known, default=float("nan"))
@@ -189,13 +149,13 @@ def _of_hardness(run: _Run, need: Need) -> Verdict:
     else:
         spread = uncertainty.hardness(composition, unit, value, condition=run.condition)
     notes.append(_where(run, need, run.answer[0].worth.hardness_hv, in_hv))
-    verdict = _verdict(need, unit, limits, value, error, spread, _joined(notes))
+    verdict = verdict_on(need, unit, limits, value, error, spread, joined(notes))
     return _with_remedy(run, need, verdict, run.answer[0].worth.hardness_hv, in_hv)
 
 
 def _of_field(run: _Run, need: Need) -> Verdict:
     """Yield strength, a phase or a film: a field in the unit asked."""
-    limits = _Limits(need.at_least, need.at_most)
+    limits = Limits(need.at_least, need.at_most)
 
     def field(solution: Solution) -> Array:
         return _field(need, solution)
@@ -216,9 +176,9 @@ def _of_field(run: _Run, need: Need) -> Verdict:
         spread = Spread(100.0 * part.below, 100.0 * part.above, part.basis, part.measured)
     answer = field(run.answer[0])
     if np.ptp(answer) == 0.0:  # alike throughout: no place is better or worse
-        return _verdict(need, need.unit, limits, value, error, spread, "")
+        return verdict_on(need, need.unit, limits, value, error, spread, "")
     note = _where(run, need, answer, limits)
-    verdict = _verdict(need, need.unit, limits, value, error, spread, note)
+    verdict = verdict_on(need, need.unit, limits, value, error, spread, note)
     return _with_remedy(run, need, verdict, answer, limits)
 
 
@@ -234,7 +194,7 @@ def _field(need: Need, solution: Solution) -> Array:
 
 
 def _value(
-    need: Need, solution: Solution, places: Mapping[str, Place], field: Array, limits: _Limits
+    need: Need, solution: Solution, places: Mapping[str, Place], field: Array, limits: Limits
 ) -> float:
     """A field at the place of a need; everywhere: at the worst node."""
     if need.position != EVERYWHERE:
@@ -246,7 +206,7 @@ def _value(
     return float(field[np.argmin(limits.margin(field))])
 
 
-def _where(run: _Run, need: Need, field: Array, limits: _Limits) -> str:
+def _where(run: _Run, need: Need, field: Array, limits: Limits) -> str:
     if need.position != EVERYWHERE or np.isnan(field).any():
         return ""
     cut = run.answer[0].cut
@@ -268,7 +228,7 @@ def _depth(run: _Run, need: Need) -> Verdict:
         level = 0.01 * need.to
         wide = uncertainty.fraction(level, hardened=True)
     else:
-        level = _SCALES[need.to_unit][1](need.to)
+        level = SCALES[need.to_unit][1](need.to)
         wide = uncertainty.hardness(composition, "HV", level, condition=run.condition)
 
     def to(solution: Solution, level: float) -> float:
@@ -288,82 +248,12 @@ def _depth(run: _Run, need: Need) -> Verdict:
     )
     line = cut.profile()
     note = "hardened through" if value >= line.depth[-1] / metre else ""
-    limits = _Limits(need.at_least, need.at_most)
-    verdict = _verdict(need, need.unit, limits, value, error, spread, note)
+    limits = Limits(need.at_least, need.at_most)
+    verdict = verdict_on(need, need.unit, limits, value, error, spread, note)
     return replace(verdict, position=line.label)
 
 
-def crossing(depth: Array, values: Array, level: float) -> float:
-    """The depth at which ``values`` first fall below ``level``, the last depth if never.
-
-    Parameters
-    ----------
-    depth
-        Rising from the surface [m], shape (n_point,).
-    values
-        Along it, same shape; linear between the points.
-    """
-    below = np.flatnonzero(~(values >= level))
-    if not below.size:
-        return float(depth[-1])
-    k = int(below[0])
-    if k == 0:
-        return float(depth[0])
-    part = (values[k - 1] - level) / (values[k - 1] - values[k])
-    return float(depth[k - 1] + part * (depth[k] - depth[k - 1]))
-
-
-def _verdict(
-    need: Need,
-    unit: str,
-    limits: _Limits,
-    value: float,
-    error: float,
-    spread: Spread,
-    note: str,
-) -> Verdict:
-    sides = []
-    if limits.low is not None:
-        toward = spread.below if value >= limits.low else spread.above
-        sides.append((value - limits.low, toward, limits.low))
-    if limits.high is not None:
-        toward = spread.above if value <= limits.high else spread.below
-        sides.append((limits.high - value, toward, limits.high))
-    margin, model, limit = min(sides, key=lambda side: side[0] - side[1])
-    outcome: Outcome = CLOSE
-    if all(gap >= error + wide for gap, wide, _ in sides):
-        outcome = HOLDS
-    elif any(gap < 0.0 and gap <= -(error + wide) for gap, wide, _ in sides):
-        outcome = FAILS
-        margin, model, limit = min(sides)
-    if not np.isfinite(value):
-        note = _joined(["no model gives a value here", note])
-    return Verdict(
-        need=need.text,
-        position=need.position,
-        quantity=need.quantity,
-        unit=unit,
-        value=_known(value),
-        limit=limit,
-        margin=_known(margin),
-        numerical_uncertainty=_known(error),
-        model_uncertainty=_known(model),
-        model_measured=spread.measured,
-        model_basis=spread.basis,
-        outcome=outcome,
-        note=note,
-    )
-
-
-def _known(value: float) -> float | None:
-    return float(value) if np.isfinite(value) else None
-
-
-def _joined(parts: Sequence[str]) -> str:
-    return "; ".join(part for part in parts if part)
-
-
-def _with_remedy(run: _Run, need: Need, verdict: Verdict, field: Array, limits: _Limits) -> Verdict:
+def _with_remedy(run: _Run, need: Need, verdict: Verdict, field: Array, limits: Limits) -> Verdict:
     """A failing verdict with where its limits are met."""
     if verdict.outcome != FAILS:
         return verdict
@@ -382,26 +272,4 @@ def _with_remedy(run: _Run, need: Need, verdict: Verdict, field: Array, limits: 
         text = f"met nowhere on the profile, {line.label}"
         if near is not None:
             text = f"nearest place that meets it: {1e3 * near:.1f} mm on the profile, {line.label}"
-    return replace(verdict, note=_joined([verdict.note, text]))
-
-
-def nearest_met(depth: Array, margin: Array, wanted: float) -> float | None:
-    """The depth nearest to ``wanted`` where ``margin``, linear between points, is not negative."""
-    met = [float(d) for d, m in zip(depth, margin, strict=True) if m >= 0.0]
-    for k in range(len(depth) - 1):
-        ends = margin[k], margin[k + 1]
-        if min(ends) < 0.0 <= max(ends):
-            part = ends[0] / (ends[0] - ends[1])
-            met.append(float(depth[k] + part * (depth[k + 1] - depth[k])))
-    return min(met, key=lambda d: abs(d - wanted), default=None)
-
-
-def shown(value: float | None, unit: str, *, bare: bool = False) -> str:
-    """A value for a person, with the digits that its unit deserves; ``bare``: no unit."""
-    if value is None:
-        return "-"
-    digits = {"HRC": 1, "%": 1, "mm": 1, "in": 2, "um": 2, "ASTM": 1, "ksi": 1}.get(unit, 0)
-    number = f"{value:.{digits}f}"
-    if bare:
-        return number
-    return f"{unit} {number}" if unit == "ASTM" else f"{number} {unit}"
+    return replace(verdict, note=joined([verdict.note, text]))

@@ -12,7 +12,7 @@ from importlib import metadata
 from typing import TYPE_CHECKING, Any, Literal
 
 from midradius.study.lengthtable import lengths, remark
-from midradius.study.needs import shown
+from midradius.study.needscales import shown
 from midradius.study.result import Position, Result, StageRecord, Verdict
 from midradius.study.seriestext import resampling_document, resampling_rows
 from midradius.study.soaktable import soaks, uneven

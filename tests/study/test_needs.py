@@ -15,7 +15,8 @@ from midradius.fem import section as forms
 from midradius.fem.section import Cut
 from midradius.study import uncertainty
 from midradius.study.case import Case, Need, Outputs, SectionInput, Stage, SteelInput, position
-from midradius.study.needs import any_fails, crossing, judge, nearest_met
+from midradius.study.needdepth import crossing, nearest_met
+from midradius.study.needs import any_fails, judge
 from midradius.study.result import Verdict
 from midradius.study.scale import scales
 from midradius.study.setup import coordinates_of
