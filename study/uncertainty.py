@@ -37,10 +37,11 @@ SOURCE = Source("error against published readings", "uncertainty.csv", "by class
 
 PLAIN = "plain carbon below 0.6 % C"
 HIGH_CARBON = "plain carbon of 0.6 % C and more"
-ALLOY = "Cr, CrMo and NiCrMo below 0.6 % C"
+ALLOY = "Cr, CrMo and NiCrMo of 0.25 to 0.6 % C"
+CASE_HARDENING = "alloy steel below 0.25 % C"
 OTHER = "other"
-CLASSES = (PLAIN, HIGH_CARBON, ALLOY, OTHER)
-HIGH_CARBON_PCT = 0.6
+CLASSES = (PLAIN, HIGH_CARBON, ALLOY, CASE_HARDENING, OTHER)
+CASE_HARDENING_PCT, HIGH_CARBON_PCT = 0.25, 0.6
 # Above one of these a steel is alloyed, mass % [EN 10020, remembered]
 ALLOYED_PCT = {"Cr": 0.30, "Ni": 0.30, "Mo": 0.08}
 ALLOYED_OTHERWISE_PCT = {"Mn": 1.65, "Si": 0.60, "V": 0.10, "B": 0.0008, "W": 0.30, "Co": 0.30}
@@ -99,6 +100,8 @@ def steel_class(composition: Composition) -> str:
         return OTHER
     high = composition.C >= HIGH_CARBON_PCT
     if any(amounts[name] >= limit for name, limit in ALLOYED_PCT.items()):
+        if composition.C < CASE_HARDENING_PCT:
+            return CASE_HARDENING
         return OTHER if high else ALLOY
     return HIGH_CARBON if high else PLAIN
 

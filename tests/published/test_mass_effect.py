@@ -14,12 +14,11 @@ from endquench import rows
 from measure_uncertainty import end_quenched, rockwell
 from test_bars import PLACES, cooled
 
-from midradius.study.uncertainty import steel_class
+from midradius.study.uncertainty import ALLOY, steel_class
 from midradius.thermo.grades import grade
 
 pytestmark = pytest.mark.slow
 MEDIAN_HRC, P90_HRC, IN_BAND = 2.0, 6.0, 0.95
-LEAST_CARBON_PCT = 0.3  # case-hardening steels below: their cores are another matter
 
 
 @cache
@@ -54,19 +53,18 @@ def _of(kind: str) -> np.ndarray:
             for name, errors in bar_errors().items()
             for error in errors
             if steel_class(grade(name).composition) == kind
-            and grade(name).composition.C >= LEAST_CARBON_PCT
         ]
     )
 
 
 def test_the_bars_of_alloy_steel_meet_the_goal() -> None:
-    errors = _of("Cr, CrMo and NiCrMo below 0.6 % C")
+    errors = _of(ALLOY)
     assert len(errors) > 90
     assert np.median(errors) <= MEDIAN_HRC
     assert np.percentile(errors, 90.0) <= P90_HRC
 
 
-@pytest.mark.xfail(strict=True, raises=AssertionError, reason="REASON_BARS")
+@pytest.mark.xfail(strict=True, raises=AssertionError, reason="median 2.5, 90th percentile 7.9")
 def test_all_bars_together_meet_the_goal() -> None:
     errors = np.abs(np.concatenate([np.array(e) for e in bar_errors().values()]))
     assert np.median(errors) <= MEDIAN_HRC and np.percentile(errors, 90.0) <= P90_HRC, (
