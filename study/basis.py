@@ -124,7 +124,7 @@ def sources_of(case: Asked, more: tuple[Source, ...]) -> tuple[Source, ...]:
     used += [soaked, heatup] if case.heating else []
     used += [calibration] if case.steel.calibration else []
     used += [uncertainty] if case.needs else []
-    found += ratesets.sources(case.steel.kinetics)
+    found += ratesets.sources(case.steel.kinetics, composition)
     for module in used:
         found += getattr(module, "SOURCES", ()) or [module.SOURCE]
     return tuple(dict.fromkeys([*found, *more]))

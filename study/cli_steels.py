@@ -253,11 +253,12 @@ def _certificate(
 
 def _range_notes(composition: Composition) -> list[RangeNote]:
     """Models that a run would use outside their range; grain and soak left aside."""
-    from midradius.thermo import diffusional, equilibrium, martensite, steel
+    from midradius.thermo import equilibrium, martensite, ratesets, steel
+    from midradius.thermo.ratechoice import DEFAULT
 
     return [
         *steel.range_notes(composition),
         *equilibrium.range_notes(composition),
-        *diffusional.range_notes(composition, composition.C, _USUAL_GRAIN_ASTM),
+        *ratesets.range_notes(DEFAULT, composition, composition.C, _USUAL_GRAIN_ASTM),
         *martensite.range_notes(composition),
     ]

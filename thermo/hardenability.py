@@ -36,6 +36,8 @@ from importlib import resources
 import numpy as np
 
 from midradius.thermo.arrays import Array
+from midradius.thermo.boron import acts
+from midradius.thermo.boron import diameter_factor as boron_factor
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition, outside
 
@@ -55,7 +57,6 @@ CONTINUED_TO_IN = 0.5  # smaller, and a farther row comes out harder than a near
 SOFTEST_HRC = 20.0
 LEAST_CARBON, MOST_CARBON = 0.10, 0.70  # mass %; beyond, the polynomials of hardness turn over
 A255_GRAIN_ASTM = 7.0
-EFFECTIVE_BORON_PCT = 0.0005
 
 _LIMITS = {
     "C": (LEAST_CARBON, MOST_CARBON), "Mn": (0.50, 1.65), "Si": (0.15, 0.60), "Cr": (0.0, 1.35),
@@ -116,10 +117,10 @@ def ideal_diameter(composition: Composition, *, grain_astm: float) -> IdealDiame
         nan above 0.90 % C or 1.95 % Mn, where the factors end.
     """
     c = composition
-    boron = c.B >= EFFECTIVE_BORON_PCT
+    boron = acts(c)
     factors = {"C": carbon_factor(c.C), "Mn": manganese_factor(c.Mn)}
     factors |= {name: 1.0 + slope * getattr(c, name) for name, slope in _LINEAR.items()}
-    factors["B"] = 1.0 + 1.5 * (0.9 - c.C) if boron else 1.0
+    factors["B"] = boron_factor(c)
     factors["grain"] = 1.083 ** (A255_GRAIN_ASTM - grain_astm)
     notes = list(outside(c, model=MODEL, limits=_LIMITS))
     if boron:
@@ -206,7 +207,7 @@ def a255_curve(composition: Composition, distance: Array, *, grain_astm: float) 
     inches = ideal.diameter / INCH
     if inches < SMALLEST_IN or inches > LARGEST_IN:
         notes.append(RangeNote(MODEL, "ideal diameter", f"{inches:.2f} in", "1 to 7 in"))
-    if composition.B >= EFFECTIVE_BORON_PCT:
+    if acts(composition):
         rows = "dividing factors of steels without boron"
         notes.append(RangeNote(MODEL, "end-quench curve", rows, "steels without boron"))
     notes += distance_notes(MODEL, at, SIXTEENTH, FURTHEST_POSITION * SIXTEENTH)

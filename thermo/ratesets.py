@@ -2,7 +2,7 @@
 
 from dataclasses import replace
 
-from midradius.thermo import diffusional, extension, kirkaldy, martensite, measuredrates
+from midradius.thermo import boron, diffusional, extension, kirkaldy, martensite, measuredrates
 from midradius.thermo import kinetics as kin
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import Austenite
@@ -25,6 +25,16 @@ RATE_COLUMNS = {
 
 def rates(kinetics: Kinetics, austenite: Austenite, temp: Array, soaked: Equilibrium) -> Rates:
     """Clock rates of the named set, (n_temp,) each, for an austenite with its own equilibrium."""
+    found = _without_boron(kinetics, austenite, temp, soaked)
+    slower = boron.time_factor(replace(austenite.composition, C=austenite.carbon_pct))
+    if slower == 1.0:
+        return found
+    return Rates(found.ferrite / slower, found.pearlite / slower, found.bainite / slower)
+
+
+def _without_boron(
+    kinetics: Kinetics, austenite: Austenite, temp: Array, soaked: Equilibrium
+) -> Rates:
     if kinetics.name == KIRKALDY:
         return kirkaldy.rates(
             replace(austenite.composition, C=austenite.carbon_pct),
@@ -99,19 +109,22 @@ def range_notes(
     kinetics: Kinetics, composition: Composition, carbon_pct: float, grain_astm: float
 ) -> list[RangeNote]:
     """Where the named set is used outside the range of its source."""
+    of_boron = boron.range_notes(replace(composition, C=carbon_pct))
     if kinetics.name == KIRKALDY:
-        return kirkaldy.range_notes(composition, carbon_pct)
-    return diffusional.range_notes(composition, carbon_pct, grain_astm)
+        return [*kirkaldy.range_notes(composition, carbon_pct), *of_boron]
+    return [*diffusional.range_notes(composition, carbon_pct, grain_astm), *of_boron]
 
 
-def sources(kinetics: Kinetics) -> tuple[Source, ...]:
-    """The works behind the choice."""
+def sources(kinetics: Kinetics, composition: Composition) -> tuple[Source, ...]:
+    """The works behind the choice, for a steel."""
     found = list(diffusional.SOURCES)
     if kinetics.name == EXTENDED:
         found += extension.SOURCES
     if kinetics.name == KIRKALDY:
         # the film of cementite is in no set: it stays
         found = [*kirkaldy.SOURCES, *diffusional.SOURCES[1:]]
+    if boron.acts(composition):
+        found += boron.SOURCES
     if kinetics.measured is not None:
         own = Source("measured transformation", kinetics.measured.name, "the user's own", "read")
         found = [own, *measuredrates.SOURCES, *found]

@@ -25,8 +25,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from midradius.thermo import boron
 from midradius.thermo.arrays import Array
-from midradius.thermo.hardenability import EFFECTIVE_BORON_PCT, Curve, curve, distance_notes
+from midradius.thermo.hardenability import Curve, curve, distance_notes
 from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition, outside
 
@@ -42,12 +43,12 @@ FINEST_ASTM, COARSEST_ASTM = 11.0, 1.5
 MOST_CARBON_OF_RATES = 0.5
 _JUST_LIMITS = {
     "C": (0.08, 0.56), "Mn": (0.2, 1.88), "Cr": (0.0, 1.97), "Ni": (0.0, 8.94), "Mo": (0.0, 0.53),
-    "B": (0.0, EFFECTIVE_BORON_PCT),
+    "B": (0.0, boron.EFFECTIVE_PCT),
 }  # fmt: skip
 _MAYNIER_LIMITS = {
     "C": (0.1, MOST_CARBON_OF_RATES), "Si": (0.0, 1.0), "Mn": (0.0, 2.0), "Ni": (0.0, 4.0),
     "Cr": (0.0, 3.0), "Mo": (0.0, 1.0), "V": (0.0, 0.2), "Cu": (0.0, 0.5),
-    "B": (0.0, EFFECTIVE_BORON_PCT),
+    "B": (0.0, boron.EFFECTIVE_PCT),
 }  # fmt: skip
 
 

@@ -95,7 +95,6 @@ UNSEEN_ABOVE: Mapping[str, float] = {
     "S": 0.1,
     "Al": 0.1,
     "N": 0.02,
-    "B": 0.0005,
     "Ti": 0.05,
     "Nb": 0.05,
     "W": 0.1,

@@ -288,13 +288,10 @@ def test_what_no_model_sees_is_noted_for_the_grades_that_have_it() -> None:
         item.name: {note.quantity for note in bounds.range_notes(item.steel.composition)}
         for item in rows()
     }
-    assert {name for name, what in noted.items() if what == {"B"}} == {
-        item.name for item in find(family="boron")
-    }
     assert {name for name, what in noted.items() if what == {"S"}} == {
         item.name for item in find(family="resulphurised")
     }
-    assert all(what in (set(), {"B"}, {"S"}) for what in noted.values())
+    assert all(what in (set(), {"S"}) for what in noted.values())
 
 
 def test_only_nickel_takes_a_grade_out_of_the_shifts_of_the_boundaries() -> None:
