@@ -349,7 +349,7 @@ def test_the_shipped_cases_show_every_form_and_state_that_they_are_invented() ->
             in path.read_text(encoding="utf-8").partition("\n\n")[0].partition("title")[0]
         ), path.name
         forms.add(casefile.read(path).section.form)
-    assert forms == {"slab", "round", "tube", "ball", "bar", "ring"}
+    assert forms == {"slab", "round", "tube", "ball", "bar", "ring", "mesh"}
 
 
 @pytest.mark.parametrize("path", SHIPPED, ids=lambda path: path.stem)
