@@ -50,7 +50,9 @@ The folder holds:
   positions.csv             the answer at the named positions
   needs.csv                 what the case asks for, and whether it is met
   record.h5                 all of it, with inputs, versions and sources
-  *.png                     cooling curves, profile, section
+  *.png                     cooling curves, profile, section; of a solid and with
+                            pictures = "scenes" the part itself, cooling.gif as well
+With [output] format = "vtkhdf" all fields are in fields.vtkhdf, written as they come.
 """
 
 

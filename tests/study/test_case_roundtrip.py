@@ -293,8 +293,11 @@ def fits(value: object, rule: dict[str, Any]) -> bool:
             return number
         return isinstance(value, kinds[name]) and (name != "integer" or number)
 
-    def closed(value: Any, _: Any, rule: dict[str, Any]) -> bool:
-        return not isinstance(value, dict) or set(value) <= set(rule["properties"])
+    def closed(value: Any, others: Any, rule: dict[str, Any]) -> bool:
+        if not isinstance(value, dict):
+            return True
+        beyond = set(value) - set(rule["properties"])
+        return all(others is not False and fit(value[name], others) for name in beyond)
 
     checks = {
         "type": typed,
