@@ -48,7 +48,7 @@ _KNOWN = ", ".join([*OWN, *BY_LIBRARY])
 _OTHERS: Mapping[str, str] = {
     **dict.fromkeys(
         (".step", ".stp", ".iges", ".igs", ".brep", ".dxf"),
-        "This is a drawing or a solid, not a mesh: mesh it first.",
+        "This is a drawing or a solid, not a mesh: midradius mesh makes one of it.",
     ),
     **dict.fromkeys(
         (".stl", ".obj", ".ply", ".off"),
