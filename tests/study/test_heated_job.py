@@ -146,7 +146,8 @@ def test_what_never_became_austenite_stays_soft_whatever_the_quench() -> None:
     # ferrite, (cementite), pearlite, as before the quench, by the lever rule
     assert_allclose(result.phases[[1, 3]][:, old].sum(axis=0), 1.0, rtol=0.0, atol=1e-9)
     assert np.isfinite(result.hardness_hv).all()
-    assert result.hardness_hv[old].max() < 0.5 * result.hardness_hv.max()
+    # as delivered: 42CrMo4 +A has at most 241 HB (EN ISO 683-2, from memory), about 254 HV
+    assert result.hardness_hv[old].max() < 254.0 < result.hardness_hv.max() - 100.0
     core = next(p for p in result.positions if p.name == "core")
     assert core.austenite_grain_astm is None and core.austenite_grain_um is None
     assert any(line.startswith("Underheated: ") for line in result.cautions)
