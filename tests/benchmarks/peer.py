@@ -2,8 +2,9 @@
 
 The same equations, the same method in time and the same steps as ours, so that the
 error is the same and only the work on the matrices differs: linear triangles with
-lumped capacity, assembled and factorised once a stage (symmetric mode), Newton's
-method with that factor. The kinetics are our own compiled kernel, a gift to the peer.
+lumped capacity. Newton's method as we do it, a matrix assembled and factorised afresh
+(symmetric mode) for each move, or thriftily with the first factor of a stage. The
+kinetics are our own compiled kernel, a gift to the peer.
 """
 
 import time
@@ -18,7 +19,6 @@ from skfem import Basis, BilinearForm, ElementTriP1, FacetBasis, LinearForm, Mes
 from skfem.helpers import dot, grad
 
 from midradius.fem.heat import EXPLICIT, GAMMA, IMPLICIT
-from midradius.fem.volumes import ControlVolumes
 from midradius.thermo.arrays import Array
 from midradius.thermo.kinetics import Tables, advance, enthalpy_node
 
@@ -62,9 +62,9 @@ class Peer:
 
 
 def finite_elements(
-    mesh: MeshTri, body: ControlVolumes, tables: Tables, start: Array, carbon: float, times: Array
+    mesh: MeshTri, tables: Tables, start: Array, carbon: float, times: Array, *, afresh: bool
 ) -> Peer:
-    """The mesh over given step times; ``body`` names the cooled faces, same nodes."""
+    """The mesh over given step times; ``afresh``: a matrix and a factor for each move."""
     basis = Basis(mesh, ElementTriP1())
     mass = DENSITY * _share.assemble(basis)
     points = mesh.p
@@ -92,7 +92,7 @@ def finite_elements(
                 from_temp, at, from_state, span, scale, carbon, tables, backward
             )
             spent[2] += time.process_time() - begin
-            if matrix is None:
+            if matrix is None or afresh:
                 begin = time.process_time()
                 matrix = _conduction.assemble(basis, k=basis.interpolate(k))
                 spent[0] += time.process_time() - begin
@@ -100,7 +100,7 @@ def finite_elements(
             rate = flow - matrix @ at
             if most < NEWTON:
                 return at, after, rate
-            if solver is None:
+            if solver is None or afresh:
                 begin = time.process_time()
                 system = share * matrix + diags(
                     np.maximum(mass * capacity + share * stiff, 0.2 * mass * capacity)
