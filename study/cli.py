@@ -19,6 +19,7 @@ from midradius.study.cli_calibrate import calibrate
 from midradius.study.cli_diagram import diagram
 from midradius.study.cli_endquench import endquench
 from midradius.study.cli_lever import lever
+from midradius.study.cli_media import media
 from midradius.study.cli_mesh import mesh
 from midradius.study.cli_probe import probe
 from midradius.study.cli_sources import described, sources, used_lines
@@ -101,6 +102,7 @@ cli.add_command(calibrate)
 cli.add_command(diagram)
 cli.add_command(endquench)
 cli.add_command(lever)
+cli.add_command(media)
 cli.add_command(mesh)
 cli.add_command(probe)
 cli.add_command(sources)
@@ -213,35 +215,6 @@ def _write_new(file: Path, content: str) -> None:
         ) from None
     except OSError as fault:
         raise InputFault("file", str(file), "a place that can be written", f"{fault}.") from fault
-
-
-@cli.command(short_help="List the media and their bath temperatures.")
-@click.option("--heating", is_flag=True, help="List those that a part is heated in.")
-def media(*, heating: bool) -> None:
-    """List the media and the bath or furnace temperatures they are known for."""
-    if heating:
-        _heating_media()
-        return
-    from midradius.fem.media import ZERO_DEGC, medium, names
-
-    for name in names():
-        found = medium(name)
-        low, high = found.bath_min - ZERO_DEGC, found.bath_max - ZERO_DEGC
-        bath = "" if found.kind == "ideal" else f"{low:.0f} to {high:.0f} degC"
-        sure = (
-            f"film +-{found.uncertainty_pct:.0f} %" if found.uncertainty_pct else "no heat passes"
-        )
-        click.echo(f"{name:26} {bath:18} {sure}")
-
-
-def _heating_media() -> None:
-    from midradius.fem.furnace import ZERO_DEGC, furnace_medium, furnace_names
-
-    for name in furnace_names():
-        found = furnace_medium(name)
-        low, high = found.coldest - ZERO_DEGC, found.hottest - ZERO_DEGC
-        span = f"{low:.0f} to {high:.0f} degC"
-        click.echo(f"{name:28} {span:18} film +-{found.uncertainty_pct:.0f} %")
 
 
 @cli.command()

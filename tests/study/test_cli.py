@@ -246,6 +246,16 @@ def test_media_that_heat_are_listed_with_the_furnaces_they_are_for(call) -> None
     assert lines[3] == "vacuum furnace               300 to 1200 degC   film +-20 %"
 
 
+@pytest.mark.parametrize("options", [(), ("--heating",)])
+def test_media_as_json_are_the_same_list_with_units(call, options: tuple[str, ...]) -> None:  # type: ignore[no-untyped-def]
+    said = json.loads(call("media", "--json", *options).out)["media"]
+    lines = call("media", *options).out.splitlines()
+    assert [item["name"] for item in said] == [re.split(r" {2,}", line)[0] for line in lines]
+    spans = [(item["lowest_degC"], item["highest_degC"]) for item in said]
+    assert all(low < high for low, high in spans if low is not None)
+    assert all(set(item) >= {"film_uncertainty_pct", "cautions"} for item in said)
+
+
 def test_media_and_steels_are_lists_of_what_a_case_may_name(call, case: Path, small: str) -> None:
     media = [line[:26].strip() for line in call("media").out.splitlines()]
     steels = [line.split()[0] for line in call("steels").out.splitlines()]
