@@ -30,7 +30,7 @@ from midradius.study.curvefit import HIGHEST_HRC, LOWEST_HRC, CurveFit
 from midradius.study.measuredcurve import SIXTEENTH_MM
 from midradius.study.palette import BLACK, GRID, GUIDE, PURPLE
 from midradius.study.sheetfile import write_document, write_picture, write_table
-from midradius.study.summary import jsonable
+from midradius.study.summary import SCHEMA_VERSION, jsonable
 from midradius.thermo.calibration import SOURCE
 from midradius.thermo.errors import InputFault
 
@@ -96,6 +96,7 @@ def _at_bound(k: int, value: float) -> str:
 def document(found: Fitted) -> dict[str, Any]:
     """The fit as plain Python for JSON; None where unknown or held."""
     content = {
+        "schema_version": SCHEMA_VERSION,
         "grade": found.steel.name,
         "composition_pct": {k: v for k, v in vars(found.steel.composition).items() if v},
         "austenitize_degC": round(found.austenitize - ZERO_DEGC, 6),

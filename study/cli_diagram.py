@@ -168,10 +168,11 @@ def _of_calibration(named: "SteelInput", metal: "Soaked") -> list[str]:
 def _document(metal: "Soaked", found: "Isothermal | Cooling", notes: list[str]) -> dict[str, Any]:
     from midradius.study.diagram import ZERO_DEGC
     from midradius.study.diagramtable import table
-    from midradius.study.summary import jsonable
+    from midradius.study.summary import SCHEMA_VERSION, jsonable
 
     heads, *rows = table(metal, found)
     content = {
+        "schema_version": SCHEMA_VERSION,
         "grade": metal.steel.name,
         "austenitize_degC": round(metal.soak_temp - ZERO_DEGC, 6),
         "soak_time_s": metal.soak_time,

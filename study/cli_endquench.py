@@ -173,7 +173,7 @@ def _table(test: "EndQuench") -> list[str]:
         limits = f"{low[i]:.0f}-{high[i]:.0f}" if low[i] == low[i] else ""
         cells = (
             *(f"{z:.1f}", f"{position:.4g}", f"{hv[i]:.0f}", _number(test.hardness_hrc[i], 1)),
-            *(_number(martensite[i], 1), f"{rate[i]:.3g}", f"{spent[i]:.3g}"),
+            *(_number(martensite[i], 1), _brief(rate[i]), _brief(spent[i])),
             *(_number(test.estimates[name][i], 1) for name in (JUST, A255)),
             limits,
         )
@@ -190,14 +190,20 @@ def _number(value: float, digits: int) -> str:
     return f"{value:.{digits}f}" if value == value else "-"
 
 
+def _brief(value: float) -> str:
+    return f"{value:.3g}" if value == value else "-"
+
+
 def _estimates(test: "EndQuench") -> list[str]:
-    inch = test.ideal_diameter / 0.0254
+    beyond = "none, its source does not reach this composition"
+    ideal = f"{1e3 * test.ideal_diameter:.0f} mm ({test.ideal_diameter / 0.0254:.2f} in)"
+    critical = f"{test.critical.full:.2f} K/s for all martensite, {test.critical.half:.2f} for half"
+    ideal = ideal if test.ideal_diameter == test.ideal_diameter else beyond
+    critical = critical if test.critical.full == test.critical.full else beyond
     lines = [
         "Just and A255 are independent estimates from the composition alone, not from the solver.",
-        f"ideal diameter (ASTM A255): {_number(1e3 * test.ideal_diameter, 0)} mm"
-        f" ({_number(inch, 2)} in)",
-        f"critical cooling rate at 700 degC (Maynier): {_number(test.critical.full, 2)} K/s for all"
-        f" martensite, {_number(test.critical.half, 2)} for half",
+        f"ideal diameter (ASTM A255): {ideal}",
+        f"critical cooling rate at 700 degC (Maynier): {critical}",
     ]
     if test.band is not None:
         memory = " (from memory, 3 HRC either way)" if test.band.status == "remembered" else ""

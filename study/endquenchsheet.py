@@ -10,7 +10,7 @@ from midradius.study.chart import SIZE, SMALL, sheets
 from midradius.study.endquench import A255, JUST, SIXTEENTH_MM, ZERO_DEGC, EndQuench
 from midradius.study.palette import BLACK, GRID, GUIDE, PHASE, PHASE_LABEL, PURPLE, SKY
 from midradius.study.sheetfile import write_document, write_picture, write_table
-from midradius.study.summary import jsonable
+from midradius.study.summary import SCHEMA_VERSION, jsonable
 from midradius.thermo.arrays import Array
 from midradius.thermo.bands import UNSURE_HRC
 from midradius.thermo.phases import PHASE_NAMES
@@ -34,6 +34,7 @@ def write_sheet(test: EndQuench, folder: Path, extra: Mapping[str, object]) -> N
 def document(test: EndQuench) -> dict[str, Any]:
     """The test as plain Python for JSON; lists along ``distance_mm``, None where unknown."""
     content = {
+        "schema_version": SCHEMA_VERSION,
         "grade": test.steel.name,
         "standard": test.steel.standard,
         "composition_pct": {k: v for k, v in vars(test.steel.composition).items() if v},

@@ -13,7 +13,7 @@ from midradius.study.chart import SIZE, SMALL, WIDTH_INCH, label
 from midradius.study.palette import BLACK, BLUE, GRID, GUIDE, VERMILION
 from midradius.study.probejob import ZERO_DEGC, ProbeFound
 from midradius.study.sheetfile import write_document, write_picture, write_table
-from midradius.study.summary import jsonable
+from midradius.study.summary import SCHEMA_VERSION, jsonable
 from midradius.thermo.errors import InputFault
 
 if TYPE_CHECKING:
@@ -74,6 +74,7 @@ def document(found: ProbeFound) -> dict[str, Any]:
     """Everything as plain Python for JSON; None where the curve does not get there."""
     s, q = found.setting, found.quantities
     content = {
+        "schema_version": SCHEMA_VERSION,
         "curve": found.curve.name,
         "curve_sha256": found.curve.sha256,
         "material": s.metal.name,

@@ -55,6 +55,7 @@ FURTHEST_POSITION = 12.0
 SMALLEST_IN, LARGEST_IN = 1.0, 7.0
 CONTINUED_TO_IN = 0.5  # smaller, and a farther row comes out harder than a nearer one
 SOFTEST_HRC = 20.0
+HARDEST_HRC = 68.0  # the scale of ISO 18265 ends here
 LEAST_CARBON, MOST_CARBON = 0.10, 0.70  # mass %; beyond, the polynomials of hardness turn over
 A255_GRAIN_ASTM = 7.0
 
@@ -253,9 +254,13 @@ def distance_notes(model: str, distance: Array, near: float, far: float) -> list
 
 
 def curve(model: str, distance: Array, hardness_hrc: Array, notes: list[RangeNote]) -> Curve:
-    """The curve with nan, and a note, in place of what lies below the scale."""
+    """The curve with nan, and a note, in place of what lies off the scale."""
     soft = hardness_hrc < SOFTEST_HRC
     if np.any(soft):
         value = f"below 20 HRC from {1e3 * float(distance[soft].min()):.2f} mm on"
         notes = [*notes, RangeNote(model, "hardness", value, "20 HRC and more")]
-    return Curve(distance, np.where(soft, np.nan, hardness_hrc), tuple(notes))
+    hard = hardness_hrc > HARDEST_HRC
+    if np.any(hard):
+        value = f"above {HARDEST_HRC:g} HRC to {1e3 * float(distance[hard].max()):.2f} mm"
+        notes = [*notes, RangeNote(model, "hardness", value, f"{HARDEST_HRC:g} HRC and less")]
+    return Curve(distance, np.where(soft | hard, np.nan, hardness_hrc), tuple(notes))

@@ -174,12 +174,21 @@ def test_json_stands_alone_and_is_null_below_twenty_rockwell(call) -> None:
     said = json.loads(answer.out)
     for key in ("grade", "austenitize_degC", "ideal_diameter_mm", "regressions", "notes"):
         assert key in said
-    assert said["grade"] == "1045"
+    assert (said["schema_version"], said["grade"]) == (1, "1045")
     assert len(said["distance_mm"]) == len(said["hardness_hrc"]) == len(said["hardness_hv"])
     for hv, hrc in zip(said["hardness_hv"], said["hardness_hrc"], strict=True):
         assert (hrc is None) == (hv < 238.0)  # ASTM E140: 20 HRC is 238 HV
     assert said["hardness_hrc"][0] > 50.0
     assert said["hardness_hrc"][-1] is None
+
+
+def test_what_no_estimate_reaches_is_said_in_words(call) -> None:
+    # from 745 degC nothing cools through 800 degC; A255 ends at 0.7 % C, Maynier at 0.5 %
+    answer = call("endquench", "52100", "--austenitize", "745 degC")
+    assert answer.code == 0 and "nan" not in answer.out
+    beyond = "none, its source does not reach this composition"
+    assert f"ideal diameter (ASTM A255): {beyond}\n" in answer.out
+    assert f"critical cooling rate at 700 degC (Maynier): {beyond}\n" in answer.out
 
 
 def test_the_document_is_json_without_nan() -> None:

@@ -196,6 +196,14 @@ def test_just_gives_the_sum_worked_by_hand() -> None:
     assert_allclose(curve.hardness_hrc, 30.75992, rtol=1e-9, atol=0.0)
 
 
+def test_just_is_silent_beyond_the_end_of_the_scale() -> None:
+    # 20 + 60 sqrt(1.04) = 81.2 at most: ISO 18265 ends at 68 HRC (memory)
+    far = np.array([10e-3, 80e-3])
+    curve = regressions.just_curve(grade("52100").composition, far, grain_astm=7.0)
+    assert np.isnan(curve.hardness_hrc).tolist() == [True, False]
+    assert "hardness = above 68 HRC to 10.00 mm" in " ".join(map(str, curve.notes))
+
+
 def test_just_is_silent_outside_five_to_eighty_millimetres() -> None:
     at = 1e-3 * np.array([4.9, 5.0, 80.0, 80.1])
     curve = regressions.just_curve(grade("4340").composition, at, grain_astm=12.0)
