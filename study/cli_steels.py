@@ -10,7 +10,7 @@ import click
 from midradius.study.cli_answer import answered, printable
 from midradius.thermo.certificate import Certificate, deviations, read_certificates
 from midradius.thermo.errors import InputFault
-from midradius.thermo.grades import GradeRow, find, row
+from midradius.thermo.grades import GradeRow, families, find, row
 from midradius.thermo.source import RangeNote
 from midradius.thermo.steel import Composition
 
@@ -124,6 +124,9 @@ def _nothing(text: str, family: str | None, carbon: tuple[float, float] | None) 
             row(text)
         except InputFault as unknown:
             remedy = f"{unknown.remedy.partition(' Or give')[0]} {remedy}"
+        same = [name for name in families() if name.casefold() == text.casefold()]
+        if same:
+            remedy = f"It is a family: write --family {same[0]}."
         return InputFault("TEXT", f'"{text}"', "part of the name of a shipped grade", remedy)
     filters = [f'"{text}"'] if text else []
     filters += [f"family {family}"] if family else []
@@ -133,8 +136,8 @@ def _nothing(text: str, family: str | None, carbon: tuple[float, float] | None) 
 
 
 def _head(item: GradeRow) -> str:
-    families = " ".join(item.families)
-    return f"{item.name:16} {item.number:6} {item.standard:13} {item.steel.status:10} {families:22}"
+    kinds = " ".join(item.families)
+    return f"{item.name:16} {item.number:6} {item.standard:13} {item.steel.status:10} {kinds:22}"
 
 
 def _amounts(composition: Composition) -> str:

@@ -184,6 +184,7 @@ BAD = {
     "no such file": (None, "there is no such file"),
     "empty": ("", "the file holds no rows"),
     "no head": ("1.5,57\n3,56\n", "line 1: distance column is missing"),
+    "distance without a unit": ("distance,hrc\n3,56\n", "distance_mm or distance_sixteenths_in"),
     "unit missing": ("depth,hrc\n3,56\n", "distance_mm or distance_sixteenths_in"),
     "no hardness": ("mm,hv\n3,556\n", "line 1: hardness column is missing"),
     "word": ("mm,hrc\n3,soft\n", 'line 2: hardness = "soft", but must be 0 to 68 HRC'),

@@ -48,6 +48,15 @@ def test_steels_are_filtered_by_text_family_and_carbon_together(call) -> None:
     assert "1010" in names_of(call("steels", "--carbon", ":0.12").out)
 
 
+def test_a_family_as_text_is_answered_with_its_option(call) -> None:  # type: ignore[no-untyped-def]
+    answer = call("steels", "Cast")
+    assert answer.code == 2
+    assert answer.err == (
+        'TEXT = "Cast", but must be part of the name of a shipped grade. '
+        "It is a family: write --family cast.\n"
+    )
+
+
 def test_a_steel_is_found_by_its_number(call) -> None:
     assert names_of(call("steels", "1.7225").out) == ["42CrMo4"]
 
