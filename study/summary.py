@@ -11,6 +11,7 @@ from dataclasses import asdict
 from importlib import metadata
 from typing import TYPE_CHECKING, Any, Literal
 
+from midradius.study import casekeys as keys
 from midradius.study.lengthtable import lengths, remark
 from midradius.study.needscales import shown
 from midradius.study.result import Position, Result, StageRecord, Verdict
@@ -193,7 +194,8 @@ def _needs(result: Result, console: "Console") -> None:
 def _remarks(verdicts: Sequence[Verdict]) -> list[str]:
     """What a reader of the verdicts must know: the close ones, remedies, and the bases."""
     close = sum(v.outcome == "too close to call" for v in verdicts)
-    lines = [f"{v.need}: {v.note}" for v in verdicts if v.note and v.outcome != "holds"]
+    told = [v for v in verdicts if v.note and (v.outcome != "holds" or v.quantity == keys.DEPTH)]
+    lines = [f"{v.need}: {v.note}" for v in told]
     if close:
         lines.insert(0, f"{close} of {len(verdicts)} too close to call: not shown to be met")
     of: dict[str, dict[str, None]] = {}

@@ -30,7 +30,7 @@ from midradius.thermo.soaked import OLD_RATE, Soaked
 from midradius.thermo.source import RangeNote
 from midradius.thermo.tempering import Temper, Tempered
 
-LEAST_OFF_HV = 0.5  # of self-tempering that is worth a note
+LEAST_OFF_HV = 5.0  # of self-tempering that is worth a note, half of a Rockwell unit
 
 
 @dataclass(frozen=True)
@@ -107,6 +107,7 @@ def worth(case: Asked, soaked: Soaked, history: Remains) -> Worth:
         notes=(
             *told,
             *tempering.range_notes(composition, history.phases, fresh, tempers),
+            *strength.range_notes(composition, left.fractions),
             *sizes.notes,
         ),
         cautions=embrittlement.cautions(composition, tempers, ae1=ae1) if tempers else (),
@@ -140,10 +141,10 @@ def _self_tempered(
     )
     note = RangeNote(
         autotemper.SOURCES[0].model,
-        "what martensite went through, as 1 h",
+        "heat left in the part, as a temper of 1 h",
         f"{at:.0f} degC",
-        f"{covered:.0f} degC, what the hardness as quenched covers; "
-        f"up to {off[most]:.0f} HV taken off",
+        f"up to {covered:.0f} degC, which hardness as quenched holds already; beyond it "
+        f"up to {off[most]:.0f} HV is taken off",
     )
     return softer, mixed, (note,)
 

@@ -31,16 +31,17 @@ coefficients remembered); all remembered.
 
 Holds for
 ---------
-Carbon-manganese steels, 0.3 to 0.9 % C for Gladman; hypoeutectoid steels of 450
-to 2350 MPa tensile strength (147 to 656 HV) for Pavlina & Van Tyne, outside of
-which the yield strength is nan.
+Carbon-manganese steels, 0.3 to 0.9 % C for Gladman, without precipitates: vanadium and
+niobium of microalloyed steels add to its yield strength and are not counted; hypoeutectoid
+steels of 450 to 2350 MPa tensile strength (147 to 656 HV) for Pavlina & Van Tyne, outside
+of which the yield strength is nan.
 """
 
 import numpy as np
 
 from midradius.thermo.arrays import Array
 from midradius.thermo.phases import AUSTENITE, BAINITE, CEMENTITE, FERRITE, MARTENSITE, PEARLITE
-from midradius.thermo.source import Source
+from midradius.thermo.source import RangeNote, Source
 from midradius.thermo.steel import Composition
 
 SOURCES = (
@@ -77,6 +78,9 @@ NITROGEN_PCT = 0.005  # where the composition gives none
 FINEST_SPACING = 0.05e-6  # m
 FINEST_FERRITE = 1e-6  # m
 EQUIVALENT_CAP_PCT = 0.40
+GLADMAN_CARBON_PCT = (0.3, 0.9)
+LEAST_PRECIPITATE_PCT = 0.03  # of V + Nb that strengthens ferrite-pearlite: estimate
+COUNTED = 0.05  # share of ferrite and pearlite below which their yield strength hardly counts
 INTERCEPT_TO_DIAMETER = 1.0 / 0.89  # mean intercept to planimetric diameter, ASTM E112
 PAVLINA_HV = (147.2, 656.1)  # 450 and 2350 MPa by its own tensile equation
 
@@ -213,3 +217,22 @@ def yield_strength(fractions: Array, hv_by_phase: Array, ferrite_pearlite_mpa: A
     soft_part = np.where(soft > 0.0, soft * ferrite_pearlite_mpa, 0.0)
     hard_part = np.where(hard > 0.0, hard * hard_mpa, 0.0)
     return np.asarray((soft_part + hard_part) / (soft + hard))
+
+
+def range_notes(composition: Composition, fractions: Array) -> tuple[RangeNote, ...]:
+    """Where the yield strength of ferrite-pearlite leaves its source.
+
+    ``fractions`` of mass, shape (n_phase, n_node): without 5 % of ferrite and pearlite at
+    any node there is nothing to note.
+    """
+    if float((fractions[FERRITE] + fractions[PEARLITE]).max()) < COUNTED:
+        return ()
+    model, notes = "yield strength of ferrite-pearlite", []
+    low, high = GLADMAN_CARBON_PCT
+    if not low <= composition.C <= high:
+        notes.append(RangeNote(model, "C", f"{composition.C:g} %", f"{low:g} to {high:g} %"))
+    precipitates = composition.V + composition.Nb
+    if precipitates >= LEAST_PRECIPITATE_PCT:
+        allowed = "steels without precipitates, whose share is not counted: stated too low"
+        notes.append(RangeNote(model, "V + Nb", f"{precipitates:g} %", allowed))
+    return tuple(notes)

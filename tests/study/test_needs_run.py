@@ -159,6 +159,15 @@ def test_the_summary_states_the_verdicts_before_everything_else(judged: Result) 
     assert "model error of yield: not measured: invented" in text
 
 
+def test_a_depth_that_holds_because_the_part_is_hard_throughout_says_so(result: Result) -> None:
+    depth = {"need": "hardened depth", "quantity": "hardened depth", "unit": "mm"}
+    verdict = replace(VERDICTS[0], **depth, outcome="holds", note="hardened through")  # type: ignore[arg-type]
+    out = io.StringIO()
+    wide = Console(file=out, width=140, color_system=None, force_terminal=False)
+    terminal(replace(result, verdicts=(verdict,)), wide)
+    assert "hardened depth: hardened through" in out.getvalue()
+
+
 def test_a_run_without_requirements_has_no_such_block(result: Result) -> None:
     out = io.StringIO()
     terminal(result, Console(file=out, width=140, color_system=None, force_terminal=False))

@@ -63,7 +63,7 @@ def test_a_surface_that_its_core_heats_again_is_softer_and_says_so() -> None:
     assert surface.phases["martensite"] > 0.9
     assert surface.hardness_hv < through.positions[0].hardness_hv - 10.0
     (note,) = told(taken_out)
-    said = re.search(r"as 1 h = (\d+) degC", note)
+    said = re.search(r"as a temper of 1 h = (\d+) degC", note)
     assert said is not None
     # From the temperatures of the run alone: all from when it left the water, by the
     # weight exp(-H / R T) of Maynier 1978 (memory), as the temperature that does it in 1 h.
