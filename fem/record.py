@@ -194,6 +194,9 @@ def read_record(path: Path) -> Record:
     """
     import h5py
 
+    if not path.is_file():
+        remedy = "There is no such file: name a result folder, or its record.h5."
+        raise InputFault("record", str(path), "a whole midradius record", remedy)
     try:
         with h5py.File(path, "r") as file:
             group = file[GROUP]

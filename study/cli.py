@@ -214,7 +214,9 @@ def _write_new(file: Path, content: str) -> None:
             "file", str(file), "a new name", "It exists already and was not touched."
         ) from None
     except OSError as fault:
-        raise InputFault("file", str(file), "a place that can be written", f"{fault}.") from fault
+        raise InputFault(
+            "file", str(file), "a place that can be written", f"{fault.strerror}."
+        ) from fault
 
 
 @cli.command()

@@ -9,9 +9,11 @@ from midradius.study.begin import Begun
 from midradius.study.case import Asked
 from midradius.study.heatsetup import HeatSetup
 from midradius.study.result import HeatingRecord, SoakFields, StageRecord
+from midradius.study.summary import duration
 from midradius.thermo.arrays import Array
 from midradius.thermo.austenite import REGIMES, Austenite
 from midradius.thermo.soaked import Soaked
+from midradius.thermo.units import show
 
 # A grain coarser than this is coarser than heat treaters accept of a fine-grain steel
 # (ASTM 5 to 8 fine, 1 to 5 coarse: ASTM A255 and McQuaid-Ehn practice, remembered).
@@ -77,18 +79,18 @@ def soak_text(case: Asked, begun: Begun) -> str:
     """One line: how it was soaked, and what that left."""
     soaked = begun.soaked
     at = (case.soak.at or 0.0) - ZERO_DEGC
-    hours = (case.soak.time or 0.0) / 3600.0
-    text = f"{at:.0f} degC, {hours:.3g} h"
+    text = f"{at:.0f} degC, {show(case.soak.time or 0.0, 'duration')}"
     if begun.heating is None:
         left = soaked.kinds[0]
         text += f": {left.regime} austenite with {left.carbon_pct:.3f} % C, "
         text += f"grain ASTM {left.grain_astm:.1f}"
     else:
-        heated = begun.heating.stages[-2].end / 3600.0
-        text += f" after {heated:.3g} h of heating: reached {_span(soaked.hottest - ZERO_DEGC, 0)}"
-        text += f" degC; {' and '.join(_regimes(soaked))} with {_span(soaked.carbon_pct, 3)} % C"
-        if soaked.austenitised.any():
-            text += f", grain ASTM {_span(soaked.grain_astm, 1)}"
+        heated = duration(begun.heating.stages[-2].end)
+        text += f" after {heated} of heating: reached {_span(soaked.hottest - ZERO_DEGC, 0)} degC; "
+        if not soaked.austenitised.any():
+            return text + "not austenitised, ferrite and pearlite as before"
+        text += f"{' and '.join(_regimes(soaked))} with {_span(soaked.carbon_pct, 3)} % C"
+        text += f", grain ASTM {_span(soaked.grain_astm, 1)}"
     for name, part in (("ferrite", soaked.ferrite), ("cementite", soaked.cementite)):
         if part.max() > 0.0:
             text += f", {_span(100.0 * part, 1)} % {name} left"

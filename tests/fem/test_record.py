@@ -172,6 +172,12 @@ def test_a_file_cut_short_is_refused_with_a_sentence(tmp_path: Path, share: floa
             reader(path)
 
 
+def test_a_missing_record_is_told_without_the_words_of_its_library(tmp_path: Path) -> None:
+    with pytest.raises(InputFault) as told:
+        read_record(tmp_path / "none.h5")
+    assert told.value.remedy == "There is no such file: name a result folder, or its record.h5."
+
+
 def test_another_hdf5_file_and_a_missing_one_are_refused(tmp_path: Path) -> None:
     with h5py.File(tmp_path / "other.h5", "w") as file:
         file["x"] = 1.0

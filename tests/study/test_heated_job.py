@@ -151,6 +151,7 @@ def test_what_never_became_austenite_stays_soft_whatever_the_quench() -> None:
     core = next(p for p in result.positions if p.name == "core")
     assert core.austenite_grain_astm is None and core.austenite_grain_um is None
     assert any(line.startswith("Underheated: ") for line in result.cautions)
+    assert " min" in result.soak and " of heating: reached " in result.soak
     assert any("not austenitised" in note.value for note in result.notes)
     surface, at_core = result.verdicts
     assert surface.value is not None and at_core.value is None
