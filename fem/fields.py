@@ -24,7 +24,7 @@ float64, nan kept. Connectivity is int32 where it fits: half the bytes.
 """
 
 import os
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from xml.sax.saxutils import quoteattr
@@ -32,6 +32,7 @@ from xml.sax.saxutils import quoteattr
 import numpy as np
 from numpy.typing import NDArray
 
+from midradius.fem.meshraw import TURNED_WEDGE
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
 
@@ -128,6 +129,15 @@ def _beside(name: str, ours: set[str]) -> str:
     return f"given {name}" if name in ours else name
 
 
+def for_meshio(cells: Sequence[tuple[str, IntArray]]) -> list[tuple[str, IntArray]]:
+    """Blocks whose corners meshio then writes to VTK formats in the order they have here.
+
+    meshio turns wedges to run as in vtk up to 9.6. From 9.7 on vtk has them as all other
+    formats do, and negative volumes for the turned ones.
+    """
+    return [(kind, block[:, TURNED_WEDGE] if kind == "wedge" else block) for kind, block in cells]
+
+
 def _narrow(block: IntArray) -> IntArray:
     fits = block.max() <= np.iinfo(np.int32).max
     return block.astype(np.int32) if fits else block
@@ -142,7 +152,7 @@ def _write_vtu(
 ) -> None:
     import meshio
 
-    mesh = meshio.Mesh(points, cells, dict(data), dict(of_cells))
+    mesh = meshio.Mesh(points, for_meshio(cells), dict(data), dict(of_cells))
     meshio.write(path, mesh, file_format="vtu", binary=True, compression="zlib")
 
 

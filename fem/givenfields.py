@@ -14,7 +14,7 @@ from pathlib import Path
 
 import numpy as np
 
-from midradius.fem.fields import FINAL, UNIT_ENDINGS
+from midradius.fem.fields import FINAL, UNIT_ENDINGS, for_meshio
 from midradius.fem.histories import GivenMesh
 from midradius.fem.meshraw import SHAPES, family
 from midradius.thermo.arrays import Array
@@ -56,7 +56,7 @@ def write_on_mesh(folder: Path, mesh: GivenMesh, at_end: Mapping[str, Array]) ->
     path = folder / FINAL
     written = meshio.Mesh(
         mesh.points,
-        list(mesh.cells),
+        for_meshio(mesh.cells),
         point_data={**{k: np.array(v) for k, v in mesh.point_data.items()}, **own},
         cell_data=_by_block(mesh),
     )

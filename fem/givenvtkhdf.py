@@ -19,9 +19,8 @@ from midradius.fem.meshvtu import CELLS
 from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
 
-_WEDGE, _PIXEL, _VOXEL = 13, 8, 11
+_PIXEL, _VOXEL = 8, 11
 _ORDER: dict[int, tuple[str, list[int]]] = {
-    _WEDGE: ("wedge", [0, 2, 1, 3, 5, 4]),
     _PIXEL: ("quad", [0, 1, 3, 2]),
     _VOXEL: ("hexahedron", [0, 1, 3, 2, 4, 5, 7, 6]),
 }

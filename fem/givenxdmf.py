@@ -30,9 +30,12 @@ class XdmfSeries:
     def _open(self) -> Any:
         import meshio
 
+        from midradius.fem.meshlibrary import mended
+
         reader = meshio.xdmf.TimeSeriesReader(self._path)
         self._refuse_moving(reader.collection)
-        reader.read_points_cells()
+        with mended():
+            reader.read_points_cells()
         return reader
 
     def _refuse_moving(self, grids: Any) -> None:

@@ -21,6 +21,7 @@ _CARDS: Mapping[str, Mapping[int, str]] = {
     **dict.fromkeys(("CQUAD4", "CQUADR", "CQUADX4"), {4: "quad"}),
     **dict.fromkeys(("CTRIA6", "CTRIAX6", "CTRAX6"), {6: "triangle6"}),
     **dict.fromkeys(("CQUAD8", "CQUADX8"), {8: "quad8"}),
+    **dict.fromkeys(("CQUAD", "CQUADX", "CQUAD9"), {4: "quad", 8: "quad8", 9: "quad9"}),
     "CTETRA": {4: "tetra", 10: "tetra10"},
     "CPENTA": {6: "wedge", 15: "wedge15"},
     "CHEXA": {8: "hexahedron", 20: "hexahedron20"},

@@ -215,7 +215,7 @@ def _kind(file: ExodusFile, variable: str, n: int) -> tuple[str, bool]:
     raise refuse(
         file.name,
         "a mesh of triangles, quads, tetrahedra, hexahedra, wedges or pyramids",
-        f"It holds {title} cells with {n} nodes.",
+        f"It holds {title or 'unnamed'} cells with {n} nodes.",
     )
 
 

@@ -21,7 +21,7 @@ from typing import Any, TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
-from midradius.fem.meshraw import SHAPES, Group, RawMesh, family, refuse
+from midradius.fem.meshraw import SHAPES, TURNED_WEDGE, Group, RawMesh, family, refuse
 from midradius.thermo.arrays import IntArray
 from midradius.thermo.errors import InputFault
 
@@ -57,6 +57,7 @@ _OTHERS: Mapping[str, str] = {
     ".pvd": "This is an index of a series: name one of its VTU files.",
     ".pvtu": "This is an index of pieces: write them as one VTU file.",
 }
+_AGAIN = "Write it once more, or in another format such as .vtu."
 _TURNED = {"pixel": ("quad", [0, 1, 3, 2]), "voxel": ("hexahedron", [0, 1, 3, 2, 4, 5, 7, 6])}
 
 
@@ -99,10 +100,19 @@ def guarded(action: Callable[[], T], name: str, what: str) -> tuple[T, tuple[str
     except InputFault:
         raise
     except (Exception, SystemExit) as error:
-        lines = [" ".join(said.getvalue().split()), str(error)]
+        lines = [" ".join(said.getvalue().split()), _told(error)]
         reason = next((line for line in lines if line and line != "1"), type(error).__name__)
-        raise refuse(name, f"a whole {what} file", f"It could not be read: {reason}.") from error
+        remedy = f"It could not be read: {reason.rstrip('.')}. {_AGAIN}"
+        raise refuse(name, f"a whole {what} file", remedy) from error
     return found, tuple(line.strip() for line in said.getvalue().splitlines() if line.strip())
+
+
+def _told(error: BaseException) -> str:
+    """What an error says; of a missing key the bare text is the key alone."""
+    if isinstance(error, KeyError) and error.args:
+        text = str(error.args[0])
+        return text if " " in text else f"its reader does not know {text}, which it holds"
+    return str(error)
 
 
 def _present(path: Path) -> None:
@@ -151,11 +161,12 @@ def _by_library(path: Path, format: str) -> RawMesh:
     def read() -> Any:
         import meshio
 
-        # it drops voxels and fails on pixels, for want of these entries
-        meshio._vtk_common.vtk_to_meshio_type.setdefault(11, "voxel")
-        for kind, n, dim in (("pixel", 4, 2), ("voxel", 8, 3)):
-            meshio._common.num_nodes_per_cell.setdefault(kind, n)
-            meshio._mesh.topological_dimension.setdefault(kind, dim)
+        from midradius.fem.meshlibrary import mended
+
+        with mended():
+            return found(meshio)
+
+    def found(meshio: Any) -> Any:
         if format == "xdmf" and b'CollectionType="Temporal"' in path.read_bytes()[:1_000_000]:
             with meshio.xdmf.TimeSeriesReader(path) as series:
                 points, cells = series.read_points_cells()
@@ -173,6 +184,8 @@ def _converted(mesh: Any, path: Path, format: str, said: tuple[str, ...]) -> Raw
         if kind in _TURNED:
             kind, order = _TURNED[kind]
             table = table[:, order]
+        elif format == "vtk" and kind == "wedge":
+            table = table[:, TURNED_WEDGE]  # meshio has turned it: back to the order of the file
         cells.append((kind, table))
     strange = [kind for kind, table in cells if len(table) and not family(kind)]
     if strange:

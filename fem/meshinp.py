@@ -196,14 +196,16 @@ class _Reader:
         n = int(re.sub(r"\D", "", kind) or SHAPES[family(kind)].n_corner)
         joined = ",".join(line.strip().rstrip(",") for line in block.lines)
         flat = _integers(joined, self.name, f"*ELEMENT, TYPE={name}")
-        if len(flat) % (n + 1):
+        # numbers that repeat: lines longer or shorter than the type says, read out of step
+        if len(flat) % (n + 1) or len(np.unique(flat[:: n + 1])) < len(flat) // (n + 1):
             raise refuse(
                 self.name,
                 f"a deck whose {name} elements have {n} nodes each",
-                "An element line is cut short, or has nodes too many.",
+                "An element line is cut short, has nodes too many, or a number stands twice.",
             )
         table = flat.reshape(-1, n + 1)
-        self.space.elements.append((kind, table[:, 0].copy(), table[:, 1:].copy()))
+        nodes = table[:, [1, 3, 2]] if kind == "line3" else table[:, 1:]  # end, middle, end
+        self.space.elements.append((kind, table[:, 0].copy(), nodes.copy()))
         if "ELSET" in block.options:
             self.space.element_sets.setdefault(block.options["ELSET"], []).append(table[:, 0])
 

@@ -43,6 +43,9 @@ SHAPES: Mapping[str, Shape] = {
 }
 """Facets in the order in which input decks of the .inp family number them."""
 
+TURNED_WEDGE = [0, 2, 1, 3, 5, 4]
+"""Corners of a wedge as vtk up to 9.6 had them, and meshio still writes; its own inverse."""
+
 _FAMILY = re.compile(r"[a-z]+")
 
 

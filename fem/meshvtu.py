@@ -37,6 +37,7 @@ CELLS: dict[int, str] = {
     9: "quad",
     10: "tetra",
     12: "hexahedron",
+    13: "wedge",
     14: "pyramid",
     21: "line3",
     22: "triangle6",
@@ -53,12 +54,10 @@ CELLS: dict[int, str] = {
     37: "pyramid19",
 }
 _ANY_ORDER = {68: "line", 69: "triangle", 70: "quad", 71: "tetra", 72: "hexahedron", 73: "wedge"}
-_PIXEL, _VOXEL, _WEDGE, _POLYGON = 8, 11, 13, 7
-# A wedge of VTK has its first triangle the other way round.
+_PIXEL, _VOXEL, _POLYGON = 8, 11, 7
 _TURNED = {
     _PIXEL: ("quad", [0, 1, 3, 2]),
     _VOXEL: ("hexahedron", [0, 1, 3, 2, 4, 5, 7, 6]),
-    _WEDGE: ("wedge", [0, 2, 1, 3, 5, 4]),
 }
 _THIN = {2: "poly-vertex", 4: "poly-line"}
 MOST_BLOCKS = 2000

@@ -169,3 +169,29 @@ def test_content_that_does_not_fit_together_is_refused_before_a_file_is_made(
         series(tmp_path, **changes)
     assert fault.value.quantity == quantity
     assert list(tmp_path.iterdir()) == []
+
+
+def test_a_wedge_keeps_the_order_of_its_corners_in_every_format(tmp_path: Path) -> None:
+    # (0, 1, 2) seen from (3, 4, 5) runs counter-clockwise: as vtk 9.7 documents its wedge, and
+    # as gmsh, .inp and bulk data decks have it; up to 9.6 vtk had it the other way round
+    import h5py
+
+    from midradius.fem.vtkhdf import HdfSeries
+
+    points = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1], [1, 0, 1], [0, 1, 1]], float)
+    cells = (("wedge", np.arange(6).reshape(1, 6)),)
+    temps = np.full((1, 6), 20.0)
+    write_series(
+        tmp_path,
+        points_mm=points,
+        cells=cells,
+        times_s=np.zeros(1),
+        each_time={"temperature_degC": temps},
+        at_end={},
+    )
+    assert pyvista.read(tmp_path / "final.vtu").cell_connectivity.tolist() == list(range(6))
+    with HdfSeries(tmp_path / "f.vtkhdf", points_mm=points, cells=cells) as series:
+        series.add(0.0, {"temperature_degC": temps[0]})
+        series.finish({})
+    with h5py.File(tmp_path / "f.vtkhdf") as file:
+        assert file["VTKHDF/Connectivity"][:].tolist() == list(range(6))

@@ -284,3 +284,18 @@ def test_the_distance_to_triangles_and_segments_is_that_of_every_pair():
     brute = np.array([np.linalg.norm(cloud - a, axis=1).min() for a in asked])
     assert np.all(gap <= brute + 1e-12)
     assert_allclose(gap, brute, rtol=0.0, atol=0.03)
+
+
+def test_wedges_that_all_run_as_in_older_files_of_vtk_are_turned_without_a_word():
+    from midradius.fem.meshhealth import turned
+
+    points = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1], [1, 0, 1], [0, 1, 1]], float)
+    tetra = ("tetra", np.array([[0, 1, 2, 3]]))
+    old = np.array([[0, 2, 1, 3, 5, 4]])
+    cells, findings = turned(points, (tetra, ("wedge", old)))
+    assert findings == []
+    np.testing.assert_array_equal(cells[1][1], [[3, 5, 4, 0, 2, 1]])
+    _, findings = turned(points, (tetra, ("wedge", np.concatenate([old, [[0, 1, 2, 3, 4, 5]]]))))
+    assert [finding.what for finding in findings] == [
+        "1 of 3 cells run the other way round than the rest"
+    ]

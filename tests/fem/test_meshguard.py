@@ -116,8 +116,7 @@ def grid_of_vtk(mixed=True):
     for k in range(60):
         kind, n = kinds[k // 4 % len(kinds)]
         row = np.arange(k, k + n)
-        # one order for wedges: that of gmsh and of .inp decks, not VTK's
-        cells.append(row[[0, 2, 1, 3, 5, 4]] if kind == 13 else row)
+        cells.append(row)
         grid.InsertNextCell(kind, n, [int(i) for i in row])
     for owner, count in ((grid.GetPointData(), len(xyz)), (grid.GetCellData(), 60)):
         array = numpy_to_vtk(np.sin(np.arange(count)) * 1e3, deep=1)
@@ -419,3 +418,93 @@ def test_lost_cells_are_noticed(tmp_path, monkeypatch):
     monkeypatch.setitem(meshio._helpers.reader_map, "vtk", loses_one)
     with pytest.raises(InputFault, match="1 of 2 were"):
         read_mesh(path)
+
+
+def test_a_line_of_second_order_has_its_middle_node_second_in_a_deck(tmp_path):
+    # T3D3: ends are the first and the last node
+    rows = "".join(f"{k + 1},{x},{y}\n" for k, (x, y) in enumerate([(0, 0), (2, 0), (0, 2)]))
+    middles = "4,1.,0.\n5,1.,1.\n6,0.,1.\n"
+    deck = f"*NODE\n{rows}{middles}*ELEMENT,TYPE=CPS6\n1,1,2,3,4,5,6\n"
+    deck += "*ELEMENT,TYPE=T3D3,ELSET=below\n2,1,4,2\n"
+    mesh = read_inp(deck, "deck.inp")
+    line = next(block for kind, block in mesh.cells if kind == "line3")
+    np.testing.assert_array_equal(mesh.point_ids[line], [[1, 2, 4]])
+
+
+def test_element_lines_of_another_length_than_their_type_are_refused():
+    nodes = "".join(f"{k},{k}.,{k * k}.,0.\n" for k in range(1, 20))
+    rows = "".join(
+        ", ".join(str(k) for k in (n, *range(1, 16))) + ",\n16, 17, 18\n" for n in range(1, 8)
+    )
+    with pytest.raises(InputFault) as caught:
+        read_inp(f"*NODE\n{nodes}*ELEMENT,TYPE=C3D6\n{rows}", "deck.inp")
+    assert str(caught.value) == (
+        'mesh file = "deck.inp", but must be a deck whose C3D6 elements have 6 nodes each. '
+        "An element line is cut short, has nodes too many, or a number stands twice."
+    )
+
+
+@pytest.fixture(scope="module")
+def second_order_of_gmsh(tmp_path_factory):
+    """A plate of 9-node quads without groups, in the formats of gmsh."""
+    gmsh = pytest.importorskip("gmsh")
+    folder = tmp_path_factory.mktemp("quad9")
+    gmsh.initialize(interruptible=False)
+    try:
+        gmsh.option.setNumber("General.Terminal", 0)
+        gmsh.model.occ.addRectangle(0, 0, 0, 3.0, 2.0)
+        gmsh.model.occ.synchronize()
+        for _, tag in gmsh.model.getEntities(1):
+            gmsh.model.mesh.setTransfiniteCurve(tag, 5)
+        gmsh.model.mesh.setTransfiniteSurface(1)
+        gmsh.model.mesh.setRecombine(2, 1)
+        gmsh.model.mesh.generate(2)
+        gmsh.model.mesh.setOrder(2)
+        for suffix in ("bdf", "med", "msh"):
+            try:
+                gmsh.write(str(folder / f"plate.{suffix}"))
+            except Exception:  # this build of gmsh lacks the format
+                assert suffix == "med"
+    finally:
+        gmsh.finalize()
+    return folder
+
+
+@pytest.mark.parametrize("suffix", ["bdf", "med", "msh"])
+def test_quads_of_nine_nodes_without_groups_are_read(second_order_of_gmsh, suffix):
+    path = second_order_of_gmsh / f"plate.{suffix}"
+    if not path.exists():
+        pytest.skip("this build of gmsh lacks the format")
+    mesh = read_mesh(path)
+    quads = np.concatenate([block for kind, block in mesh.cells if kind == "quad9"])
+    assert quads.shape == (16, 9)
+    corners = mesh.points[quads[:, :4], :2]
+    ahead, up = corners[:, 2] - corners[:, 0], corners[:, 3] - corners[:, 1]
+    areas = 0.5 * np.abs(ahead[:, 0] * up[:, 1] - ahead[:, 1] * up[:, 0])
+    np.testing.assert_allclose(areas.sum(), 6.0, rtol=1e-5, atol=0.0)
+
+
+def test_a_mixed_topology_of_second_order_is_read_and_meshio_is_left_as_it_was(tmp_path):
+    import meshio
+    from meshio.xdmf import main
+
+    before = main.translate_mixed_cells
+    points = np.array([[0, 0], [2, 0], [2, 2], [0, 2], [1, 0], [2, 1], [1, 2], [0, 1], [1, 1]])
+    cells = [("triangle6", [[0, 1, 3, 4, 8, 7]]), ("line3", [[0, 1, 4]])]
+    meshio.write(tmp_path / "part.xdmf", meshio.Mesh(np.array(points, dtype=float), cells))
+    mesh = read_mesh(tmp_path / "part.xdmf")
+    assert [kind for kind, _ in mesh.cells] == ["triangle6", "line3"]
+    np.testing.assert_array_equal(mesh.cells[0][1], cells[0][1])
+    np.testing.assert_array_equal(mesh.cells[1][1], cells[1][1])
+    assert main.translate_mixed_cells is before
+
+
+def test_a_wedge_of_a_legacy_file_keeps_the_order_of_its_corners(tmp_path):
+    points = "0 0 0 1 0 0 0 1 0 0 0 1 1 0 1 0 1 1"
+    (tmp_path / "part.vtk").write_text(
+        "# vtk DataFile Version 2.0\nwedge\nASCII\nDATASET UNSTRUCTURED_GRID\n"
+        f"POINTS 6 double\n{points}\nCELLS 1 7\n6 0 1 2 3 4 5\nCELL_TYPES 1\n13\n"
+    )
+    np.testing.assert_array_equal(
+        read_mesh(tmp_path / "part.vtk").cells[0][1], [[0, 1, 2, 3, 4, 5]]
+    )
