@@ -61,7 +61,8 @@ class Fluid:
 
     ``temp`` (n,) [K] ascending with ``density`` [kg/m3], ``heat_capacity``
     [J/(kg K)] and ``conductivity`` [W/(m K)] (nan where not known), (n,) each.
-    ``flash`` [K] is None where there is none. ``work_min`` to ``work_max`` [K] is
+    ``flash`` [K] is None where there is none, ``flash_given`` says that it is of this very
+    oil and not only usual for its kind. ``work_min`` to ``work_max`` [K] is
     the usual working range, ``rise_usual`` [K] the usual limit of one load.
     """
 
@@ -73,6 +74,7 @@ class Fluid:
     conductivity: Array
     source: Source
     flash: float | None = None
+    flash_given: bool = False
     work_min: float = ZERO_DEGC
     work_max: float = ZERO_DEGC + 100.0
     rise_usual: float = 40.0

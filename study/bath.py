@@ -152,7 +152,7 @@ def march(
     end: float,
     volume: Array | None = None,
     cooling: Array | None = None,
-    cooler_fails_at: float = np.inf,
+    cooler_fails_at: Array | float = np.inf,
     longest: float = LONGEST_STEP,
 ) -> BathRun:
     """March baths from 0 to ``end`` [s].
@@ -166,7 +166,7 @@ def march(
     volume, cooling
         Factors on the tank's mass and area, and on its cooler, (n_bath,); 1 by default.
     cooler_fails_at
-        From then on no cooler [s].
+        From then on no cooler [s], one moment or (n_bath,).
     longest
         Longest step [s].
     """
@@ -188,6 +188,7 @@ def march(
     contents = [first]
     begun: dict[int, Array] = {}
     starts = np.full((len(loads), n_bath), np.nan)
+    fails = np.broadcast_to(np.asarray(cooler_fails_at, dtype=np.float64), (n_bath,))
     order = sorted(range(len(loads)), key=lambda k: loads[k].time)
     for now, after in zip(time[:-1], time[1:], strict=True):
         span = after - now
@@ -206,7 +207,7 @@ def march(
             given += begun[k][row + 1] - begun[k][row]
         source = np.zeros_like(mass)
         source[:, layer] = given - dragged
-        open_now = now < cooler_fails_at - 1e-9
+        open_now = np.where(now < fails - 1e-9, 1.0, 0.0)
         content, temp, moved, lost = rates.step(content, temp, source, span, open_now)
         heats.append(heats[-1] + np.array([given, *moved, dragged]))
         water = water + lost
@@ -238,20 +239,23 @@ class _Rates:
         self.spread = volume
         self.per_kelvin = cooling * (tank.cooler.per_kelvin if tank.cooler else 0.0)
 
-    def of(self, temp: Array, cooled: float) -> tuple[Array, Array, Array]:
-        """Heater, cooler and surface [W] of layer temperatures, (n_bath,) each."""
+    def of(self, temp: Array, cooled: Array) -> tuple[Array, Array, Array]:
+        """Heater, cooler and surface [W] of layer temperatures, (n_bath,) each.
+
+        ``cooled`` (n_bath,) is 1 where the cooler works and 0 where it failed.
+        """
         tank = self.tank
         low, high = temp[:, 0], temp[:, -1]
         heater = tank.heater * np.clip((tank.heater_set - low) / BAND, 0.0, 1.0)
         cooler = np.zeros(len(temp))
-        if tank.cooler is not None and cooled > 0.0:
+        if tank.cooler is not None:
             opened = np.clip((high - tank.cooler_start) / BAND, 0.0, 1.0)
             hotter = np.maximum(high - tank.cooler.coolant_in, 0.0)
-            cooler = self.per_kelvin * opened * hotter
+            cooler = cooled * self.per_kelvin * opened * hotter
         surface = self.spread * np.interp(high, _LOSS_GRID, self.loss)
         return heater, cooler, surface
 
-    def into(self, temp: Array, cooled: float) -> tuple[Array, Array]:
+    def into(self, temp: Array, cooled: Array) -> tuple[Array, Array]:
         """Heat into each layer [W], and (heater, agitator, cooler, surface) [W]."""
         tank = self.tank
         heater, cooler, surface = self.of(temp, cooled)
@@ -261,7 +265,7 @@ class _Rates:
         rate[:, -1] -= surface
         return rate, np.array([heater, agitator, cooler, surface])
 
-    def between(self, temp: Array, cooled: float) -> Array:
+    def between(self, temp: Array, cooled: Array) -> Array:
         """Heat that flows carry between layers [W], (n_bath, n_layer); its sum is 0."""
         tank = self.tank
         rate = np.zeros_like(temp)
@@ -271,17 +275,17 @@ class _Rates:
         swapped = tank.mixing * (h[:, :-1] - h[:, 1:])
         rate[:, 1:] += swapped
         rate[:, :-1] -= swapped
-        if tank.cooler is not None and cooled > 0.0 and tank.cooler.bath_flow > 0.0:
-            flow = tank.cooler.bath_flow  # from the top through the cooler to the bottom
+        if tank.cooler is not None and tank.cooler.bath_flow > 0.0:
+            flow = cooled * tank.cooler.bath_flow  # from the top through the cooler to the bottom
             rate[:, 0] += flow * (h[:, -1] - h[:, 0])
-            rate[:, 1:] += flow * (h[:, :-1] - h[:, 1:])
+            rate[:, 1:] += flow[:, None] * (h[:, :-1] - h[:, 1:])
         return rate
 
     def step(
-        self, content: Array, temp: Array, source: Array, span: float, cooled: bool
+        self, content: Array, temp: Array, source: Array, span: float, cooled: Array
     ) -> tuple[Array, Array, Array, Array]:
         """One step; the new content and temperatures, heats moved [J], water lost [kg]."""
-        fluid, on = self.tank.fluid, float(cooled)
+        fluid, on = self.tank.fluid, cooled
         rate0, parts0 = self.into(temp, on)
         fixed = content + source + span * self.between(temp, on)
         known = fixed + (1.0 - THETA) * span * rate0

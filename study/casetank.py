@@ -37,7 +37,7 @@ def tank_blocks(
         top.missing("load", "given beside a tank", "Write [load] with pieces = 6.")
     if top.has("shift") and not top.has("tank"):
         top.fault("shift", "left out where there is no tank", "Add [tank] with its volume.")
-    if top.has("tank") and route and tank_stage(route) is None:
+    if top.has("tank") and route and not top.notes.has(("route",)) and tank_stage(route) is None:
         remedy = "A tank needs a quench in oil, water, brine, polymer, salt or a film curve."
         top.fault("tank", "left out where no stage is a quench in a liquid", remedy)
     return load, tank, shift

@@ -30,7 +30,7 @@ _EPILOG = """\b
 Exit codes:
   0  done
   1  done, but a requirement of the case fails (too close to call is 0), or a
-     tank is not acceptable
+     tank is not acceptable or not judged in full
   2  bad input: nothing was written
   3  the solver gave up: nothing was written
 130  interrupted: nothing was written

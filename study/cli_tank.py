@@ -23,7 +23,9 @@ The case needs [load] and [tank]; [[shift]] gives the loads of a day. The folder
   bath.png, load_heat.png, sizing.png
 
 \b
-Exit code 1: the design is not acceptable (limit, flash point, level, rise, readiness).
+Exit code 1: the design is not acceptable (limit, flash point, film, level, rise,
+readiness), or what decides it could not be judged: give flash_point of the oil, and
+length, width and depth of the tank.
 """
 
 

@@ -70,6 +70,11 @@ class LoadKind:
         """All that goes in [kg]."""
         return sum(body.mass for body in self.bodies)
 
+    @property
+    def stay(self) -> float:
+        """The longest that it is in the bath, over the films [s]."""
+        return max(g.stay for pair in self.heats for g in pair)
+
     def immersion(self, time: float, variant: IntArray, *, of_any_tank: bool = False) -> Immersion:
         """This load at ``time`` [s] in baths of the film variants ``variant`` (n_bath,).
 
@@ -241,39 +246,59 @@ def through(
 
 @dataclass(frozen=True)
 class Failure:
-    """The cooler fails as the worst load goes in: hottest [K] under that load alone, and
-    when [s] after the failure the limit is passed if loads go on (nan: never that day)."""
+    """The cooler fails just as a load goes in, that load whose bath then gets hottest.
+
+    ``at`` [s] is that load's time; ``hottest`` [K] under it alone, ``band`` over the film
+    variants. If loads go on: the hottest bath [K] of any such failure, and the shortest
+    time [s] until the limit is passed (nan: never that day).
+    """
 
     at: float
     hottest: float
+    band: tuple[float, float]
     hottest_if_loads_go_on: float
     passes_limit_after: float
 
 
-def cooler_failure(tank: Tank, shift: Shift, *, limit: float) -> Failure | None:
-    """What a failed cooler does to the worst load of the periodic day; None without one."""
+def cooler_failure(
+    tank: Tank, loads: Sequence[tuple[LoadKind, float]], shift: Shift, *, limit: float
+) -> Failure | None:
+    """What a failed cooler does to the loads of the periodic day; None without a cooler.
+
+    A failure at immersion is the worst of those while the load is in: every later one
+    lets the cooler take out more. ``loads`` are kinds with their times [s] in order;
+    the baths of ``shift`` are the film variants.
+    """
     if tank.cooler is None:
         return None
-    worst = max(shift.loads, key=lambda load: _peak(shift.steady, load))
-    later = [load.time for load in shift.loads if load.time > worst.time]
-    until = min([*later, shift.period])
+    n_variant = shift.steady.temp.shape[1]
+    variant = np.tile(np.arange(n_variant), len(loads))
+    times = np.array([time for _, time in loads])
     run = march(
         tank,
-        shift.loads,
-        start=shift.steady.temp[0],
+        [kind.immersion(time, variant) for kind, time in loads],
+        start=np.tile(shift.steady.temp[0], (len(loads), 1)),
         end=shift.period,
-        cooler_fails_at=worst.time,
+        cooler_fails_at=np.repeat(times, n_variant),
     )
-    hottest = run.hottest.max(axis=1)
-    alone = float(hottest[(run.time >= worst.time) & (run.time <= until)].max())
-    over = run.time[(hottest > limit) & (run.time >= worst.time)]
-    after = float(over[0] - worst.time) if len(over) else float("nan")
-    return Failure(worst.time, alone, float(hottest[run.time >= worst.time].max()), after)
-
-
-def _peak(run: BathRun, load: Immersion) -> float:
-    inside = (run.time >= load.time) & (run.time <= load.time + load.stay)
-    return float(run.hottest[inside].max())
+    hottest = run.hottest.reshape(len(run.time), len(loads), n_variant)
+    alone, going_on, passed = [], [], []
+    for k, time in enumerate(times):
+        until = np.min(times[times > time], initial=shift.period)
+        since = run.time >= time
+        alone.append(hottest[since & (run.time <= until), k].max(axis=0))
+        going_on.append(float(hottest[since, k].max()))
+        over = run.time[since & (hottest[:, k].max(axis=1) > limit)]
+        passed.append(float(over[0] - time) if len(over) else np.inf)
+    worst = int(np.argmax([one.max() for one in alone]))
+    soonest = min(passed)
+    return Failure(
+        at=float(times[worst]),
+        hottest=float(alone[worst][0]),
+        band=(float(alone[worst].min()), float(alone[worst].max())),
+        hottest_if_loads_go_on=max(going_on),
+        passes_limit_after=soonest if np.isfinite(soonest) else float("nan"),
+    )
 
 
 @dataclass(frozen=True)

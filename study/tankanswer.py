@@ -1,7 +1,7 @@
 """The answer of ``midradius tank``: load and bath as one, the day, the size, the checks."""
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -54,6 +54,7 @@ class TankAnswer:
     tank: Tank
     fluid: Fluid
     flash: float | None
+    film_max: float | None
     limits: Limits
     uncertainty_pct: float
     kinds: tuple[LoadKind, ...]
@@ -78,8 +79,13 @@ class TankAnswer:
 
     @property
     def acceptable(self) -> bool:
-        """Whether no check is missed."""
-        return tanksafety.acceptable(self.checks)
+        """Whether every check was judged and is met."""
+        return self.verdict == "acceptable"
+
+    @property
+    def verdict(self) -> tanksafety.Verdict:
+        """Acceptable, not acceptable, or not judged in full."""
+        return tanksafety.verdict(self.checks)
 
     @property
     def own_band(self) -> tuple[tuple[float, float], tuple[float, float]]:
@@ -96,7 +102,9 @@ class TankAnswer:
     @property
     def limit_is_safe(self) -> bool:
         """Whether the limit of the bath is one that a size may be given for."""
-        return tanksafety.limit_is_safe(self.fluid, flash=self.flash, limit=self.limits.bath)
+        return tanksafety.limit_is_safe(
+            self.fluid, flash=self.flash, limit=self.limits.bath, film_max=self.film_max
+        )
 
     @property
     def hottest(self) -> Array:
@@ -150,6 +158,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
     loads.sort(key=lambda item: item[1])
     tell("day")
     period = given.period or DAY
+    overlapping = _in_time(loads, period)
     day = shift.through(
         tank,
         [kind.immersion(time, np.arange(len(factors))) for kind, time in loads],
@@ -158,9 +167,8 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         repeats=bool(case.shift),
     )
     rows = shift.loads_in(day.steady, day.loads, period)
-    nominal = replace_runs(day)
-    failure = shift.cooler_failure(tank, nominal, limit=limits.bath)
-    owns, core, gap = _own(bodies, tank, nominal, bath, factors, coupled=given.coupled)
+    failure = shift.cooler_failure(tank, loads, day, limit=limits.bath)
+    owns, core, gap = _own(bodies, tank, day, bath, factors, coupled=given.coupled)
     volume = np.ones(len(factors))
     occupied = np.maximum(
         baths.level_volume(tank, day.first, day.loads, volume).max(axis=0),
@@ -183,6 +191,8 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
     checks = tanksafety.checks(
         fluid,
         flash=flash,
+        flash_given=given.flash_point is not None or fluid.flash_given,
+        film_max=known.bath_max if known else None,
         limit=limits.bath,
         hottest=hottest,
         rise=float(max(row.rise.max() for row in rows)),
@@ -196,7 +206,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         cut_short=any(g.cut_short for kind in kinds for pair in kind.heats for g in pair),
     )
     cautions = list(tanksafety.cautions(fluid))
-    if failure and flash is not None and failure.hottest > flash - tanksafety.FLASH_MARGIN:
+    if failure and flash is not None and failure.band[1] > flash - tanksafety.FLASH_MARGIN:
         cautions.insert(
             0,
             "If the cooler fails as the worst load goes in, the bath comes within 50 K of the"
@@ -208,6 +218,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         tank=tank,
         fluid=fluid,
         flash=flash,
+        film_max=known.bath_max if known else None,
         limits=limits,
         uncertainty_pct=band,
         kinds=tuple(kinds),
@@ -227,7 +238,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
             sum(body.mass for body in bodies), owns[0].total, given.volume, fluid, bath
         ),
         cautions=tuple(dict.fromkeys([*cautions, *(known.cautions if known else ())])),
-        assumptions=(*told, *more, *assumed(case, given)),
+        assumptions=(*told, *more, *overlapping, *assumed(case, given)),
         notes=_notes(fluid, day, known, [n for s in setups for n in s.notes]),
         sources=_sources(fluid, [s for x in setups for s in x.sources]),
         balance=max(gap, *(own.balance for own in owns), float(day.steady.balance.max())),
@@ -237,32 +248,26 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
 _ALONE = ShiftInput(0.0)
 
 
-def replace_runs(day: Shift) -> Shift:
-    """The same day with the bath of the film as given alone."""
-
-    def first(run: baths.BathRun) -> baths.BathRun:
-        return replace(
-            run,
-            temp=run.temp[:, :1],
-            heat={name: values[:, :1] for name, values in run.heat.items()},
-            evaporated=run.evaporated[:, :1],
-            content=run.content[:, :1],
-            start_temp=run.start_temp[:, :1],
-            balance=run.balance[:1],
-        )
-
-    def alone(load: baths.Immersion) -> baths.Immersion:
-        whole = load.heat
-
-        def heat(seconds: Array, temp: Array) -> Array:
-            n = len(VARIANTS)
-            columns = [whole(seconds, np.full(n, t))[:, 0] for t in temp]
-            return np.array(columns).T
-
-        return replace(load, heat=heat)
-
-    loads = tuple(alone(load) for load in day.loads)
-    return replace(day, loads=loads, first=first(day.first), steady=first(day.steady))
+def _in_time(loads: list[tuple[LoadKind, float]], period: float) -> tuple[str, ...]:
+    """Refuses a load that is still in the bath as the period ends, whose heat would be lost;
+    says where loads are in the bath together."""
+    lines: list[str] = []
+    for (kind, time), after in zip(loads, [*loads[1:], None], strict=True):
+        short = any(g.cut_short for pair in kind.heats for g in pair)
+        if time + kind.stay > period and not short:
+            raise InputFault(
+                "tank.period",
+                f"{period / 3600.0:.4g} h",
+                f"at least {(time + kind.stay) / 3600.0:.4g} h: the load of"
+                f" {time / 3600.0:.4g} h is in the bath for up to {kind.stay / 60.0:.3g} min",
+                "Lengthen the period, or begin the day as a load goes in.",
+            )
+        if after is not None and time + kind.stay > after[1] + 1.0 and not lines:
+            lines.append(
+                f"Loads are in the bath together from {after[1] / 3600.0:.4g} h on: the heat of"
+                " each is solved as if it were alone."
+            )
+    return tuple(lines)
 
 
 def _own(

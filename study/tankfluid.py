@@ -82,6 +82,7 @@ def read_fluid(path: Path, *, like: Fluid | None = None) -> Fluid:
         conductivity=np.full(len(temp), np.nan),
         source=Source(f"properties of {path.name}", path.name, "the user's own", "read"),
         flash=float(flash) + ZERO_DEGC if flash is not None else base.flash,
+        flash_given=flash is not None,
     )
 
 

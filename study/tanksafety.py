@@ -15,6 +15,7 @@ interlocks of their own.
 """
 
 from dataclasses import dataclass
+from typing import Literal
 
 from midradius.fem.fluids import Fluid
 from midradius.thermo.source import Source
@@ -81,6 +82,9 @@ _SALT = (
 )
 
 
+Verdict = Literal["acceptable", "not acceptable", "not judged in full"]
+
+
 @dataclass(frozen=True)
 class Check:
     """One thing that an acceptable design meets; ``met`` None where it cannot be judged."""
@@ -109,6 +113,8 @@ def checks(
     fluid: Fluid,
     *,
     flash: float | None,
+    flash_given: bool,
+    film_max: float | None,
     limit: float,
     hottest: float,
     rise: float,
@@ -121,7 +127,12 @@ def checks(
     settled: bool,
     cut_short: bool,
 ) -> tuple[Check, ...]:
-    """All checks of a design; temperatures [K], level and lip [m] above the floor."""
+    """All checks of a design; temperatures [K], level and lip [m] above the floor.
+
+    ``flash_given`` says that the flash point is that of this very oil; one that is only
+    usual can refuse a design, not accept it. ``film_max`` is the hottest bath whose film
+    is known.
+    """
     found = [
         _below("bath at its hottest", hottest - ZERO_DEGC, limit - ZERO_DEGC, "degC", "its limit"),
     ]
@@ -134,15 +145,24 @@ def checks(
             value = max(limit, hottest) - ZERO_DEGC
             # "within 50 K" counts the bound itself as too near
             met = value < most
-            found.append(Check("distance to the flash point", value, most, "degC", met, why))
+            if met and not flash_given:
+                why = "usual for such an oil, so not judged: give flash_point of yours"
+            judged = None if met and not flash_given else met
+            found.append(Check("bath below the flash point", value, most, "degC", judged, why))
     elif fluid.aqueous:
         most = 100.0 - BOILING_MARGIN
         value = max(limit, hottest) - ZERO_DEGC
-        found.append(_below("distance to boiling", value, most, "degC", "steam"))
+        found.append(_below("bath below boiling", value, most, "degC", "steam"))
     else:
         value = max(limit, hottest)
         why = "the salt decomposes"
         found.append(_below("salt", value - ZERO_DEGC, SALT_HIGHEST - ZERO_DEGC, "degC", why))
+    if film_max is not None:
+        value, most = max(limit, hottest) - ZERO_DEGC, film_max - ZERO_DEGC
+        why = "above it no film is known: it was held, and figures are out of range"
+        if value <= most:
+            why = "the hottest bath whose film is known, for limit and hottest"
+        found.append(_below("film of the bath", value, most, "degC", why))
     if level is None or lip is None:
         why = "give length, width and depth of the tank: the level is not judged"
         found.append(Check("level at the worst moment", None, None, "mm", None, why))
@@ -164,13 +184,20 @@ def checks(
     return tuple(found)
 
 
-def acceptable(checks: tuple[Check, ...]) -> bool:
-    """Whether nothing that can be judged is missed."""
-    return all(check.met is not False for check in checks)
+def verdict(checks: tuple[Check, ...]) -> Verdict:
+    """Acceptable where every check is judged and met; what is not judged is no yes."""
+    if any(check.met is False for check in checks):
+        return "not acceptable"
+    return "acceptable" if all(check.met for check in checks) else "not judged in full"
 
 
-def limit_is_safe(fluid: Fluid, *, flash: float | None, limit: float) -> bool:
-    """Whether a bath at its limit [K] keeps its distance to flash point, boiling, decay."""
+def limit_is_safe(
+    fluid: Fluid, *, flash: float | None, limit: float, film_max: float | None
+) -> bool:
+    """Whether a bath at its limit [K] keeps its distance to flash point, boiling, decay,
+    and its film is known."""
+    if film_max is not None and limit > film_max:
+        return False
     if fluid.kind == "oil":
         return flash is not None and limit < flash - FLASH_MARGIN
     return limit <= (100.0 - BOILING_MARGIN + ZERO_DEGC if fluid.aqueous else SALT_HIGHEST)

@@ -58,6 +58,10 @@ def tank_of(
                 f"One turnover takes {given.volume / given.flow:.0f} s, more than a minute:"
                 " three stacked layers."
             )
+    elif given.layers is None:
+        taken.append("No flow is given: the bath is taken as well mixed.")
+    elif given.layers > 1:
+        taken.append("No flow is given: nothing but the cooler's own flow mixes the layers.")
     n_layer = n_layer if given.layers is None else given.layers
     air = AIR if given.air is None else given.air
     density = float(fluid.density_at(filled))
@@ -105,10 +109,11 @@ def limits_of(
             "A load warms the bath: leave room.",
         )
     flash = given.flash_point if given.flash_point is not None else fluid.flash
-    if fluid.kind == "oil" and given.flash_point is None and flash is not None:
+    unknown = given.flash_point is None and not fluid.flash_given
+    if fluid.kind == "oil" and unknown and flash is not None:
         taken.append(
-            f"No flash_point is given: {flash - ZERO_DEGC:.4g} degC is taken for {fluid.name};"
-            " take yours from the data sheet."
+            f"No flash_point is given: {flash - ZERO_DEGC:.4g} degC is usual and can only refuse,"
+            " not accept; take that of your oil from its data sheet."
         )
     return Limits(limit, given.rise_limit, given.ready_at), flash, tuple(taken)
 

@@ -50,6 +50,8 @@ def document(found: TankAnswer) -> dict[str, Any]:
         "program": "midradius",
         "title": found.case.title,
         "acceptable": found.acceptable,
+        "verdict": found.verdict,
+        "not_judged": [check.name for check in found.checks if check.met is None],
         "checks": [asdict(check) for check in found.checks],
         "coupled": found.case.tank.coupled if found.case.tank else True,
         "fluid": found.fluid.name,
@@ -148,6 +150,7 @@ def _failure(found: TankAnswer) -> dict[str, object] | None:
     return {
         "at_h": failed.at / 3600.0,
         "bath_max_under_that_load_degC": _degC(failed.hottest),
+        "bath_max_under_that_load_film_band_degC": [_degC(t) for t in failed.band],
         "bath_max_if_loads_go_on_degC": _degC(failed.hottest_if_loads_go_on),
         "passes_bath_limit_after_s": failed.passes_limit_after,
     }
@@ -295,7 +298,7 @@ def size_picture(found: TankAnswer) -> "Figure":
     axes.fill_between(sized.volume, low, high, color=SKY, alpha=0.35, lw=0, label="film band")
     axes.plot(sized.volume, duty * sized.cooler[0], color=BLUE, lw=1.6, label="least cooler")
     mark = "o" if found.acceptable else "X"
-    said = "this tank" if found.acceptable else "this tank, not acceptable"
+    said = "this tank" if found.acceptable else f"this tank, {found.verdict}"
     axes.plot([sized.volume_given], [duty * sized.cooler_given], mark, color=ORANGE, ms=9)
     axes.annotate(
         said,

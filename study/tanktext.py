@@ -8,13 +8,18 @@ import numpy as np
 from midradius.study.tankanswer import ZERO_DEGC, TankAnswer
 from midradius.study.tanksafety import Check
 
+_VERDICTS = {
+    "acceptable": "acceptable by the checks below, every one judged",
+    "not acceptable": "NOT ACCEPTABLE",
+    "not judged in full": "NOT JUDGED IN FULL, so no answer yet: see the checks marked ?",
+}
+
 
 def lines(found: TankAnswer) -> Iterator[str]:
     """Line by line; text from the case file is the caller's to make printable."""
     own, core = found.own, found.core
     mass = sum(body.mass for body in found.own_bodies)
-    verdict = "acceptable by what was judged" if found.acceptable else "NOT ACCEPTABLE"
-    yield f"{found.case.title}: {verdict}"
+    yield f"{found.case.title}: {_VERDICTS[found.verdict]}"
     for check in found.checks:
         yield f"  {_mark(check)} {_check(check)}"
     yield ""
@@ -23,12 +28,12 @@ def lines(found: TankAnswer) -> Iterator[str]:
         yield f"  {body.name}: {body.mass:.4g} kg"
     yield (
         f"  heat to the bath {own.total / 1e6:.4g} MJ ({own.total / mass / 1e3:.4g} kJ/kg), "
-        f"peak {own.peak / 1e3:.4g} kW, in the bath {own.stay / 60.0:.3g} min"
+        f"peak {_plain(own.peak / 1e3)} kW, in the bath {own.stay / 60.0:.3g} min"
     )
     (low, high), (slow, quick) = found.own_band
     yield (
         f"  with the film's uncertainty {low / 1e6:.4g} to {high / 1e6:.4g} MJ,"
-        f" peak {slow / 1e3:.4g} to {quick / 1e3:.4g} kW"
+        f" peak {_plain(slow / 1e3)} to {_plain(quick / 1e3)} kW"
     )
     yield (
         f"  before, to the air {own.before / 1e6:.4g} MJ; still in the load when it leaves "
@@ -52,11 +57,13 @@ def lines(found: TankAnswer) -> Iterator[str]:
     if found.failure is not None:
         failed = found.failure
         after = failed.passes_limit_after
-        said = "" if math.isnan(after) else f", past the limit {after / 60.0:.2g} min after it"
+        said = "" if math.isnan(after) else f", past the limit {_plain(after / 60.0)} min after it"
+        said = said if after > 0.0 or math.isnan(after) else ", already past the limit"
+        low, high = failed.band
         yield (
-            f"  cooler fails at {failed.at / 3600.0:.3g} h as a load goes in: "
-            f"{_degC(failed.hottest)} under that load{said}; "
-            f"{_degC(failed.hottest_if_loads_go_on)} if loads go on"
+            f"  cooler fails as a load goes in, at worst that of {failed.at / 3600.0:.4g} h: "
+            f"{_degC(failed.hottest)} under that load ({_degC(low)} to {_degC(high)}); up to"
+            f" {_degC(failed.hottest_if_loads_go_on)} if loads go on{said}"
         )
     water = float(found.day.steady.evaporated[-1, 0])
     if water > 0.0:
@@ -66,7 +73,10 @@ def lines(found: TankAnswer) -> Iterator[str]:
     yield ""
     yield "Size (range: film coefficients weaker and stronger)"
     if not found.limit_is_safe:
-        yield "  none: the limit of the bath itself is too near to the flash point or to boiling"
+        yield (
+            "  none: the limit of the bath itself is too near to the flash point, to boiling or"
+            " decay, or above the hottest bath whose film is known"
+        )
     else:
         yield from _size(found)
     yield from _agitation(found)
@@ -95,10 +105,10 @@ def _size(found: TankAnswer) -> Iterator[str]:
     ):
         yield f"  {what}: {_least(least, factor, unit)}"
     if not found.acceptable:
-        yield "  these keep the limits on the bath only; what the checks above miss remains"
+        yield "  these keep the limits on the bath only; checks above marked FAIL or ? remain"
     yield "  volume [m3] : least cooler [kW with the bath at its limit]"
     for k in range(0, len(sized.volume), 2):
-        yield f"    {sized.volume[k]:8.3g} : {_least(sized.cooler[:, k], duty, 'kW')}"
+        yield f"    {_plain(sized.volume[k]):>8} : {_least(sized.cooler[:, k], duty, 'kW')}"
 
 
 def _loads(found: TankAnswer) -> Iterator[str]:
@@ -135,8 +145,13 @@ def _least(values: np.ndarray, factor: float, unit: str) -> str:
         return "none that was tried does it"
     if high == 0.0:
         return "none needed"
-    band = "not every one" if math.isnan(low) else f"{low:.3g} to {high:.3g}"
-    return f"{nominal:.3g} {unit} ({band})"
+    band = "not every one" if math.isnan(low) else f"{_plain(low)} to {_plain(high)}"
+    return f"{_plain(nominal)} {unit} ({band})"
+
+
+def _plain(value: float) -> str:
+    """Three figures or all before the point, never an exponent."""
+    return f"{value:.0f}" if abs(value) >= 1000.0 else f"{value:.3g}"
 
 
 def _mark(check: Check) -> str:

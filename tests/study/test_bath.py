@@ -219,13 +219,22 @@ def test_the_account_of_a_bath_closes(n_layer: int, fluid: str) -> None:
     assert_allclose(run.content[-1] - run.content[0], into - out, rtol=0.0, atol=1e-6 * whole)
 
 
-def test_layers_of_a_strongly_mixed_bath_are_one_bath() -> None:
-    loads = [gradual(600.0)]
-    one = march(everything(1), loads, start=np.array([300.15]), end=6000.0)
-    three = march(replace(everything(3), mixing=400.0), loads, start=np.array([300.15]), end=6000.0)
-    mean = np.interp(three.time, one.time, one.temp[:, 0, 0])
-    # the load's 1.9 MW at most, carried by 400 kg/s of water, are 1.1 K between layers
-    assert_allclose(three.at_load()[:, 0], mean, rtol=0.0, atol=1.5)
+@pytest.mark.parametrize("mixing", [50.0, 400.0])
+def test_layers_lie_as_far_apart_as_the_flow_between_them_needs(mixing: float) -> None:
+    # A steady load Q warms all layers alike; the bottom has its share s of Q by the flow m,
+    # Q s = m cp (T_load - T_bottom), and the warm top turns over with the layer of the load.
+    power, span, cp = 1.9e6, 3600.0, 4180.0
+    fluid = replace(CONSTANT, heat_capacity=np.array([cp, cp]))
+    tank = replace(bath.without_losses(everything(3)), fluid=fluid, mixing=mixing)
+    load = Immersion(0.0, span, 0.0, lambda s, t: power * s[:, None] * np.ones((1, len(t))))
+    run = march(tank, [load], start=np.array([300.15]), end=span)
+    bottom, beside, top = run.temp[-1, 0]
+    share = bath.SHARE_BELOW
+    mean = 300.15 + power * span / (tank.fill_mass * cp)
+    apart = share * power / (mixing * cp)
+    assert_allclose(beside, mean + share * apart, rtol=0.0, atol=1e-6)
+    assert_allclose(top, beside, rtol=0.0, atol=1e-9)
+    assert_allclose(bottom, mean - (1.0 - share) * apart, rtol=0.0, atol=1e-6)
 
 
 def test_without_agitation_the_top_gets_the_heat_and_the_bottom_stays_cold() -> None:
@@ -244,6 +253,22 @@ def test_a_cooler_that_fails_cools_no_more() -> None:
     late = run.time >= 3600.0
     assert np.ptp(run.heat["cooler"][late]) == 0.0
     assert run.heat["cooler"][-1, 0] > 0.0
+
+
+@given(late=st.lists(st.floats(0.0, 3000.0), min_size=1, max_size=6))
+def test_a_cooler_that_fails_as_the_load_goes_in_leaves_the_hottest_bath(
+    late: list[float],
+) -> None:
+    fails = 3600.0 + np.array([0.0, *sorted(late)])
+    run = march(
+        replace(tank_b(3033.0), cooler_start=323.15),
+        [gradual(3600.0)],
+        start=np.full(len(fails), 333.15),
+        end=7200.0,
+        cooler_fails_at=fails,
+    )
+    hottest = run.hottest[run.time >= 3600.0].max(axis=0)
+    assert np.all(np.diff(hottest) <= 1e-9)
 
 
 @settings(max_examples=25)

@@ -23,6 +23,7 @@ from midradius.study.tankinput import (
 )
 from midradius.study.tanksheet import document
 from midradius.study.tanktext import lines
+from midradius.thermo.errors import InputFault
 from midradius.thermo.grades import all_grades
 
 MESHES = Path(__file__).resolve().parents[2] / "meshes"
@@ -146,7 +147,45 @@ def test_without_dimensions_the_level_is_said_not_to_be_judged() -> None:
     found = solved(text)
     (unknown,) = [check for check in found.checks if check.met is None]
     assert "level is not judged" in unknown.why
-    assert "level is not judged" in "\n".join(lines(found))
+    text = "\n".join(lines(found))
+    assert "level is not judged" in text and "NOT JUDGED IN FULL" in text
+    said = document(found)
+    assert said["acceptable"] is False and said["verdict"] == "not judged in full"
+    assert said["not_judged"] == ["level at the worst moment"]
+
+
+def test_a_usual_flash_point_refuses_but_does_not_accept() -> None:
+    usual = OIL.replace('flash_point = "190 degC"\n', "")
+    for limit, verdict, judged in (
+        ("100 degC", "not judged in full", None),
+        ("145 degC", "not acceptable", False),
+    ):
+        found = solved(usual.replace('"100 degC"', f'"{limit}"'))
+        assert found.verdict == verdict
+        (flash,) = [check for check in found.checks if "flash" in check.name]
+        assert flash.met is judged
+
+
+def test_a_bath_above_the_hottest_whose_film_is_known_is_no_answer() -> None:
+    # agitated water has a film up to 60 degC; the limit itself, then the bath that runs there
+    stirred = WATER.replace("water, still", "water, agitated")
+    limit = solved(stirred.replace('"45 degC"', '"70 degC"'))
+    assert document(limit)["acceptable"] is False and document(limit)["sizing"] is None
+    runs = solved(stirred.replace('"45 degC"', '"55 degC"').replace('"4 m3"', '"1.1 m3"'))
+    assert float(runs.hottest.max()) > 60.0 + 273.15
+    for found in (limit, runs):
+        (film,) = [check for check in found.checks if check.name == "film of the bath"]
+        assert film.met is False and "no film is known" in film.why
+
+
+def test_a_load_that_is_in_the_bath_as_the_period_ends_is_refused() -> None:
+    with pytest.raises(InputFault, match="in the bath for up to 5 min"):
+        solved(OIL + '[[shift]]\nat = "1 h 58 min"\n')
+
+
+def test_loads_that_are_in_the_bath_together_are_named() -> None:
+    found = solved(OIL + '[[shift]]\nat = "0 h"\nevery = "4 min"\ncount = 2\n')
+    assert any("in the bath together from 0.06667 h" in line for line in found.assumptions)
 
 
 def test_a_bath_that_passes_its_limit_is_not_acceptable() -> None:
