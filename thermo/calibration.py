@@ -46,6 +46,7 @@ WORST_CORRELATION = 0.98
 START = 0.6  # of its bound, where a restart begins
 SAME = 0.5  # counting steps within which two minima are one
 RIVAL = 4.0  # chi squared by which a minimum may be worse and still count [two sigma]
+LOST = "lost in the misfit"
 MOST_ALIKE = 1e8  # condition number beyond which shifts act as one
 
 
@@ -130,11 +131,14 @@ def calibrate(
     while True:
         which: IntArray = np.flatnonzero(moving).astype(np.int64)
         if len(which) == 0:
+            remedy = "Measure where the curve is steep"
+            if any(LOST in reason for reason in held):
+                remedy = "No shifts meet these points: check points, steel and austenitising"
             raise InputFault(
                 "measured curve",
                 f"{len(measured)} points",
                 "able to tell at least one shift",
-                "Measure where the curve is steep: " + "; ".join(held) + ".",
+                f"{remedy} ({'; '.join(held)}).",
             )
 
         def residual(x: Array, which: IntArray = which) -> Array:
@@ -254,8 +258,12 @@ def _errors(jacobian: Array, left: float, which: IntArray) -> tuple[Array, int |
     strength = np.sqrt(np.diag(normal))
     for k in np.argsort(strength):
         # Alone, with all others known, it would still be lost in the scatter.
-        if strength[k] * WORST_ERROR * _UPPER[which[k]] < np.sqrt(left):
+        told = strength[k] * WORST_ERROR * _UPPER[which[k]]
+        if told < 1.0:
             return np.empty(0), int(which[k]), "the data do not depend on it"
+        if told < np.sqrt(left):
+            why = f"{LOST}, {np.sqrt(left):.1f} times the scatter of a point"
+            return np.empty(0), int(which[k]), why
     alike = normal / np.outer(strength, strength) - np.eye(len(which))
     if np.linalg.cond(alike + np.eye(len(which))) > MOST_ALIKE:
         pair = np.unravel_index(int(np.abs(alike).argmax()), alike.shape)

@@ -54,6 +54,19 @@ def test_the_standard_error_is_that_of_a_straight_line() -> None:
     assert_allclose(fit.error[3], 1.0 / (0.5 * 5.0), rtol=1e-6, atol=0.0)
 
 
+def test_points_that_no_shift_meets_are_not_said_to_be_without_effect() -> None:
+    def line(shifts: Shifts) -> Array:
+        return np.full(16, 30.0 + 0.5 * shifts.hardness)
+
+    # 16 points, 100 above and below by turns: sqrt(16 x 100^2 / 15) = 103.3 are left
+    wild = line(NONE) + np.where(np.arange(16) % 2 == 0, 100.0, -100.0)
+    with pytest.raises(InputFault) as told:
+        calibrate(line, wild, scatter=1.0, free=("hardness",))
+    assert told.value.remedy.startswith("No shifts meet these points: check points, steel")
+    said = "hardness: lost in the misfit, 103.3 times the scatter of a point"
+    assert told.value.remedy.endswith(f"{said}).")
+
+
 def test_the_scatter_left_widens_the_error() -> None:
     noise = np.where(np.arange(16) % 2 == 0, 3.0, -3.0)
     quiet = calibrate(_curve, _curve(NONE), scatter=0.5, free=("hardness",))
