@@ -62,6 +62,18 @@ class MeshInput:
         """Nodes of the section."""
         return len(self.points)
 
+    @property
+    def text(self) -> str:
+        """File, sense, size and cells in one line."""
+        size = " x ".join(f"{1e3 * extent:.4g}" for extent in np.ptp(self.points, axis=0))
+        kinds = ", ".join(
+            f"{len(block)} {_PLURAL.get(kind, kind + 's')}" for kind, block in self.cells
+        )
+        return f"{self.name}, {self.sense}, {size} mm; {self.n_node} nodes, {kinds}"
+
+
+_PLURAL = {"hexahedron": "hexahedra", "tetra": "tetrahedra"}
+
 
 class MeshFaults(InputFault):
     """A mesh that cannot be solved: ``findings`` are the errors, at least one."""

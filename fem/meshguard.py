@@ -76,7 +76,7 @@ def read_mesh(path: Path) -> RawMesh:
     _present(path)
     mesh = _own(path, OWN[suffix]) if suffix in OWN else _by_library(path, BY_LIBRARY[suffix])
     if not len(mesh.points) or not np.all(np.isfinite(mesh.points)):
-        raise refuse(path.name, "a mesh whose points have finite coordinates", "")
+        raise refuse(path.name, "a mesh whose points have finite coordinates", "Export it again.")
     return mesh
 
 

@@ -174,27 +174,41 @@ def shape_findings(points: Array, cells: tuple[tuple[str, IntArray], ...]) -> li
 
 @dataclass(frozen=True)
 class Facets:
-    """All facets of a mesh: corners (n, 4) filled with -1, and how many cells have each."""
+    """All facets of a mesh: corners (n, 4) filled with -1, and how many cells have each.
+
+    ``n_part`` is the number of parts that no facet joins.
+    """
 
     corners: IntArray
     count: IntArray
+    n_part: int
 
 
 def facets_of(cells: tuple[tuple[str, IntArray], ...]) -> Facets:
     """Facets of the cells, each once, as the first cell has it."""
-    rows = []
+    from scipy.sparse import coo_array
+    from scipy.sparse.csgraph import connected_components
+
+    rows, owners, n_cell = [], [], 0
     for kind, block in cells:
         for local in SHAPES[kind].facets:
             row = np.full((len(block), 4), -1, dtype=np.int64)
             row[:, : len(local)] = block[:, list(local)]
             rows.append(row)
-    table = np.concatenate(rows)
+            owners.append(n_cell + np.arange(len(block)))
+        n_cell += len(block)
+    table, owner = np.concatenate(rows), np.concatenate(owners)
     dim = SHAPES[cells[0][0]].dim
     key = facet_keys(table)
     real = (key >= 0).sum(axis=1) >= dim  # a collapsed cell has facets that are none
-    table, key = table[real], key[real]
-    _, first, count = np.unique(key, axis=0, return_index=True, return_counts=True)
-    return Facets(table[first], count.astype(np.int64))
+    table, key, owner = table[real], key[real], owner[real]
+    _, first, facet, count = np.unique(
+        key, axis=0, return_index=True, return_inverse=True, return_counts=True
+    )
+    n = n_cell + len(first)
+    graph = coo_array((np.ones(len(owner)), (owner, n_cell + facet.ravel())), shape=(n, n))
+    n_part, _ = connected_components(graph, directed=False)
+    return Facets(table[first], count.astype(np.int64), int(n_part))
 
 
 def facet_keys(table: IntArray) -> IntArray:
@@ -243,6 +257,14 @@ def join_findings(
                 "error",
                 f"the mesh holds {n_body} separate bodies",
                 "One case is one part: export one body, or give each a case of its own.",
+            )
+        )
+    elif facets.n_part > 1:
+        findings.append(
+            Finding(
+                "error",
+                f"{facets.n_part} parts of the mesh touch at single nodes or edges only",
+                "Hardly any heat crosses there: mesh the joint again, or export one body.",
             )
         )
     return findings

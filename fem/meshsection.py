@@ -64,11 +64,7 @@ class MeshSection:
     @property
     def text(self) -> str:
         """What the section is, in one line."""
-        size = " x ".join(f"{1e3 * extent:.4g}" for extent in np.ptp(self.mesh.points, axis=0))
-        kinds = ", ".join(
-            f"{len(block)} {_PLURAL.get(kind, kind + 's')}" for kind, block in self.mesh.cells
-        )
-        return f"mesh {self.mesh.name}, {self.sense}, {size} mm; {self.mesh.n_node} nodes, {kinds}"
+        return f"mesh {self.mesh.text}"
 
     def folded(self, same: Mapping[tuple[str, str], bool]) -> "MeshSection":
         """A mesh is solved as it is: its symmetry is what the case states."""
@@ -152,6 +148,3 @@ class MeshSection:
                 'The deepest point is "core".',
             )
         return tuple(float(x) for x in self.surface_point + min(share, 1.0) * way)
-
-
-_PLURAL = {"hexahedron": "hexahedra", "tetra": "tetrahedra"}

@@ -163,7 +163,10 @@ def run(case: Path, folder: Path | None, as_json: bool, quiet: bool, with_source
 @cli.command()
 @click.argument("case", type=click.Path(path_type=Path))
 def check(case: Path) -> None:
-    """Read CASE, name all its faults, and solve nothing."""
+    """Read CASE, name all its faults, and solve nothing.
+
+    Of a mesh section it lists the surface zones, which stages name in faces.
+    """
     from midradius.study.casefile import read_any
 
     with _answered():
@@ -171,7 +174,21 @@ def check(case: Path) -> None:
         from midradius.study import job
 
         job.look(asked)
+        lines = _seen(asked)
     click.echo(f"{_printable(case)}: sound ({asked.title})")
+    for line in lines:
+        click.echo(_printable(line))
+
+
+def _seen(case: Any) -> tuple[str, ...]:
+    """What a mesh section was found to be."""
+    mesh = getattr(getattr(case, "section", None), "mesh", None)
+    if mesh is None:
+        return ()
+    from midradius.study.casemesh import mesh_of
+    from midradius.study.meshtext import described_mesh
+
+    return described_mesh(mesh_of(mesh))
 
 
 @cli.command(short_help="Write a commented starter case.")

@@ -6,7 +6,7 @@ from numpy.testing import assert_allclose
 
 from midradius.fem.distance import nearest, pieces
 from midradius.fem.meshcut import cut_mesh
-from midradius.fem.meshfile import MeshFaults, MeshInput, section_of
+from midradius.fem.meshfile import MeshFaults, MeshInput, open_mesh, section_of
 from midradius.fem.meshraw import Group, RawMesh, facet_table
 from midradius.fem.meshsection import MeshSection
 from midradius.fem.meshzones import Symmetry
@@ -298,4 +298,19 @@ def test_wedges_that_all_run_as_in_older_files_of_vtk_are_turned_without_a_word(
     _, findings = turned(points, (tetra, ("wedge", np.concatenate([old, [[0, 1, 2, 3, 4, 5]]]))))
     assert [finding.what for finding in findings] == [
         "1 of 3 cells run the other way round than the rest"
+    ]
+
+
+def test_parts_that_touch_at_one_node_only_are_no_body(tmp_path):
+    meshio = pytest.importorskip("meshio")
+    points = np.array([[0, 0], [30, 0], [30, 30], [0, 30], [60, 30], [60, 60], [30, 60]], float)
+    quads = np.array([[0, 1, 2, 3], [2, 4, 5, 6]])
+    meshio.write(
+        tmp_path / "pinch.vtu", meshio.Mesh(np.c_[points, 0 * points[:, 0]], [("quad", quads)])
+    )
+    with pytest.raises(MeshFaults) as caught:
+        open_mesh(tmp_path / "pinch.vtu", length_unit="mm", sense="plane")
+    assert [finding.text for finding in caught.value.findings] == [
+        "2 parts of the mesh touch at single nodes or edges only. "
+        "Hardly any heat crosses there: mesh the joint again, or export one body."
     ]

@@ -260,3 +260,28 @@ def test_temperatures_beyond_bath_and_start_are_stated_for_obtuse_cells(tmp_path
     (note,) = mesh_notes(obtuse, history, setup.stages, start)  # type: ignore[arg-type]
     assert note.value == "4 K"
     assert "coldest 56.0 degC at 3 s" in note.allowed
+
+
+def test_check_lists_the_zones_of_a_mesh_with_their_places(tmp_path: Path) -> None:
+    from click.testing import CliRunner
+
+    from midradius.study.cli import cli
+
+    (tmp_path / "strip.inp").write_text(
+        "*NODE\n1,0,0\n2,30,0\n3,30,40\n4,0,40\n5,60,0\n6,60,40\n"
+        "*ELEMENT,TYPE=CPS4,ELSET=body\n1,1,2,3,4\n2,2,5,6,3\n"
+        "*ELEMENT,TYPE=T3D2,ELSET=top\n3,4,3\n4,3,6\n*ELSET,ELSET=roof\n4\n"
+    )
+    more = 'symmetry = ["x = 0"]'
+    case_of(tmp_path, "strip.inp", "plane", '["20 mm", "20 mm"]', more=more)
+    answer = CliRunner().invoke(cli, ["check", str(tmp_path / "case.toml")])
+    assert answer.exit_code == 0
+    assert answer.output.splitlines()[1:] == [
+        "mesh strip.inp, plane, 60 x 40 mm; 6 nodes, 2 quads",
+        "  zone top      x 0 to 60, y = 40 mm; 2 edges",
+        "  zone surface  x 0 to 60, y 0 to 40 mm; 3 edges",
+        "  insulated (symmetry, axis)  x = 0, y 0 to 40 mm; 1 edge of 6",
+        "  other groups: body, roof",
+        "  One of these that lies on the boundary becomes a zone where faces names it.",
+        '  A zone takes a medium of its own in a stage: faces = { "top" = "still air" }.',
+    ]
