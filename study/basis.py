@@ -31,7 +31,7 @@ from midradius.thermo import (
     toughness,
 )
 from midradius.thermo.arrays import Array
-from midradius.thermo.soaked import Soaked
+from midradius.thermo.soaked import OLD_RATE, Soaked
 from midradius.thermo.source import RangeNote, Source
 
 # Above it bainite could still form on the way to room temperature [estimate].
@@ -54,6 +54,8 @@ def notes_of(
     """
     composition = case.steel.steel.composition
     left = value.soaked
+    # what was never austenite keeps a hardness of its own, whatever it cools through
+    rate_700 = np.where(left.austenitised, history.rate_700, OLD_RATE)
     # the poorest and the richest austenite stand for all between
     ends = (int(np.argmin(left.carbon_pct)), int(np.argmax(left.carbon_pct)))
     found = [
@@ -62,7 +64,7 @@ def notes_of(
         *equilibrium.range_notes(composition),
         *left.notes,
         *(note for each in ends for note in _of_austenite(case.steel, left, each)),
-        *hardness.range_notes(composition, history.phases, history.rate_700),
+        *hardness.range_notes(composition, history.phases, rate_700),
         *value.notes,
         *properties.range_notes(seen, composition.C),
         *more,

@@ -231,12 +231,27 @@ def _notes(
             node = np.flatnonzero(reached)[int(pick(temp[reached]))]
             notes += dissolution_notes(eq, float(temp[node]), float(time[node]))
             notes += [] if measured else growth_notes(float(temp[node]))
+        notes = _as_spans(notes)
     cold = int(np.count_nonzero(~reached))
     if cold:
         value = f"not passed at {cold} of {reached.size} nodes: not austenitised"
         allowed = f"above Ae1, {eq.ae1 - ZERO_DEGC:.0f} degC, everywhere"
         notes.append(RangeNote("austenite after the soak", "temperature", value, allowed))
     return tuple(dict.fromkeys(notes))
+
+
+def _as_spans(notes: list[RangeNote]) -> list[RangeNote]:
+    """One note in place of two that differ in the value alone: from the coldest to the hottest."""
+    by_rest: dict[tuple[str, str, str], list[str]] = {}
+    for note in dict.fromkeys(notes):
+        by_rest.setdefault((note.model, note.quantity, note.allowed), []).append(note.value)
+    spans = []
+    for (model, quantity, allowed), values in by_rest.items():
+        low, high = values[0], values[-1]
+        unit = f" {high.partition(' ')[2]}"
+        text = high if low == high else f"{low.removesuffix(unit)} to {high}"
+        spans.append(RangeNote(model, quantity, text, allowed))
+    return spans
 
 
 def initial_states(soaked: Soaked, temp: Array, ae1: float) -> Array:

@@ -158,6 +158,15 @@ def test_what_never_became_austenite_stays_soft_whatever_the_quench() -> None:
     assert at_core.outcome == "too close to call"
 
 
+def test_what_stayed_cold_has_a_hardness_and_no_note_that_it_has_none() -> None:
+    result = case(
+        heat=furnace('time = "20 min"', furnace="700 degC"), soak="1 min", diameter="200 mm"
+    )
+    assert not result.soaked.austenitised.any() and np.isfinite(result.hardness_hv).all()
+    assert result.soak.endswith("degC; not austenitised, ferrite and pearlite as before")
+    assert not [note for note in result.notes if note.quantity == "cooling rate at 700 degC"]
+
+
 def test_a_need_of_grain_is_judged_where_it_is_asked(short: Result) -> None:
     ends = (short.positions[0], short.positions[-1])
     for verdict, position in zip(short.verdicts, ends, strict=True):

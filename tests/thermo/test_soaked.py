@@ -113,6 +113,13 @@ def test_what_never_passed_ae1_keeps_ferrite_and_pearlite() -> None:
     assert note.value == "not passed at 2 of 4 nodes: not austenitised"
 
 
+def test_a_soak_below_the_range_of_growth_is_one_note_from_the_coldest_to_the_hottest() -> None:
+    # grain growth is known from 850 degC on (Lee & Lee 2008, memory)
+    for degc, said in (([830.0, 846.0], "830 to 846 degC"), ([840.0, 840.0], "840 degC")):
+        notes = [note for note in held(degc, 3600.0).notes if "growth" in note.model]
+        assert [note.value for note in notes] == [said]
+
+
 def test_carbon_is_shared_out_without_loss_at_every_temperature() -> None:
     for name in ("42CrMo4", "100Cr6"):
         steel = grade(name)
