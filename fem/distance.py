@@ -12,6 +12,7 @@ NEIGHBOURS = 24
 LONG = 2.0  # times the median: longer facets are cut up
 MOST_ROUNDS = 6
 CHUNK = 100_000
+MOST_POINTS, MOST_PIECES = 2_000, 20_000  # of an exposure
 
 
 def pieces(points: Array, facets: IntArray) -> Array:
@@ -51,6 +52,20 @@ def nearest(points: Array, surface: Array) -> tuple[Array, Array]:
         gaps.append(best)
         feet.append(foot)
     return np.concatenate(gaps), np.concatenate(feet)
+
+
+def exposure(points: Array, surface: Array) -> Array:
+    """How open points (n, dim) are to a surface: its size over the square of the distance, (n,).
+
+    Of more points or pieces than that would be quick for, some are left out: points get inf.
+    """
+    step = -(-len(points) // MOST_POINTS)
+    seen = surface[:: -(-len(surface) // MOST_PIECES)]
+    centre, size = seen.mean(axis=1), _longest(seen) ** (points.shape[1] - 1)
+    found = np.full(len(points), np.inf)
+    for k in range(0, len(points), step):
+        found[k] = (size / ((centre - points[k]) ** 2).sum(axis=1)).sum()
+    return found
 
 
 def _longest(found: Array) -> Array:

@@ -3,7 +3,8 @@
 Depth is the distance to the cooled surface: zones that some stage cools, not
 those of symmetry or insulation. The core is the deepest point of the nodes,
 and of those between them where they are few; of several as deep (within
-:data:`AS_DEEP`) the one in their middle. The surface is the point of it nearest
+:data:`AS_DEEP`) the one least open to the surface: in the middle of them, on the
+axis or the plane of symmetry where they reach it. The surface is the point of it nearest
 to the core; quarter thickness and mid-radius lie half way between the two, a
 depth on the same line.
 """
@@ -15,7 +16,7 @@ from functools import cached_property
 import numpy as np
 
 from midradius.fem.convection import Geometry
-from midradius.fem.distance import nearest, pieces
+from midradius.fem.distance import exposure, nearest, pieces
 from midradius.fem.meshfile import MeshInput
 from midradius.fem.refine import refined
 from midradius.fem.volumes import Sense
@@ -107,7 +108,10 @@ class MeshSection:
 
     @cached_property
     def core(self) -> Array:
-        """The deepest point [m], (dim,)."""
+        """The deepest point [m], (dim,); of several the one least open to the surface.
+
+        On an axis or a symmetry plane that is where the whole body has its middle.
+        """
         # a coarse mesh may have no node inside: its edges are halved for the search
         mesh = self.mesh
         points, cells, facets, zone = mesh.points, mesh.cells, mesh.facets, mesh.facet_zone
@@ -115,8 +119,7 @@ class MeshSection:
             points, cells, facets, zone = refined(points, cells, facets, zone)
         depths = nearest(points, self.surface)[0]
         points = points[depths >= (1.0 - AS_DEEP) * depths.max()]
-        middle = np.linalg.norm(points - points.mean(axis=0), axis=1)
-        return np.asarray(points[int(np.argmin(middle))])
+        return np.asarray(points[int(np.argmin(exposure(points, self.surface)))])
 
     @cached_property
     def surface_point(self) -> Array:

@@ -62,12 +62,17 @@ def _load(table: Table, section: SectionInput | None) -> LoadInput | None:
     if table.has("length") and table.has("piece_mass"):
         table.fault("piece_mass", "left out where a length is given", "Keep one of the two.")
     if section:
+        mesh = section.mesh
         long = section.form in _LENGTH_FORMS and section.length is None
+        long |= mesh is not None and mesh.sense == "plane"
         if table.has("length") and not long:
             allowed = f'left out for form = "{section.form}"'
             table.fault("length", allowed, "The section says how large a piece is.")
         if long and not table.has("length") and not table.has("piece_mass"):
             table.missing("length", f'given for form = "{section.form}"', "Or give piece_mass.")
+        if mesh is not None and mesh.symmetry and not table.has("piece_mass"):
+            remedy = "The mesh may hold a part of the piece only: give the mass of the whole."
+            table.missing("piece_mass", "given for a mesh with symmetry", remedy)
         if section.form == "slab" and not table.has("piece_mass"):
             table.missing("piece_mass", 'given for form = "slab"', 'Such as piece_mass = "85 kg".')
     fixtures: list[FixtureInput] = []

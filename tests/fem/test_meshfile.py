@@ -229,6 +229,15 @@ def test_the_core_is_the_deepest_point_and_the_terms_lie_on_the_way_to_it():
         section.trade_place("depth", 0.05)
 
 
+def test_of_a_flat_disc_and_of_a_half_the_core_is_the_middle_of_the_whole():
+    # the ridge runs from the axis, or from the plane of symmetry, to 30 mm before the rim
+    points, quads = sheet(9, 7)
+    disc = taken(raw_of(points, ("quad", quads)), "axisymmetric")
+    assert_allclose(MeshSection(disc, disc.zones).core, [0.0, 0.03], rtol=0.0, atol=1e-12)
+    half = cut_sheet(Symmetry((), ((0, 0.0),))).section
+    assert_allclose(half.core, [0.0, 0.03], rtol=0.0, atol=1e-12)
+
+
 def test_a_mesh_without_a_node_inside_has_a_core_all_the_same():
     points, quads = sheet(3, 2)
     mesh = taken(raw_of(points, ("quad", quads)))

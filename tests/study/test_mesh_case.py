@@ -10,6 +10,7 @@ from numpy.testing import assert_allclose
 from midradius.fem.record import read_record
 from midradius.study import casefile, job
 from midradius.study.case import Case
+from midradius.study.casefaults import CaseFaults
 from midradius.study.result import Result
 
 PLATE = Path(__file__).parent / "bad" / "plate.inp"
@@ -180,10 +181,11 @@ def test_a_zone_of_the_mesh_sees_its_own_medium(tmp_path: Path) -> None:
     case = case_of(tmp_path, "plate.inp", "plane", '["70 mm", "10 mm"]', more, faces)
     assert case.section.zones == ("top face", "surface")
     result = job.solve(case)
-    # insulated at x = 0 and y = 60: all of the top up to x = 20 mm is 60 mm from below
+    # insulated at x = 0 and y = 60: all of the top up to x = 20 mm is 60 mm from below,
+    # and the middle of the whole, of which the mesh is the right half, is at x = 0
     core = next(p for p in result.positions if p.name == "core")
     assert_allclose(core.depth_mm, 60.0, rtol=0.02, atol=0.0)
-    assert_allclose(core.coordinates_mm, [10.0, 60.0], rtol=0.0, atol=2.0)
+    assert_allclose(core.coordinates_mm, [0.0, 60.0], rtol=0.0, atol=2.0)
     assert result.stages[0].medium == "insulated; surface: mineral oil, agitated, 60 degC"
 
 
@@ -285,3 +287,38 @@ def test_check_lists_the_zones_of_a_mesh_with_their_places(tmp_path: Path) -> No
         "  One of these that lies on the boundary becomes a zone where faces names it.",
         '  A zone takes a medium of its own in a stage: faces = { "top" = "still air" }.',
     ]
+
+
+TANK = """
+[load]
+pieces = 12
+{size}
+[tank]
+volume = "10 m3"
+cooler = "200 kW"
+bath_limit = "95 degC"
+"""
+
+
+@pytest.mark.parametrize(
+    ("symmetry", "size", "said"),
+    [
+        ("", "", 'load.length is missing, but must be given for form = "mesh"'),
+        ("", 'length = "1.6 m"', ""),
+        ('symmetry = ["x = 0"]', 'length = "1.6 m"', "load.piece_mass is missing"),
+        ('symmetry = ["x = 0"]', 'piece_mass = "60 kg"', ""),
+    ],
+)
+def test_a_load_of_a_plane_mesh_says_how_much_a_piece_is(
+    tmp_path: Path, symmetry: str, size: str, said: str
+) -> None:
+    (tmp_path / "plate.inp").write_text(PLATE.read_text())
+    path = tmp_path / "case.toml"
+    text = CASE.format(file="plate.inp", sense="plane", more=symmetry, faces="", at=0, end=0)
+    path.write_text(text.split("[output]")[0] + TANK.format(size=size))
+    if not said:
+        assert casefile.read(path).load is not None
+        return
+    with pytest.raises(CaseFaults) as caught:
+        casefile.read(path)
+    assert said in str(caught.value)
