@@ -217,7 +217,8 @@ def new(file: Path | None, form: str, given: bool) -> None:
     with _answered():
         _write_new(file, content)
     shown, target = (shlex.quote(_printable(path)) for path in (file, _folder_of(file)))
-    click.echo(f"Wrote {shown}. Next: midradius run {shown} --out {target}", err=True)
+    first = "name your file of temperatures in it, then " if given else ""
+    click.echo(f"Wrote {shown}. Next: {first}midradius run {shown} --out {target}", err=True)
 
 
 def _write_new(file: Path, content: str) -> None:

@@ -303,6 +303,14 @@ def test_new_shows_the_next_command_and_prints_to_the_screen_without_a_file(
     assert screen.out == (tmp_path / "my shaft.toml").read_text(encoding="utf-8")
 
 
+def test_a_starter_of_given_temperatures_asks_for_their_file_first(call, case: Path) -> None:  # type: ignore[no-untyped-def]
+    said = call("new", "--temperatures", "logged.toml").err
+    assert said == (
+        "Wrote logged.toml. Next: name your file of temperatures in it, then "
+        "midradius run logged.toml --out logged\n"
+    )
+
+
 # What is imported
 
 
