@@ -60,6 +60,8 @@ def exposure(points: Array, surface: Array) -> Array:
     Of more points or pieces than that would be quick for, some are left out: points get inf.
     """
     step = -(-len(points) // MOST_POINTS)
+    while len(surface) < MOST_PIECES // 8:  # coarse pieces lie unevenly about a point
+        surface = _halved(surface)
     seen = surface[:: -(-len(surface) // MOST_PIECES)]
     centre, size = seen.mean(axis=1), _longest(seen) ** (points.shape[1] - 1)
     found = np.full(len(points), np.inf)

@@ -312,7 +312,7 @@ def _result(
         + mesh_notes(cut, bounds, setup.stages, main.begun.temp),
         sources=sources_of(case, setup.sources),
         assumptions=setup.assumptions
-        + mesh_statements(cut)
+        + mesh_statements(cut, grid_error)
         + (case.steel.kinetics.text,)
         + ((case.steel.calibration.text,) if case.steel.calibration else ()),
         cautions=soak_warnings(main.worth.soaked, case.soak.at or 0.0, cut.body.volume)

@@ -120,6 +120,6 @@ def _nearest(wanted: tuple[float, ...], given: Histories, key: str) -> Place:
             shown,
             f"a point of the mesh; its nearest node is {node} at ({there}) mm,"
             f" {1e3 * away[node]:.3g} mm away",
-            "Check the point, its order of axes, and length_unit.",
+            f"Check the point, its order of axes, and length_unit; or write node = {node}.",
         )
     return _at(given, node)

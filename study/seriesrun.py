@@ -167,7 +167,7 @@ def _refuse_coarse(
         f" and +-{100.0 * cost.phase_error[node]:.0f} % of a constituent open",
         f"so close that both are known, within {100.0 * MOST_SHARE:.0f} % of the hardness and"
         f" {100.0 * MOST_FRACTION:.0f} % of the mass",
-        f"Write samples at most {apart:.2g} K apart there.",
+        f"Write samples at most {apart:.0f} K apart there.",
     )
 
 

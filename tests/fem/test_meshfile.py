@@ -238,6 +238,20 @@ def test_of_a_flat_disc_and_of_a_half_the_core_is_the_middle_of_the_whole():
     assert_allclose(half.core, [0.0, 0.03], rtol=0.0, atol=1e-12)
 
 
+def test_the_core_of_one_layer_of_coarse_cells_is_the_middle_of_the_block():
+    axes = np.meshgrid(np.linspace(0, 120, 4), np.linspace(0, 80, 3), [0, 60], indexing="ij")
+    points = np.stack([axis.ravel() for axis in axes], axis=1)
+    n = np.arange(24).reshape(4, 3, 2)
+    corners = [
+        layer[a : a + 3, b : b + 2]
+        for layer in (n[:, :, :-1], n[:, :, 1:])
+        for a, b in ((0, 0), (1, 0), (1, 1), (0, 1))
+    ]
+    block = np.stack([c.ravel() for c in corners], axis=1)
+    mesh = taken(raw_of(points, ("hexahedron", block)), "solid")
+    assert_allclose(MeshSection(mesh, mesh.zones).core, [0.06, 0.04, 0.03], rtol=0.0, atol=1e-12)
+
+
 def test_a_mesh_without_a_node_inside_has_a_core_all_the_same():
     points, quads = sheet(3, 2)
     mesh = taken(raw_of(points, ("quad", quads)))
