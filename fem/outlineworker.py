@@ -264,8 +264,13 @@ def _mesh(
     notes = []
     if first > 1.001 * min(asked, deepest):
         notes.append(
-            f"surface cells of {first:.3g} mm instead of the {asked:.3g} mm that the film asks "
-            f"for, to stay below {most} nodes"
+            f"surface cells of {first:.3g} mm instead of the {asked:.3g} mm asked for, to stay "
+            f"below {most} nodes"
+        )
+    elif first < 0.999 * asked:
+        notes.append(
+            f"surface cells of {first:.3g} mm instead of the {asked:.3g} mm asked for: the part is "
+            "thin, and no cell is larger than its depth needs"
         )
     return first, notes
 

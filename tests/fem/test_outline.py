@@ -307,7 +307,7 @@ def test_a_cap_on_the_nodes_makes_the_cells_coarser_and_says_so(
     )
     assert made.n_node <= 1500
     assert made.first > 0.1e-3
-    assert "instead of the 0.1 mm that the film asks for" in made.notes[0]
+    assert "instead of the 0.1 mm asked for, to stay below" in made.notes[0]
 
 
 def test_a_stronger_film_asks_for_smaller_cells() -> None:
@@ -388,4 +388,15 @@ def test_without_the_extra_one_sentence_says_how_to_get_it(
     assert str(raised.value) == (
         "Meshing an outline needs gmsh and ezdxf, which are not installed: "
         "pip install 'midradius[cad]'."
+    )
+
+
+def test_a_thin_part_gets_smaller_cells_than_asked_for_and_says_so(
+    drawn: Draw, tmp_path: Path
+) -> None:
+    made = mesh_outline(drawn(stadium), tmp_path / "p.msh", sense="plane", first=20e-3)
+    assert made.first < 20e-3
+    assert made.notes[-1].endswith(
+        "instead of the 20 mm asked for: the part is thin, and no cell is larger than its"
+        " depth needs"
     )
