@@ -22,7 +22,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from midradius.fem.meshraw import SHAPES, TURNED_WEDGE, Group, RawMesh, family, refuse
-from midradius.thermo.arrays import IntArray
+from midradius.thermo.arrays import Array, IntArray
 from midradius.thermo.errors import InputFault
 
 T = TypeVar("T")
@@ -198,6 +198,8 @@ def _converted(mesh: Any, path: Path, format: str, said: tuple[str, ...]) -> Raw
     found = np.asarray(mesh.points, dtype=np.float64)
     points = np.zeros((len(found), 3))
     points[:, : found.shape[1]] = found[:, :3]
+    if format == "med":
+        cells = [(kind, _turned_as_others(points, kind, table)) for kind, table in cells]
     n_cell = sum(len(table) for _, table in cells)
     _count(path, format, len(points), n_cell, said)
     for kind, table in cells:
@@ -221,6 +223,19 @@ def _converted(mesh: Any, path: Path, format: str, said: tuple[str, ...]) -> Raw
         notes=tuple(f"meshio: {line}" for line in said),
         format=format,
     )
+
+
+def _turned_as_others(points: Array, kind: str, table: IntArray) -> IntArray:
+    """MED has its solid cells the other way round than all other formats."""
+    from midradius.fem.meshhealth import turned
+
+    shape = SHAPES[family(kind)]
+    if shape.dim != 3 or not 0 <= table.min() <= table.max() < len(points):
+        return table
+    ((_, corners),), mixed = turned(points, ((family(kind), table[:, : shape.n_corner]),))
+    if mixed:
+        return table
+    return np.concatenate([corners, table[:, shape.n_corner :]], axis=1)
 
 
 def _groups(

@@ -17,9 +17,11 @@ import numpy as np
 from midradius.fem.meshraw import SHAPES
 from midradius.study.chart import heading
 from midradius.study.result import Result
+from midradius.thermo.arrays import Array
 from midradius.thermo.phases import PHASE_NAMES
 
 LONGEST = 600.0  # s
+INNER = 0.4  # of its size from the middle, within which the core is a place to cut at
 LEAST_SHARE = 0.02  # of a phase where there is most of it: less is not drawn
 NOT_DRAWN = "Pictures of the part were not drawn: {}. All other results are complete."
 
@@ -47,6 +49,16 @@ def write_scenes(result: Result, folder: Path) -> str:
     return NOT_DRAWN.format(f"this machine does not render (code {done.returncode}{reason})")
 
 
+def _inside(core: Array, points: Array) -> list[float]:
+    """Where to cut a solid open: at its core, or midway where that is on its boundary.
+
+    A core on a plane of symmetry would leave nothing of the part, or all of it.
+    """
+    low, high = points.min(axis=0), points.max(axis=0)
+    share = (core - low) / np.maximum(high - low, 1e-300)
+    return np.where(np.abs(share - 0.5) > INNER, 0.5 * (low + high), core).tolist()
+
+
 def _hand_over(result: Result, path: Path) -> None:
     view = result.view
     shown = [k for k in range(len(PHASE_NAMES)) if result.phases[k].max() > LEAST_SHARE]
@@ -59,7 +71,7 @@ def _hand_over(result: Result, path: Path) -> None:
         "sense": result.sense,
         "kinds": [kind for kind, _ in blocks],
         "phases": [PHASE_NAMES[k] for k in shown],
-        "core": core[0] if core and len(core[0]) == 3 else None,
+        "core": _inside(np.array(core[0]), view.points_mm) if core and len(core[0]) == 3 else None,
     }
     arrays: dict[str, Any] = {
         "about": np.array(json.dumps(about)),

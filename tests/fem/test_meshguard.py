@@ -508,3 +508,14 @@ def test_a_wedge_of_a_legacy_file_keeps_the_order_of_its_corners(tmp_path):
     np.testing.assert_array_equal(
         read_mesh(tmp_path / "part.vtk").cells[0][1], [[0, 1, 2, 3, 4, 5]]
     )
+
+
+def test_solid_cells_of_med_run_as_those_of_all_other_formats(tmp_path):
+    import meshio
+
+    points = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1], [1, 1, 1]], dtype=float)
+    inward = [("tetra", np.array([[0, 2, 1, 3], [1, 3, 2, 4]]))]  # as MED draws its TE4
+    meshio.write(tmp_path / "part.med", meshio.Mesh(points, inward))
+    a, b, c, d = (points[column] for column in read_mesh(tmp_path / "part.med").cells[0][1].T)
+    six = np.einsum("ij,ij->i", np.cross(b - a, c - a), d - a)
+    np.testing.assert_allclose(six, [1.0, 2.0], rtol=1e-12, atol=0.0)

@@ -114,3 +114,9 @@ def test_neither_the_parent_nor_the_import_loads_the_renderer() -> None:
         "sys.exit('pyvista' in sys.modules or 'vtkmodules' in sys.modules)"
     )
     subprocess.run([sys.executable, "-c", code], check=True)
+
+
+def test_a_core_on_the_boundary_is_no_place_to_cut_at() -> None:
+    points = np.array([[0.0, 0.0, 0.0], [60.0, 40.0, 30.0]])
+    found = scene._inside(np.array([45.0, 40.0, 0.0]), points)
+    assert_allclose(found, [45.0, 20.0, 15.0], rtol=0.0, atol=1e-12)
