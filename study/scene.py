@@ -56,7 +56,8 @@ def _inside(core: Array, points: Array) -> list[float]:
     """
     low, high = points.min(axis=0), points.max(axis=0)
     share = (core - low) / np.maximum(high - low, 1e-300)
-    return np.where(np.abs(share - 0.5) > INNER, 0.5 * (low + high), core).tolist()
+    at = np.where(np.abs(share - 0.5) > INNER, 0.5 * (low + high), core)
+    return [float(x) for x in at]
 
 
 def _hand_over(result: Result, path: Path) -> None:
