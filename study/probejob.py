@@ -33,11 +33,15 @@ from midradius.fem.probe import DIAMETER, START_DEGC, WINDOW_PER_SPAN, ProbeQuan
 from midradius.fem.probemetal import ProbeMetal
 from midradius.fem.rod import Cooled, cool_rod, rod
 from midradius.study.probecurve import ProbeCurve
+from midradius.thermo.arrays import Array
 from midradius.thermo.errors import InputFault
 
 ZERO_DEGC = 273.15
 DIFFUSIVITY_AT = 400.0 + ZERO_DEGC
 LEAST_START_DEGC = 200.0
+BELOW_BATH = 3.0  # K that a curve may end below its bath: what a thermocouple is off
+POOR, FAR = 3.0, 10.0  # times the scatter: residual of the whole, gap of one reading
+POOR_LEAST, FAR_LEAST = 1.0, 5.0  # K
 
 
 @dataclass(frozen=True)
@@ -100,6 +104,14 @@ def probed(curve: ProbeCurve, setting: ProbeSetting) -> ProbeFound:
     usual = default_span(setting.metal.diffusivity(DIFFUSIVITY_AT), setting.depth)
     span = usual if setting.span is None else setting.span
     found = quantities(curve.time, curve.temp, window=WINDOW_PER_SPAN * usual)
+    coldest = float(found.temp.min())
+    if setting.bath > coldest + BELOW_BATH:
+        raise InputFault(
+            "--bath",
+            f"{setting.bath - ZERO_DEGC:.4g} degC",
+            f"at most {coldest - ZERO_DEGC:.4g} degC, the coldest of the curve",
+            "Nothing cools below its bath: give that of the measurement.",
+        )
     inverted = invert(body, curve.time, curve.temp, span=span)
     sequential = film_of(inverted, bath=setting.bath)
     film = sequential
@@ -130,8 +142,29 @@ def probed(curve: ProbeCurve, setting: ProbeSetting) -> ProbeFound:
         residual_rms=float(np.sqrt(np.mean(gap**2))),
         residual_max=float(np.abs(gap).max()),
         sequential_rms=float(np.sqrt(np.mean(rough**2))),
-        notes=_notes(curve, setting, span, usual, inverted),
+        notes=(
+            *_unexplained(curve, gap, found.noise),
+            *_notes(curve, setting, span, usual, inverted),
+        ),
     )
+
+
+def _unexplained(curve: ProbeCurve, gap: Array, noise: float) -> list[str]:
+    """What of the curve no film explains; ``gap`` (n,) [K] computed less read."""
+    notes = []
+    far = np.flatnonzero(np.abs(gap) > max(FAR * noise, FAR_LEAST))
+    rms = float(np.sqrt(np.mean(gap**2)))
+    if far.size:
+        notes.append(
+            f"{far.size} reading(s) lie more than {max(FAR * noise, FAR_LEAST):.2g} K off the"
+            f" curve of the film, the first at {curve.time[far[0]]:.4g} s: look at them"
+        )
+    if rms > max(POOR * noise, POOR_LEAST):
+        notes.append(
+            f"THE FILM DOES NOT EXPLAIN THE CURVE: {rms:.2g} K are left (root mean square), the"
+            f" scatter is {noise:.2g} K; check bath, metal, depth and the readings before its use"
+        )
+    return notes
 
 
 def _notes(

@@ -11,7 +11,7 @@ from midradius.fem.media import medium
 from midradius.study import bath as baths
 from midradius.study import bathcooler, bathloss, heatload, shift, sizing, tanksafety
 from midradius.study.bath import Tank
-from midradius.study.case import Case, position
+from midradius.study.case import Case, MediumUse, position
 from midradius.study.casemedium import effective_bath
 from midradius.study.casetank import tank_stage
 from midradius.study.heatload import STAYS_AT_MOST, Body, Given, bodies_of, solve
@@ -32,6 +32,7 @@ from midradius.thermo.source import RangeNote, Source
 ZERO_DEGC = 273.15
 OWN_FILM_PCT = 30.0  # uncertainty of a film curve of the user's own [estimate]
 DAY = 86_400.0
+ONE_BATH = 5.0  # K around the bath of a film curve before it is said that it is kept
 LEAST_WARMER = 10.0  # K between the two baths in which loads are solved
 VARIANTS = ("film as given", "stronger film", "weaker film")
 
@@ -239,7 +240,7 @@ def answer(case: Case, *, say: Say | None = None) -> TankAnswer:
         ),
         cautions=tuple(dict.fromkeys([*cautions, *(known.cautions if known else ())])),
         assumptions=(*told, *more, *overlapping, *assumed(case, given)),
-        notes=_notes(fluid, day, known, [n for s in setups for n in s.notes]),
+        notes=_notes(fluid, day, use, [n for s in setups for n in s.notes]),
         sources=_sources(fluid, [s for x in setups for s in x.sources]),
         balance=max(gap, *(own.balance for own in owns), float(day.steady.balance.max())),
     )
@@ -316,18 +317,30 @@ def _core_hv(body: Body, given: Given) -> float:
 
 
 def _notes(
-    fluid: Fluid, day: Shift, known: object, others: list[RangeNote]
+    fluid: Fluid, day: Shift, use: MediumUse, others: list[RangeNote]
 ) -> tuple[RangeNote, ...]:
     coldest = float(min(run.temp.min() for run in (day.first, day.steady)))
     hottest = float(max(run.temp.max() for run in (day.first, day.steady)))
     found = list(fluids.range_notes(fluid, coldest=coldest, hottest=hottest))
-    low, high = getattr(known, "holds_min", None), getattr(known, "holds_max", None)
-    if low is not None and high is not None and (coldest < low or hottest > high):
+    runs = f"{coldest - ZERO_DEGC:.3g} to {hottest - ZERO_DEGC:.3g} degC"
+    name = f"film coefficient in {fluid.name}"
+    if use.film_file is not None:
+        low = high = effective_bath(use) or coldest
+        if coldest < low - ONE_BATH or hottest > high + ONE_BATH:
+            allowed = f"{low - ZERO_DEGC:.4g} degC, its only bath; the film is kept"
+            found.append(RangeNote(name, "bath through the day", runs, allowed))
+        return tuple(dict.fromkeys([*found, *others]))
+    known = medium(use.name or "")
+    low, high = known.holds_min, known.holds_max
+    if coldest < known.bath_min:
+        allowed = f"from {known.bath_min - ZERO_DEGC:.4g} degC; below, the film of that is kept"
+        found.append(RangeNote(name, "coldest bath", f"{coldest - ZERO_DEGC:.3g} degC", allowed))
+    if coldest < low or hottest > high:
         found.append(
             RangeNote(
-                f"film coefficient in {fluid.name}",
+                name,
                 "bath through the day",
-                f"{coldest - ZERO_DEGC:.3g} to {hottest - ZERO_DEGC:.3g} degC",
+                runs,
                 f"{low - ZERO_DEGC:.4g} to {high - ZERO_DEGC:.4g} degC",
             )
         )

@@ -14,6 +14,7 @@ from numpy.testing import assert_allclose
 from midradius.fem.filmfile import read_curve
 from midradius.study.casefile import loads
 from midradius.study.job import solve
+from midradius.study.probecurve import read_probe
 
 MESHES = Path(__file__).parents[2] / "meshes"
 SAMPLE = str(MESHES / "hallgrund-probe.csv")
@@ -94,9 +95,39 @@ def test_readings_before_immersion_do_not_count(call, tmp_path: Path) -> None:
     assert_allclose(late["times_s"]["400degC"], plain["times_s"]["400degC"], rtol=0.0, atol=0.01)
 
 
+@pytest.mark.parametrize(
+    ("head", "of"),
+    [
+        ("temperature_K", lambda degc: degc + 273.15),
+        ("temperature_degF", lambda degc: 1.8 * degc + 32.0),
+    ],
+)
+def test_kelvin_and_fahrenheit_are_read_by_their_head(tmp_path: Path, head: str, of) -> None:
+    rows = [row.split(",") for row in Path(SAMPLE).read_text(encoding="utf-8").splitlines()[3:]]
+    text = "".join(f"{time},{of(float(temp)):.6f}\n" for time, temp in rows)
+    (tmp_path / "other.csv").write_text(f"time_s,{head}\n{text}", encoding="utf-8")
+    found, plain = read_probe(tmp_path / "other.csv"), read_probe(Path(SAMPLE))
+    assert_allclose(found.temp, plain.temp, rtol=0.0, atol=1e-5)
+
+
+def test_readings_that_no_film_explains_are_named_first(call, tmp_path: Path) -> None:
+    rows = Path(SAMPLE).read_text(encoding="utf-8").splitlines()
+    time, temp = rows[203].split(",")
+    rows[203] = f"{time},{float(temp) + 60.0}"
+    (tmp_path / "spike.csv").write_text("\n".join(rows), encoding="utf-8")
+    words = (*BATH, "--no-sharpen", "--json")
+    notes = json.loads(call("probe", "spike.csv", *words).out)["notes"]
+    assert "reading(s) lie more than 5 K off" in notes[0]
+    assert "DOES NOT EXPLAIN" in notes[1]
+    sound = json.loads(call("probe", SAMPLE, *words).out)["notes"]
+    assert not any("EXPLAIN" in note for note in sound)
+
+
 BAD = {
     "no head": ("0,850\n1,840\n", "time_s column is missing"),
     "turned back": ("time_s,temperature_degC\n0,850\n1,849\n1,848\n", "line 4: time_s"),
+    "no unit": ("time_s,temperature\n0,850\n", "temperature_degC column is missing"),
+    "far too cold": ("time_s,temperature_degF\n0,-80\n", "must be -4 to 2372 degF"),
     "kelvin": ("time_s,temperature_degC\n0,1423\n", "line 2: temperature_degC"),
     "short": ("time_s,temperature_degC\n0,850\n1,849\n", "2 readings, at least 20 are needed"),
 }
@@ -116,6 +147,7 @@ def test_a_file_that_is_no_probe_curve_is_refused(call, tmp_path: Path, name: st
     ("words", "said"),
     [
         (("--bath", "700 degC"), "--bath"),
+        (("--bath", "300 degC"), "the coldest of the curve"),
         (("--bath", "65 degC", "--material", "42CrMo4"), "its latent heat would be read"),
         (("--bath", "65 degC", "--depth", "9 mm"), "--depth"),
         (("--bath", "65 degC", "--future", "0 s"), "more than 0 s"),

@@ -413,6 +413,31 @@ def test_load_tank_and_shift_read_back_as_they_were_written(
     assert casefile.loads(casefile.dumps(case)) == case
 
 
+def test_a_film_of_one_bath_is_said_to_be_kept_while_the_bath_warms(tmp_path: Path) -> None:
+    (tmp_path / "oil.csv").write_text(
+        "surface_degC, htc_W_per_m2K\n40, 250\n300, 400\n500, 2500\n900, 600\n", encoding="utf-8"
+    )
+    (tmp_path / "oil.toml").write_text(
+        'kind = "oil"\ntemp_degC = [0, 200]\n'
+        "density_kg_per_m3 = [880, 750]\nheat_capacity_J_per_kgK = [1800, 2500]\n",
+        encoding="utf-8",
+    )
+    text = OIL.replace('medium = "mineral oil, agitated"', 'film = "oil.csv"')
+    found = tankjob.solve(casefile.loads(text + 'fluid_file = "oil.toml"\n', tmp_path / "c.toml"))
+    assert any("its only bath; the film is kept" in str(note) for note in found.notes)
+
+
+def test_a_bath_colder_than_its_films_is_said_to_keep_the_coldest() -> None:
+    found = solved(OIL + 'morning = "2 degC"\n')
+    assert any("below, the film of that is kept" in str(note) for note in found.notes)
+
+
+def test_a_medium_that_is_not_known_is_one_fault() -> None:
+    with pytest.raises(casefile.CaseFaults) as caught:
+        casefile.loads(OIL.replace("mineral oil, agitated", "minerol oil, agitated"))
+    assert len(caught.value.faults) == 1
+
+
 @pytest.mark.slow
 def test_the_shipped_shaft_load_is_acceptable_and_hot_enough_to_matter() -> None:
     found = tankjob.solve(SHIPPED)
