@@ -5,6 +5,7 @@ from dataclasses import replace
 import numpy as np
 
 from midradius.fem.fluids import Fluid
+from midradius.fem.media import medium
 from midradius.study.bath import Tank
 from midradius.study.bathcooler import cooler_of
 from midradius.study.case import Case
@@ -19,6 +20,7 @@ from midradius.study.tankinput import TankInput
 from midradius.study.tanksafety import FREEBOARD, cautions
 from midradius.thermo.errors import InputFault
 from midradius.thermo.properties import DENSITY
+from midradius.thermo.source import RangeNote
 
 ZERO_DEGC = 273.15
 AIR = 20.0 + ZERO_DEGC
@@ -168,8 +170,14 @@ def in_bath(case: Case, setup: Setup) -> Setup:
         *taken,
         *more,
     )
+    beyond = []
+    if use.film_file is None and hottest > (most := medium(use.name or "").bath_max):
+        allowed = f"up to {degC(most)}; above, the film of that is kept: figures are out of range"
+        name = f"film coefficient in {fluid.name}"
+        beyond.append(RangeNote(name, "hottest bath", degC(hottest), allowed))
     return replace(
         setup,
+        notes=(*setup.notes, *beyond),
         stages=stages_in(setup, case, found.path, longest=longest if found.cut_short else None),
         assumptions=(*setup.assumptions, *lines),
         cautions=tuple(dict.fromkeys([*setup.cautions, *cautions(fluid)])),

@@ -11,8 +11,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from numpy.testing import assert_allclose
 
-from midradius.study import casefile, casekeys, job, tankjob
+from midradius.study import casefile, casekeys, job, tankjob, tanksetup
 from midradius.study.case import Case
+from midradius.study.setup import prepare
 from midradius.study.tankanswer import TankAnswer
 from midradius.study.tankinput import (
     CoolerInput,
@@ -176,6 +177,13 @@ def test_a_bath_above_the_hottest_whose_film_is_known_is_no_answer() -> None:
     for found in (limit, runs):
         (film,) = [check for check in found.checks if check.name == "film of the bath"]
         assert film.met is False and "no film is known" in film.why
+
+
+def test_a_run_says_that_its_bath_left_the_films_that_are_known() -> None:
+    small = WATER.replace("water, still", "water, agitated").replace('"4 m3"', '"1.1 m3"')
+    case = casefile.loads(small)
+    notes = [str(note) for note in tanksetup.in_bath(case, prepare(case)).notes]
+    assert any("above, the film of that is kept" in note for note in notes)
 
 
 def test_a_load_that_is_in_the_bath_as_the_period_ends_is_refused() -> None:
