@@ -155,13 +155,8 @@ def mesh_outline(
     InputFault
         The file or the plane cannot give one body, or the target cannot be written.
     """
+    check_source(source)
     suffix = source.suffix.lower()
-    if suffix not in DXF + STEP:
-        raise refuse(source.name, f"one of these kinds: {', '.join(DXF + STEP)}", "")
-    needed = ("gmsh", "ezdxf") if suffix in DXF else ("gmsh",)
-    if any(importlib.util.find_spec(name) is None for name in needed):
-        raise MissingExtra(MISSING)
-    _present(source)
     request: dict[str, Any] = {
         "name": source.name,
         "sense": sense,
@@ -198,7 +193,7 @@ def mesh_outline(
             )
         request["step"] = str(source.resolve())
         if cut is not None:
-            request["slice"] = _axes(cut, sense)
+            request["slice"] = axes_of(cut, sense)
     made = _made(request, source, target, sense)
     if drawn is not None and abs(drawn / made.cad_content - 1.0) > AREA_DIFFERS:
         target.unlink(missing_ok=True)
@@ -225,7 +220,22 @@ def _told(piece: Piece, mm: float) -> dict[str, Any]:
     }
 
 
-def _present(source: Path) -> None:
+def check_source(source: Path) -> None:
+    """Look whether an outline can be read at all.
+
+    Raises
+    ------
+    MissingExtra
+        gmsh or ezdxf is not installed.
+    InputFault
+        Another kind of file, or none.
+    """
+    suffix = source.suffix.lower()
+    if suffix not in DXF + STEP:
+        raise refuse(source.name, f"one of these kinds: {', '.join(DXF + STEP)}", "")
+    needed = ("gmsh", "ezdxf") if suffix in DXF else ("gmsh",)
+    if any(importlib.util.find_spec(name) is None for name in needed):
+        raise MissingExtra(MISSING)
     try:
         if source.is_file() and source.stat().st_size:
             return
@@ -237,8 +247,14 @@ def _present(source: Path) -> None:
     raise refuse(source.name, "a file with an outline", reason)
 
 
-def _axes(cut: Slice, sense: Sense) -> dict[str, list[float]]:
-    """The plane as the mesher takes it: a point [mm], two unit vectors within."""
+def axes_of(cut: Slice, sense: Sense) -> dict[str, list[float]]:
+    """The plane as the mesher takes it: a point [mm], two unit vectors within.
+
+    Raises
+    ------
+    InputFault
+        Directions without length, or an axis that the plane cannot have.
+    """
     if sense == "solid":
         raise InputFault("slice", "given", 'left out for sense = "solid"')
     normal = _unit(cut.normal, "slice.normal")

@@ -22,9 +22,10 @@ from .steelfile import FileSteel
 from .tankinput import LoadInput, ShiftInput, TankInput
 
 if TYPE_CHECKING:
+    from midradius.fem.outline import Slice
     from midradius.thermo.calibration import Shifts
 
-Form = Literal["slab", "round", "tube", "ball", "bar", "ring", "mesh"]
+Form = Literal["slab", "round", "tube", "ball", "bar", "ring", "mesh", "outline"]
 MeshSense = Literal["plane", "axisymmetric", "solid"]
 StageKind = Literal["heat", "soak", "transfer", "quench", "hold", "temper"]
 PositionKind = Literal[
@@ -111,12 +112,30 @@ class SteelInput:
 
 
 @dataclass(frozen=True)
+class OutlineFile:
+    """An outline of CAD and how it was asked to be meshed.
+
+    ``length_unit`` belongs to a drawing that states none; ``finest`` is the size of the
+    surface cells [m], None where the films of the route choose it. The reader adds in
+    ``statements`` what was made of it.
+    """
+
+    file: Path
+    length_unit: str | None = None
+    layers: tuple[str, ...] = ()
+    cut: "Slice | None" = None
+    finest: float | None = None
+    statements: tuple[str, ...] = field(default=(), compare=False)
+
+
+@dataclass(frozen=True)
 class MeshFile:
     """A mesh file as the section, and how to take it.
 
     ``symmetry`` names groups or planes (``"x = 0"``) that no heat passes; ``named``
     are the groups that the route speaks of. The reader adds what it found in the
-    file: its surface ``zones`` and how far it reaches, ``low`` to ``high`` [m].
+    file: its surface ``zones`` and how far it reaches, ``low`` to ``high`` [m]. A mesh that
+    was made of an ``outline`` has its file among those kept for later reads.
     """
 
     file: Path
@@ -124,6 +143,7 @@ class MeshFile:
     sense: MeshSense
     symmetry: tuple[str, ...] = ()
     named: tuple[str, ...] = ()
+    outline: OutlineFile | None = None
     zones: tuple[str, ...] = field(default=(), compare=False)
     low: tuple[float, ...] = field(default=(), compare=False)
     high: tuple[float, ...] = field(default=(), compare=False)
@@ -133,7 +153,7 @@ class MeshFile:
 class SectionInput:
     """The section's form and its dimensions [m]; those of other forms are None.
 
-    A form ``"mesh"`` has ``mesh`` in their place.
+    The forms ``"mesh"`` and ``"outline"`` have ``mesh`` in their place.
 
     ``emissivity`` of the surface [-] acts in gases: 0.8 is scaled steel.
     """

@@ -16,12 +16,14 @@ from . import casekeys as keys
 from .calibrationfile import read_calibration, refuse_other_rates, refuse_other_steel
 from .case import Form, Grid, SectionInput, SteelInput
 from .casemedium import medium_use
-from .casemesh import mesh_input
+from .casemesh import mesh_input, zones_named
+from .caseoutline import outline_input
 from .caserates import with_rates
 from .casetable import Table, one_of
 from .steelfile import FileSteel, notes_of, pick
 
 _GRAIN = re.compile(r"ASTM\s*(-?[0-9]{1,2}(?:\.[0-9]{1,3})?)", re.IGNORECASE)
+_OF_FILES = tuple(dict.fromkeys((*keys.MESH, *keys.OUTLINE)))
 _STRANGE = "No model here knows this element: leave it out."
 
 
@@ -171,25 +173,28 @@ def _grain(table: Table) -> float | None:
     return None
 
 
-def section_input(table: Table, named: tuple[str, ...] = ()) -> SectionInput | None:
+def section_input(table: Table, top: Table) -> SectionInput | None:
     """``[section]``: a form and its dimensions, without those at fault.
 
-    ``named`` are the surface zones that the route speaks of.
+    ``top`` is the whole case: a mesh takes the zones that the route speaks of, an
+    outline the films as well.
     """
-    forms = (*keys.DIMENSIONS, "mesh")
+    forms = keys.FORMS
     if table.raw("form") == "mesh":
-        return mesh_input(table, _emissivity(table), named)
+        return mesh_input(table, _emissivity(table), zones_named(top))
+    if table.raw("form") == "outline":
+        return outline_input(table, _emissivity(table), top)
     form = cast(Form | None, table.choice("form", forms))
     if form is None:
         if not table.has("form"):
             table.missing("form", one_of(forms))
-        table.only((*keys.MESH, *keys.ALL_DIMENSIONS, "bore_medium"))
+        table.only((*_OF_FILES, *keys.ALL_DIMENSIONS, "bore_medium"))
         for name in keys.ALL_DIMENSIONS:
             table.quantity(name, "length", keys.DIMENSION_RANGE)
         return None
     known = ("form", *keys.DIMENSIONS[form], *keys.OPTIONAL[form], "emissivity")
     strange = f'form = "{form}" has no such key; it takes {", ".join(known[1:])}.'
-    table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, *keys.MESH, "bore_medium"), strange))
+    table.only(known, dict.fromkeys((*keys.ALL_DIMENSIONS, *_OF_FILES, "bore_medium"), strange))
     size: dict[str, Any] = {
         name: table.quantity(name, "length", keys.DIMENSION_RANGE)
         for name in known[1:]
@@ -234,8 +239,11 @@ def grid(table: Table | None, section: SectionInput | None) -> Grid:
         return Grid()
     table.only(keys.GRID)
     accuracy = table.quantity("accuracy", "temperature difference", keys.ACCURACY_RANGE)
-    if section is not None and section.form == "mesh" and table.has("cells"):
-        table.fault("cells", 'left out where form = "mesh"', "A mesh has its own cells.")
+    if section is not None and section.mesh is not None and table.has("cells"):
+        remedy = "A mesh has its own cells."
+        if section.form == "outline":
+            remedy = "Its cells follow section.finest, or else the films."
+        table.fault("cells", f'left out where form = "{section.form}"', remedy)
         return Grid()
     low, high = keys.CELLS_RANGE
     value = table.raw("cells")

@@ -14,7 +14,6 @@ from .case import Case, SteelInput
 from .caseblocks import grid, section_input, steel_input
 from .casefaults import CaseFaults, Fault, Notebook
 from .caselines import locate
-from .casemesh import zones_named
 from .caseneed import needs
 from .caseoutput import outputs
 from .casepath import paths
@@ -110,7 +109,7 @@ def loads_any(text: str, path: Path | None = None) -> Case | SeriesCase:
     if not top.has("section"):
         top.missing("section", "given as a table [section]")
     section_table = top.table("section", "[section]")
-    section = section_input(section_table, zones_named(top)) if section_table else None
+    section = section_input(section_table, top) if section_table else None
     output = top.table("output", "[output]")
     wanted = replace(outputs(output, section), paths=paths(output, section))
     stages = route(top, steel, section, wanted)

@@ -39,6 +39,15 @@ OPTIONAL: Mapping[Form, tuple[str, ...]] = {
     "ring": ("bore_medium",),
 }
 MESH = ("form", "file", "length_unit", "sense", "symmetry", "emissivity")
+OUTLINE = (
+    *("form", "file", "sense", "length_unit", "layers", "slice", "finest"),
+    *("symmetry", "emissivity"),
+)
+SLICE = ("point", "normal", "axis")
+FORMS: tuple[Form, ...] = (*DIMENSIONS, "mesh", "outline")
+FINEST_RANGE = (1e-6, 1.0)
+PLANE_RANGE = (-1e3, 1e3)
+LAYERS_MOST = 100
 LENGTH_UNITS = ("m", "cm", "mm", "in", "ft")
 EMISSIVITY_RANGE = (0.05, 1.0)
 ALL_DIMENSIONS = ("thickness", "diameter", "length", "outside", "bore", "width", "height")

@@ -6,6 +6,7 @@ the other faults of the case, and so that ``faces`` can name its surface zones.
 
 import re
 from collections.abc import Mapping
+from dataclasses import replace
 from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING, cast
@@ -14,7 +15,7 @@ from midradius.thermo.errors import InputFault
 from midradius.thermo.units import parse
 
 from . import casekeys as keys
-from .case import MeshFile, MeshSense, SectionInput
+from .case import Form, MeshFile, MeshSense, SectionInput
 from .casetable import Table, is_line, one_of
 
 if TYPE_CHECKING:
@@ -26,7 +27,7 @@ _COORDINATES: Mapping[str, tuple[str, ...]] = {
     "axisymmetric": ("r", "z"),
     "solid": ("x", "y", "z"),
 }
-_SENSES = tuple(_COORDINATES)
+SENSES = tuple(_COORDINATES)
 _EXAMPLE = 'symmetry = ["cut face", "x = 0"]'
 
 
@@ -35,18 +36,23 @@ def mesh_input(table: Table, emissivity: float, named: tuple[str, ...]) -> Secti
     table.only(keys.MESH, dict.fromkeys((*keys.ALL_DIMENSIONS, "bore_medium"), _NO_SIZE))
     file = table.text("file", 1000)
     unit = table.choice("length_unit", keys.LENGTH_UNITS)
-    sense = cast(MeshSense | None, table.choice("sense", _SENSES))
+    sense = cast(MeshSense | None, table.choice("sense", SENSES))
     for name, allowed in (
         ("file", "a mesh file, its path from the case file"),
         ("length_unit", one_of(keys.LENGTH_UNITS)),
-        ("sense", one_of(_SENSES)),
+        ("sense", one_of(SENSES)),
     ):
         if not table.has(name):
             table.missing(name, allowed)
-    symmetry = _symmetry(table, sense)
+    symmetry = symmetry_of(table, sense)
     if file is None or unit is None or sense is None or symmetry is None:
         return None
     given = MeshFile(table.notes.folder / file, unit, sense, symmetry, named)
+    return taken(table, given, "mesh", emissivity)
+
+
+def taken(table: Table, given: MeshFile, form: Form, emissivity: float) -> SectionInput | None:
+    """The section of a mesh file that is there; what is wrong with it is noted."""
     try:
         mesh = mesh_of(given)
     except InputFault as fault:
@@ -54,20 +60,13 @@ def mesh_input(table: Table, emissivity: float, named: tuple[str, ...]) -> Secti
             table.fault("file", allowed, remedy)
         return None
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
-    return SectionInput(
-        form="mesh",
-        emissivity=emissivity,
-        mesh=MeshFile(
-            given.file,
-            unit,
-            sense,
-            symmetry,
-            named,
-            mesh.zones,
-            tuple(float(x) for x in low),
-            tuple(float(x) for x in high),
-        ),
+    found = replace(
+        given,
+        zones=mesh.zones,
+        low=tuple(float(x) for x in low),
+        high=tuple(float(x) for x in high),
     )
+    return SectionInput(form=form, emissivity=emissivity, mesh=found)
 
 
 _NO_SIZE = 'form = "mesh" has its size from the file.'
@@ -81,7 +80,8 @@ def _faults(fault: InputFault) -> list[tuple[str, str]]:
     return [(fault.allowed, fault.remedy)]
 
 
-def _symmetry(table: Table, sense: str | None) -> tuple[str, ...] | None:
+def symmetry_of(table: Table, sense: str | None) -> tuple[str, ...] | None:
+    """Groups and planes that no heat passes; None where one of them is at fault."""
     found: list[str] = []
     good = True
     for key, value in table.items("symmetry", _EXAMPLE):

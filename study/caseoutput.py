@@ -35,7 +35,7 @@ def outputs(table: Table | None, section: SectionInput | None) -> Outputs:
             table.refuse(name, f"{name} has {len(given)} items, at most {most} are read")
             return Outputs(usual)
     # a mesh has its origin where it likes
-    mesh = section is not None and section.form == "mesh"
+    mesh = section is not None and section.mesh is not None
     lowest = -keys.DIMENSION_RANGE[1] if mesh else 0.0
     for key, value in table.items("positions", _PLACES):
         place = _place(table, key, value, lowest)
@@ -125,7 +125,7 @@ def _named_place(table: Table, lowest: float) -> PositionInput | None:
 
 def place_fault(place: PositionInput, section: SectionInput) -> tuple[str, str] | None:
     """What is allowed, and the remedy, where a position does not fit the section."""
-    if place.kind == "mid-radius" and section.form not in ("round", "ball", "mesh"):
+    if place.kind == "mid-radius" and section.form not in ("round", "ball", "mesh", "outline"):
         return (
             f'a place that form = "{section.form}" has',
             'Only a round and a ball have a mid-radius: write "quarter thickness" or "core".',
@@ -178,7 +178,7 @@ def deepest(section: SectionInput) -> float:
     """The largest depth [m] that a place of this section can have."""
     if section.form in ("round", "ball"):
         return (section.diameter or math.inf) / 2.0
-    if section.form == "mesh":  # known when its distances are
+    if section.mesh is not None:  # known when its distances are
         return math.inf
     if section.form in ("tube", "ring"):
         wall = ((section.outside or math.inf) - (section.bore or 0.0)) / 2.0

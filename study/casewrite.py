@@ -1,6 +1,7 @@
 """A case as TOML text that reads back as the same case."""
 
 import re
+from collections.abc import Iterable
 from pathlib import Path
 
 from midradius.thermo.errors import InputFault
@@ -15,6 +16,7 @@ from .case import (
     MediumUse,
     MeshFile,
     Need,
+    OutlineFile,
     Outputs,
     PositionInput,
     SectionInput,
@@ -61,7 +63,9 @@ def _section(section: SectionInput, folder: Path) -> list[str]:
         size = getattr(section, name)
         if size is not None:
             lines.append(f"{name} = {_length(size)}")
-    if section.mesh:
+    if section.mesh and section.mesh.outline:
+        lines += _outline(section.mesh, section.mesh.outline, folder)
+    elif section.mesh:
         lines += _mesh(section.mesh, folder)
     if section.bore_medium:
         lines.append(f"bore_medium = {_inline(section.bore_medium, folder)}")
@@ -76,9 +80,33 @@ def _mesh(mesh: MeshFile, folder: Path) -> list[str]:
         f'length_unit = "{mesh.length_unit}"',
         f'sense = "{mesh.sense}"',
     ]
-    if mesh.symmetry:
-        lines.append(f"symmetry = [{', '.join(_quoted(text) for text in mesh.symmetry)}]")
-    return lines
+    return lines + _symmetry(mesh)
+
+
+def _symmetry(mesh: MeshFile) -> list[str]:
+    return [f"symmetry = {_list(map(_quoted, mesh.symmetry))}"] if mesh.symmetry else []
+
+
+def _list(written: Iterable[str]) -> str:
+    return f"[{', '.join(written)}]"
+
+
+def _outline(mesh: MeshFile, outline: OutlineFile, folder: Path) -> list[str]:
+    lines = [f"file = {_quoted(_beside(outline.file, folder))}", f'sense = "{mesh.sense}"']
+    if outline.length_unit is not None:
+        lines.append(f'length_unit = "{outline.length_unit}"')
+    if outline.layers:
+        lines.append(f"layers = {_list(map(_quoted, outline.layers))}")
+    if outline.cut is not None:
+        cut = outline.cut
+        parts = [f"point = {_list(map(_length, cut.point))}"]
+        parts.append(f"normal = {_list(map(repr, cut.normal))}")
+        if cut.axis is not None:
+            parts.append(f"axis = {_list(map(repr, cut.axis))}")
+        lines.append(f"slice = {{ {', '.join(parts)} }}")
+    if outline.finest is not None:
+        lines.append(f"finest = {_length(outline.finest)}")
+    return lines + _symmetry(mesh)
 
 
 def _temperatures(given: GivenInput, folder: Path) -> list[str]:

@@ -17,7 +17,7 @@ from midradius.thermo.units import Kind, example, pattern, show
 from . import casekeys as keys
 from . import seriescase as series
 from .case import TRADE_TERMS, ZONES
-from .schemamesh import mesh_section, paths_of
+from .schemamesh import mesh_section, outline_section, paths_of
 from .tankschema import blocks
 
 Schema = dict[str, Any]
@@ -113,6 +113,8 @@ def _section() -> Schema:
         "maximum": high,
         "description": "Of the surface, in air and gas; scaled steel 0.8, bright 0.35 to 0.5.",
     }
+    finest = _quantity("length", keys.FINEST_RANGE, "Surface cells; left out: as the films ask.")
+    place = _quantity("length", keys.PLANE_RANGE, "A coordinate of CAD.")
     forms = [
         _table(
             {"form": {"const": form}}
@@ -124,9 +126,9 @@ def _section() -> Schema:
     ]
     return {
         "type": "object",
-        "properties": {"form": {"enum": [*keys.DIMENSIONS, "mesh"]}},
+        "properties": {"form": {"enum": list(keys.FORMS)}},
         "required": ["form"],
-        "oneOf": [*forms, mesh_section(emissivity)],
+        "oneOf": [*forms, mesh_section(emissivity), outline_section(emissivity, finest, place)],
     }
 
 

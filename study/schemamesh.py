@@ -6,6 +6,19 @@ from . import casekeys as keys
 
 Schema = dict[str, Any]
 
+_TAKEN: Schema = {
+    "sense": {
+        "enum": ["plane", "axisymmetric", "solid"],
+        "description": "A long bar, a body of revolution about x = 0, or the whole part.",
+    },
+    "symmetry": {
+        "type": "array",
+        "items": {"type": "string"},
+        "description": "Groups and planes that no heat passes.",
+        "examples": [["cut face", "x = 0"]],
+    },
+}
+
 
 def mesh_section(emissivity: Schema) -> Schema:
     """``[section]`` with ``form = "mesh"``."""
@@ -15,20 +28,54 @@ def mesh_section(emissivity: Schema) -> Schema:
             "form": {"const": "mesh"},
             "file": {"type": "string", "description": "A mesh file, its path from this file."},
             "length_unit": {"enum": list(keys.LENGTH_UNITS)},
-            "sense": {
-                "enum": ["plane", "axisymmetric", "solid"],
-                "description": "A long bar, a body of revolution about x = 0, or the whole part.",
-            },
-            "symmetry": {
-                "type": "array",
-                "items": {"type": "string"},
-                "description": "Groups and planes that no heat passes.",
-                "examples": [["cut face", "x = 0"]],
-            },
+            **_TAKEN,
             "emissivity": emissivity,
         },
         "additionalProperties": False,
         "required": ["form", "file", "length_unit", "sense"],
+    }
+
+
+def outline_section(emissivity: Schema, finest: Schema, place: Schema) -> Schema:
+    """``[section]`` with ``form = "outline"``; ``place`` is a coordinate of the slicing plane."""
+    direction = {"type": "array", "items": {"type": "number"}, "minItems": 3, "maxItems": 3}
+    point = {"type": "array", "items": place, "minItems": 3, "maxItems": 3}
+    return {
+        "type": "object",
+        "properties": {
+            "form": {"const": "outline"},
+            "file": {
+                "type": "string",
+                "description": "A .dxf, .step or .stp file, its path from this file.",
+            },
+            **_TAKEN,
+            "length_unit": {
+                "enum": list(keys.LENGTH_UNITS),
+                "description": "Of a drawing that states none.",
+            },
+            "layers": {
+                "type": "array",
+                "items": {"type": "string"},
+                "minItems": 1,
+                "maxItems": keys.LAYERS_MOST,
+                "description": "Layers of a drawing that are read; all that are shown if left out.",
+            },
+            "slice": {
+                "type": "object",
+                "description": "The plane of the section through a solid.",
+                "properties": {
+                    "point": point,
+                    "normal": direction,
+                    "axis": direction | {"description": "Up in the section; that of rotation."},
+                },
+                "additionalProperties": False,
+                "required": ["point", "normal"],
+            },
+            "finest": finest,
+            "emissivity": emissivity,
+        },
+        "additionalProperties": False,
+        "required": ["form", "file", "sense"],
     }
 
 

@@ -56,7 +56,7 @@ def section_of(given: SectionInput) -> Section | MeshSection:
             return forms.bar(size["width"], size["height"])
         case "ring":
             return forms.ring(size["outside"], size["bore"], size["height"])
-        case "mesh":
+        case "mesh" | "outline":
             assert given.mesh is not None, "a mesh has its file"
             mesh = mesh_of(given.mesh)
             return MeshSection(mesh, mesh.zones)
@@ -240,6 +240,8 @@ def _assumptions(case: Case, section: Section | MeshSection) -> tuple[str, ...]:
         lines.append(f"In a gas the part counts as a {geometry} of {1e3 * length:.4g} mm.")
         if section.sense == "plane":
             lines.append("The part is long: its ends do not cool this section.")
+        if case.section.mesh is not None and case.section.mesh.outline is not None:
+            lines += case.section.mesh.outline.statements
         return tuple(lines)
     if section.form in ("tube", "ring") and case.section.bore_medium is None:
         lines.append("The bore sees the same medium as the outside, as freely.")
