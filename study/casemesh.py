@@ -136,7 +136,10 @@ def mesh_of(given: MeshFile) -> "MeshInput":
         stamp = (state.st_mtime_ns, state.st_size)
     except OSError:
         stamp = (0, 0)
-    return _opened(given.file, stamp, given.length_unit, given.sense, given.symmetry, given.named)
+    mesh = _opened(given.file, stamp, given.length_unit, given.sense, given.symmetry, given.named)
+    if given.outline is not None:  # a person knows the drawing, not the mesh kept of it
+        mesh = replace(mesh, name=f"of {given.outline.file.name}")
+    return mesh
 
 
 @lru_cache(maxsize=2)

@@ -75,6 +75,12 @@ def test_an_outline_gives_the_mesh_that_the_command_makes(call, tmp_path: Path) 
     assert_allclose(ours.points, theirs.points, rtol=0.0, atol=0.0)
 
 
+def test_the_mesh_of_an_outline_is_told_by_the_name_of_the_drawing(tmp_path: Path) -> None:
+    mesh = read(tmp_path, text_of(more='finest = "2 mm"')).section.mesh
+    assert mesh is not None
+    assert mesh_of(mesh).text.startswith("of disc.dxf, plane, 40 x 40 mm")
+
+
 def test_a_second_read_does_not_mesh(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     case = read(tmp_path, text_of())
     monkeypatch.setattr(outlinecache, "mesh_outline", None)
