@@ -110,6 +110,31 @@ def _lookup(table: Array, temp: float) -> float:
 
 
 @kernel
+def _eliminate(work: Array, before: Array, stiff: float, gained: float, after: Array) -> None:
+    """Solve the step in rows 0 and 1 of ``work`` from the axis outward, then back.
+
+    The surface node has ``stiff`` on its diagonal and ``gained`` on the known side;
+    ``before`` and ``after`` (n_node,) may be one array.
+    """
+    n = len(before)
+    for i in range(n):
+        left = work[1, i - 1] if i > 0 else 0.0
+        right = work[1, i] if i < n - 1 else stiff
+        diagonal = work[0, i] + left + right
+        known = work[0, i] * before[i]
+        if i == n - 1:
+            known += gained
+        if i > 0:
+            diagonal -= left * work[2, i - 1]
+            known += left * work[3, i - 1]
+        work[2, i] = work[1, i] / diagonal if i < n - 1 else 0.0
+        work[3, i] = known / diagonal
+    after[n - 1] = work[3, n - 1]
+    for i in range(n - 2, -1, -1):
+        after[i] = work[3, i] + work[2, i] * after[i + 1]
+
+
+@kernel
 def step(
     body: Rod,
     before: Array,
@@ -143,43 +168,13 @@ def step(
                 work[1, i] = body.length[i] * _lookup(
                     body.conductivity, 0.5 * (after[i] + after[i + 1])
                 )
-        # elimination from the axis outward, then back
-        for i in range(n):
-            left = work[1, i - 1] if i > 0 else 0.0
-            right = work[1, i] if i < n - 1 else outside * htc
-            diagonal = work[0, i] + left + right
-            known = work[0, i] * before[i]
-            if i == n - 1:
-                known += outside * (htc * bath - flux)
-            if i > 0:
-                diagonal -= left * work[2, i - 1]
-                known += left * work[3, i - 1]
-            work[2, i] = work[1, i] / diagonal if i < n - 1 else 0.0
-            work[3, i] = known / diagonal
-        after[n - 1] = work[3, n - 1]
-        for i in range(n - 2, -1, -1):
-            after[i] = work[3, i] + work[2, i] * after[i + 1]
+        _eliminate(work, before, outside * htc, outside * (htc * bath - flux), after)
 
 
 @kernel
 def sensitivity(body: Rod, work: Array, slope: Array) -> None:
     """Lead ``slope`` (n_node,), temperature by unit outward flux, through the step in ``work``."""
-    n = len(slope)
-    for i in range(n):
-        left = work[1, i - 1] if i > 0 else 0.0
-        right = work[1, i] if i < n - 1 else 0.0
-        diagonal = work[0, i] + left + right
-        known = work[0, i] * slope[i]
-        if i == n - 1:
-            known -= body.radius[n - 1]
-        if i > 0:
-            diagonal -= left * work[2, i - 1]
-            known += left * work[3, i - 1]
-        work[2, i] = work[1, i] / diagonal if i < n - 1 else 0.0
-        work[3, i] = known / diagonal
-    slope[n - 1] = work[3, n - 1]
-    for i in range(n - 2, -1, -1):
-        slope[i] = work[3, i] + work[2, i] * slope[i + 1]
+    _eliminate(work, slope, 0.0, -body.radius[len(slope) - 1], slope)
 
 
 @kernel
