@@ -27,12 +27,8 @@ if TYPE_CHECKING:
 
 Image = NDArray[np.uint8]
 
-HARDNESS, PHASES, TEMPERATURE, COOLING = (
-    "hardness.png",
-    "phases.png",
-    "temperature.png",
-    "cooling.gif",
-)
+HARDNESS, PHASES = "hardness.png", "phases.png"
+TEMPERATURE, COOLING = "temperature.png", "cooling.gif"
 STRIP = 6  # moments in the strip
 FRAMES = 24
 FRAME_MS, LAST_MS = 180, 1800

@@ -2,7 +2,7 @@
 
 Model
 -----
-The exponentials of Li et al. grow without end, ten times in time from 0.4 to 0.6 % C for
+The exponentials of Li et al. grow without end, eight times in time from 0.4 to 0.6 % C for
 bainite, where hardenability saturates. Grossmann's ideal diameter ``D`` says how the
 time that austenite lasts depends on composition: an ideal quench cools two rounds alike
 when their times are as ``D^2``. So above ``CARBON_PCT``, where the carbon factor of ASTM
@@ -10,8 +10,8 @@ A255 leaves its straight line, all three products take their carbon from the squ
 that factor; and pearlite takes its manganese from the square of the manganese factor, on
 both sides of ``MANGANESE_PCT``, the aim of most carbon steels, where both agree by choice.
 
-Pearlite near A1: with Li's cube of the undercooling the pearlite of carbon steel takes as
-long at 650 as at 510 degC, in the I-T diagram of 1080 seven times as long as at its nose.
+Pearlite near A1: with Li's cube of the undercooling the pearlite of carbon steel takes
+twice as long at 650 degC as at its nose, in the I-T diagram of 1080 seven times as long.
 The rate is divided by what it exceeds the diagram by, both taken as one at
 ``NOSE_UNDERCOOLING``. Chromium, nickel and molybdenum raise the nose instead: the
 correction fades out, as a power, up to the sum of the limits between carbon and alloy
